@@ -1,0 +1,1 @@
+"""Identification, tuning and watching of motor speed loops: arrays in, frozen values out."""

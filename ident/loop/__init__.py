@@ -1,0 +1,6 @@
+"""The loop: controller settings, margins, closed-loop simulation."""
+
+from ident.loop.margins import Margins
+from ident.loop.settings import PidSettings
+
+__all__ = ["Margins", "PidSettings"]

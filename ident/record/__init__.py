@@ -1,0 +1,6 @@
+"""Reading and cleaning: bytes of a CSV to a LoopRecord with its segments."""
+
+from ident.record.record import LoopRecord, Source
+from ident.record.segments import Exclusion, Segment
+
+__all__ = ["Exclusion", "LoopRecord", "Segment", "Source"]

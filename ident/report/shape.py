@@ -1,0 +1,167 @@
+"""The report: what `ident.analyse` returns and what the service serialises, key by key.
+
+Arrays are tuples here, so that the dataclasses serialise as they stand and two reports can be compared.
+What is not known is None or (); times are s, frequencies rad/s unless a key says otherwise.
+"""
+
+from __future__ import annotations
+
+from dataclasses import dataclass, field
+
+from ident.estimate import Friction
+from ident.evidence import Covariance, Estimate, Statistics
+from ident.findings import Finding
+from ident.judge import Advice, Excitation
+from ident.loop import Margins, PidSettings
+from ident.tune import Predicted, WorstCase
+
+REPORT_VERSION = "1"
+
+Series = tuple[float, ...]
+Gappy = tuple[float | None, ...]  # None where a segment ends
+
+
+@dataclass(frozen=True, slots=True)
+class LogInfo:
+    """The log as it was read."""
+
+    sha256: str | None
+    rows: int
+    start: str | None
+    end: str | None
+    duration_s: float
+    sample_time_s: float | None
+    speed_unit: str
+    command_unit: str
+    columns: dict[str, str]
+    findings: tuple[Finding, ...]
+
+
+@dataclass(frozen=True, slots=True)
+class Span:
+    """Part of the record in time, and why it stands out."""
+
+    start_s: float
+    end_s: float
+    rows: int
+    note: str
+
+
+@dataclass(frozen=True, slots=True)
+class RecordInfo:
+    """What kind of record the log became."""
+
+    operation: str  # open-loop | closed-loop | unknown
+    excitation: Excitation
+    advice: Advice | None
+    segments: tuple[Span, ...]
+    excluded: tuple[Span, ...]
+
+
+@dataclass(frozen=True, slots=True)
+class FitReport:
+    """One fitted model. `derived` holds what follows from the parameters, such as K/T."""
+
+    model: str  # fopdt | sopdt | arx
+    parameters: dict[str, Estimate]
+    derived: dict[str, Estimate]
+    covariance: Covariance
+    friction: Friction | None
+    statistics: Statistics
+    findings: tuple[Finding, ...]
+
+
+@dataclass(frozen=True, slots=True)
+class TuningReport:
+    """One proposal: settings, the margins they have, and the predicted outcome."""
+
+    method: str
+    form: str  # pi | pid
+    settings: PidSettings
+    margins: Margins
+    worst_case: WorstCase | None
+    predicted: Predicted | None
+    realisations: dict[str, dict[str, float | str | None]]
+    findings: tuple[Finding, ...]
+
+
+@dataclass(frozen=True, slots=True)
+class Installed:
+    """The controller recovered from a closed-loop log."""
+
+    settings: PidSettings
+    std: dict[str, float | None]
+    margins: Margins
+
+
+@dataclass(frozen=True, slots=True)
+class Trend:
+    """The log thinned for drawing: extremes kept, None between segments."""
+
+    time_s: Series
+    setpoint: Gappy | None
+    command: Gappy
+    speed: Gappy
+    fitted: Gappy | None
+    residual: Gappy | None
+
+
+@dataclass(frozen=True, slots=True)
+class Autocorrelation:
+    """Residual autocorrelation per lag, with the 95 % bound for white noise."""
+
+    lag: tuple[int, ...]
+    value: Series
+    bound: float
+
+
+@dataclass(frozen=True, slots=True)
+class Profile:
+    """Sum of squared residuals over its minimum, along one parameter, the others refitted."""
+
+    parameter: str
+    value: Series
+    ratio: Series
+    unit: str
+
+
+@dataclass(frozen=True, slots=True)
+class Locus:
+    """The loop transfer function of one tuning along frequency."""
+
+    tuning: int
+    w: Series
+    real: Series
+    imag: Series
+    sensitivity: Series
+
+
+@dataclass(frozen=True, slots=True)
+class Curves:
+    """What the page draws."""
+
+    trend: Trend
+    autocorrelation: Autocorrelation | None = None
+    profile: Profile | None = None
+    loci: tuple[Locus, ...] = ()
+
+
+@dataclass(frozen=True, slots=True)
+class Report:
+    """Everything one log says, and what to do with it."""
+
+    engine_version: str
+    log: LogInfo
+    record: RecordInfo
+    fits: tuple[FitReport, ...]
+    selected: int | None
+    selected_because: str
+    installed: Installed | None
+    tunings: tuple[TuningReport, ...]
+    recommended: int | None
+    recommended_because: str
+    curves: Curves
+    findings: tuple[Finding, ...]
+    cautions: tuple[str, ...]
+    options: dict[str, float | int | str | None] = field(default_factory=dict)
+    report_version: str = REPORT_VERSION
