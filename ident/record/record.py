@@ -2,16 +2,18 @@
 
 from __future__ import annotations
 
-from collections.abc import Iterable
-from dataclasses import dataclass, field
-from datetime import datetime
+from dataclasses import dataclass, field, fields
+from datetime import UTC, datetime, timedelta
 
 import numpy as np
 from numpy.typing import ArrayLike
 
 from ident.errors import IdentError
 from ident.findings import Finding
-from ident.record.segments import Exclusion, Floats, Segment, split
+from ident.record.segments import Exclusion, Flags, Floats, Segment, runs, spans, uniform_step
+
+MISSING = "missing value"
+LONE = "single row between gaps"
 
 
 @dataclass(frozen=True, slots=True)
@@ -34,13 +36,16 @@ class LoopRecord:
     """Time, command, speed and, where logged, setpoint of one loop.
 
     time       (n,), s from the first sample, strictly increasing; any origin is accepted and moved to 0
-    command    (n,), controller output u as logged
-    speed      (n,), measured speed y as logged
-    setpoint   (n,) or None
-    excluded   spans left out with their reason; rows with a missing command or speed join them
-    segments   runs of usable rows without a gap; estimators give each its own initial condition
+    command    (n,), controller output u as logged; NaN where missing
+    speed      (n,), measured speed y as logged; NaN where missing
+    setpoint   (n,) or None; NaN where missing
+    start      time of the first row, aware (kept in UTC), or None
+    excluded   spans left out with their reason; rows with a missing command or speed join them, and so do
+               single rows between gaps, which cannot carry an initial condition
+    segments   runs of two or more usable rows without a gap; estimators give each its own initial condition
 
-    Raises IdentError: length-mismatch, time-not-increasing, too-few-rows, not-finite.
+    Raises IdentError: length-mismatch, time-not-increasing, too-few-rows, not-finite, naive-start,
+    exclusion-out-of-range.
     """
 
     time: Floats
@@ -58,33 +63,69 @@ class LoopRecord:
         columns = {name: _column(getattr(self, name)) for name in ("time", "command", "speed")}
         if self.setpoint is not None:
             columns["setpoint"] = _column(self.setpoint)
-        n = len(columns["time"])
-        if any(len(c) != n for c in columns.values()):
-            lengths = ", ".join(f"{name} {len(c)}" for name, c in columns.items())
-            raise IdentError("length-mismatch", f"All columns need the same number of rows; here: {lengths}.")
-        if n < 2:
-            raise IdentError("too-few-rows", "A record needs at least two rows.", {"rows": n})
         _check(columns)
         columns["time"] = columns["time"] - columns["time"][0]
         for name, column in columns.items():
             column.flags.writeable = False
             object.__setattr__(self, name, column)
-        usable = ~(np.isnan(self.command) | np.isnan(self.speed))
-        missing = _spans(~usable, "missing value")
+        if self.start is not None:
+            object.__setattr__(self, "start", _utc(self.start))
+        self._segment()
+
+    def _segment(self) -> None:
+        """Find the spans left out and the segments between them; the same again for the result of it."""
+        usable = np.ones(self.rows, dtype=np.bool_)
         for span in self.excluded:
+            if not 0 <= span.start < span.stop <= self.rows:
+                raise IdentError(
+                    "exclusion-out-of-range",
+                    f"An excluded span needs 0 <= start < stop <= {self.rows}; here {span.start} to {span.stop}.",
+                )
             usable[span.start : span.stop] = False
-        object.__setattr__(self, "excluded", (*self.excluded, *missing))
-        object.__setattr__(self, "segments", split(self.time, usable))
+        missing = usable & (np.isnan(self.command) | np.isnan(self.speed))
+        usable &= ~missing
+        found = runs(self.time, usable)
+        single = found[:, 1] - found[:, 0] < 2
+        lone = np.zeros(self.rows, dtype=np.bool_)
+        lone[found[single, 0]] = True
+        excluded = (*self.excluded, *_exclusions(missing, MISSING), *_exclusions(lone, LONE))
+        object.__setattr__(self, "excluded", excluded)
+        object.__setattr__(
+            self,
+            "segments",
+            tuple(Segment(a, b, uniform_step(self.time[a:b])) for a, b in found[~single].tolist()),
+        )
 
     @property
     def rows(self) -> int:
         return len(self.time)
 
     @property
+    def duration(self) -> float:
+        """From the first row to the last, s."""
+        return float(self.time[-1])
+
+    @property
+    def end(self) -> datetime | None:
+        """Time of the last row, UTC; None where the log has no absolute time."""
+        return None if self.start is None else self.start + timedelta(seconds=self.duration)
+
+    @property
     def sample_time(self) -> float | None:
-        """The step shared by the uniform segments (median), s; None where no segment is uniform."""
-        steps = [s.step for s in self.segments if s.step is not None]
-        return float(np.median(steps)) if steps else None
+        """The step of the uniform segments, s (the median over their rows); None where none is uniform."""
+        uniform = sorted((s.step, s.rows) for s in self.segments if s.step is not None)
+        if not uniform:
+            return None
+        rows = np.cumsum([n for _, n in uniform])
+        return uniform[int(np.searchsorted(rows, rows[-1] / 2))][0]
+
+    def __reduce__(self) -> tuple[object, ...]:
+        # Through the constructor, because a pickled array comes back writeable.
+        return _rebuild, ({f.name: getattr(self, f.name) for f in fields(self) if f.init},)
+
+
+def _rebuild(values: dict[str, object]) -> LoopRecord:
+    return LoopRecord(**values)  # type: ignore[arg-type]
 
 
 def _column(values: ArrayLike) -> Floats:
@@ -92,14 +133,27 @@ def _column(values: ArrayLike) -> Floats:
     return np.array(values, dtype=np.float64).reshape(-1)
 
 
+def _utc(start: datetime) -> datetime:
+    if start.utcoffset() is None:
+        raise IdentError("naive-start", "The start of a record needs a time zone; give an aware datetime.")
+    return start.astimezone(UTC)
+
+
 def _check(columns: dict[str, Floats]) -> None:
+    n = len(columns["time"])
+    if any(len(c) != n for c in columns.values()):
+        lengths = ", ".join(f"{name} {len(c)}" for name, c in columns.items())
+        raise IdentError("length-mismatch", f"All columns need the same number of rows; here: {lengths}.")
+    if n < 2:
+        raise IdentError("too-few-rows", "A record needs at least two rows.", {"rows": n})
     for name, column in columns.items():
         bad = np.isinf(column) if name != "time" else ~np.isfinite(column)
         if bad.any():
             row = int(np.argmax(bad))
+            allowed = "replace it by a number" if name == "time" else "replace it by a number, or by NaN"
             raise IdentError(
                 "not-finite",
-                f"Row {row} of {name} is {column[row]}: replace it by a number, or leave it empty.",
+                f"Row {row} of {name} is {column[row]}: {allowed}.",
                 {"row": row, "column": name},
             )
     back = np.flatnonzero(np.diff(columns["time"]) <= 0)
@@ -112,9 +166,5 @@ def _check(columns: dict[str, Floats]) -> None:
         )
 
 
-def _spans(mask: np.ndarray[tuple[int], np.dtype[np.bool_]], reason: str) -> Iterable[Exclusion]:
-    edges = np.diff(np.concatenate(([0], mask.astype(np.int8), [0])))
-    return [
-        Exclusion(int(a), int(b), reason)
-        for a, b in zip(np.flatnonzero(edges == 1), np.flatnonzero(edges == -1), strict=True)
-    ]
+def _exclusions(flags: Flags, reason: str) -> list[Exclusion]:
+    return [Exclusion(a, b, reason) for a, b in spans(flags).tolist()]

@@ -8,13 +8,20 @@ import numpy as np
 from numpy.typing import NDArray
 
 Floats = NDArray[np.float64]
+Flags = NDArray[np.bool_]
+Lines = NDArray[np.int64]
 
-# A step longer than this many typical steps is a gap. Rounded or jittered stamps stay well below the first;
-# logs written on change space their rows freely and need the second.
-UNIFORM_GAP = 1.5
+# A step longer than this many typical steps is a gap. One row lost from a steady clock makes a step of 1.8
+# typical steps or more (20 among 10 and 11 ms); logs written on change space their rows freely and need the second.
+STEADY_GAP = 1.75
 IRREGULAR_GAP = 10.0
-# Stamps rounded to a few percent of the step still describe a uniform clock.
+# A clock is steady when nearly all steps lie this close to the typical one (stamps of 3, 3, 4 ms do).
+STEADY_SPREAD = 0.35
+STEADY_SHARE = 0.9
+# Stamps rounded to a few percent of the step still describe one grid.
 UNIFORM_TOLERANCE = 0.1
+# The sample time is given to this many digits: stamps carry no more, and the rounding of sums stays out of it.
+STEP_DIGITS = 12
 
 
 @dataclass(frozen=True, slots=True)
@@ -54,30 +61,50 @@ def uniform_step(time: Floats) -> float | None:
     n = len(time)
     if n < 2:
         return None
-    step = float(time[-1] - time[0]) / (n - 1)
-    off_grid = np.abs(time - (time[0] + step * np.arange(n)))
-    # The ends are on the grid by construction; a slow wander still shows in the middle.
-    return step if float(off_grid.max()) <= UNIFORM_TOLERANCE * step else None
+    # A least-squares line, because the end stamps are rounded like all others.
+    k = np.arange(n) - (n - 1) / 2
+    step = float(k @ time / (k @ k))
+    off_grid = time - step * k
+    spread = float(off_grid.max() - off_grid.min()) / 2
+    return float(f"{step:.{STEP_DIGITS}g}") if spread <= UNIFORM_TOLERANCE * step else None
 
 
-def split(time: Floats, usable: NDArray[np.bool_]) -> tuple[Segment, ...]:
-    """Cut a record where the clock jumps and where rows are unusable.
+def gaps(time: Floats) -> NDArray[np.intp]:
+    """Rows before which the clock jumps: the step to them is a gap.
 
-    time    (n,), s, strictly increasing over usable rows
+    time    (n,), s, strictly increasing
+    """
+    steps = np.diff(time)
+    if len(steps) == 0:
+        return np.zeros(0, dtype=np.intp)
+    typical = float(np.median(steps))
+    steady = float(np.mean(np.abs(steps - typical) <= STEADY_SPREAD * typical)) >= STEADY_SHARE
+    limit = (STEADY_GAP if steady else IRREGULAR_GAP) * typical
+    # Stamps are rounded: a step of exactly the limit must not become a gap by its last digit.
+    return np.flatnonzero(steps > limit * (1 + 1e-9)) + 1
+
+
+def spans(flags: Flags) -> NDArray[np.intp]:
+    """Runs of True as rows of (start, stop).
+
+    flags   (n,)
+    """
+    edges = np.flatnonzero(np.diff(flags.astype(np.int8), prepend=0, append=0))
+    return edges.reshape(-1, 2)
+
+
+def runs(time: Floats, usable: Flags) -> NDArray[np.intp]:
+    """Runs of usable rows without a gap, as rows of (start, stop); single rows included.
+
+    time    (n,), s, strictly increasing
     usable  (n,), False where a row is left out
     """
-    rows = np.flatnonzero(usable)
-    if len(rows) == 0:
-        return ()
-    if len(rows) == 1:
-        return (Segment(int(rows[0]), int(rows[0]) + 1, None),)
-    steps = np.diff(time[rows])
-    typical = float(np.median(steps))
-    regular = float(np.mean(np.abs(steps - typical) <= UNIFORM_TOLERANCE * typical)) >= 0.9
-    limit = (UNIFORM_GAP if regular else IRREGULAR_GAP) * typical
-    cuts = np.flatnonzero((steps > limit) | (np.diff(rows) > 1)) + 1
-    bounds = np.concatenate(([0], cuts, [len(rows)]))
-    return tuple(
-        Segment(int(rows[a]), int(rows[b - 1]) + 1, uniform_step(time[rows[a:b]]))
-        for a, b in zip(bounds[:-1], bounds[1:], strict=True)
-    )
+    first = usable.copy()
+    first[1:] &= ~usable[:-1]
+    jumps = gaps(time)
+    first[jumps] = usable[jumps]
+    starts = np.flatnonzero(first)
+    # A run ends where rows stop being usable or where the next one starts.
+    ends = usable.copy()
+    ends[:-1] &= ~usable[1:] | first[1:]
+    return np.column_stack((starts, np.flatnonzero(ends) + 1))

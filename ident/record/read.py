@@ -1,0 +1,223 @@
+"""read_csv: one log file to a LoopRecord, with everything that was assumed on the way as findings."""
+
+from __future__ import annotations
+
+from datetime import UTC, datetime
+from zoneinfo import ZoneInfo, ZoneInfoNotFoundError
+
+import numpy as np
+import pandas as pd
+
+from ident.errors import ReadError
+from ident.findings import Finding
+from ident.record import axis
+from ident.record.columns import Columns, Mapped, map_columns
+from ident.record.dialect import sniff
+from ident.record.encoding import LogSource, load
+from ident.record.numbers import Numbers, to_numbers
+from ident.record.quote import listed, printable, quoted
+from ident.record.record import LoopRecord, Source
+from ident.record.table import Table, read_table
+from ident.record.times import DATE_ORDERS, Stamps, from_numbers, from_text
+from ident.record.vocabulary import TIME_UNITS
+
+
+def read_csv(
+    source: LogSource,
+    *,
+    columns: Columns | None = None,
+    zone: str | None = None,
+    date_order: str | None = None,
+    start: datetime | str | None = None,
+    counts_per_rev: float | None = None,
+) -> LoopRecord:
+    """Read a CSV log of one speed loop.
+
+    source          path, bytes or binary file; delimiter , ; or tab, decimal point or comma
+    columns         {"time": ..., "setpoint": ..., "command": ..., "speed": ...}: header names, or positions from 0;
+                    what is left out is mapped by the header's words
+    zone            name of the time zone of stamps without offset, such as "Europe/Berlin"
+    date_order      "dmy" or "mdy" where the dates do not tell
+    start           time of the first row, for logs with elapsed time only; aware, ISO 8601, or local with `zone`
+    counts_per_rev  encoder counts are not converted yet: refused
+
+    Returns a LoopRecord whose `source` holds sha256, rows, columns and findings. Raises ReadError, its message naming
+    line and column where there is one.
+    """
+    if counts_per_rev is not None:
+        raise ReadError(
+            "not-offered", "Encoder counts are not converted yet: convert counts to speed before the upload."
+        )
+    if date_order is not None and date_order not in DATE_ORDERS:
+        raise ReadError(
+            "bad-option", f"date_order is one of {', '.join(DATE_ORDERS)}; not {quoted(str(date_order))}."
+        )
+    place = _zone(zone)
+    begin = _start(start, place)
+
+    body = load(source)
+    dialect = sniff(body.text)
+    mapped = map_columns(dialect.header, dialect.width, columns)
+    table = read_table(body.text, dialect)
+    findings = [*body.findings, *table.findings, *_quality(table, mapped)]
+    rows = len(table.line)
+
+    stamps = _stamps(table, mapped, dialect.decimal, place, date_order)
+    numbers = {
+        role: to_numbers(table.cells[i], name=mapped.headers[role], decimal=dialect.decimal, line=table.line)
+        for role, i in mapped.index.items()
+        if role != "time"
+    }
+    kept, dropped = axis.without_duplicates(stamps.time, [n.values for n in numbers.values()], table.line)
+    findings += [*dropped, *_missing(numbers, mapped, rows), *_dated(stamps, begin)]
+    time = stamps.time[kept]
+    values = {role: n.values[kept] for role, n in numbers.items()}
+    axis.check_increasing(time, table.line[kept])
+    findings += axis.findings(time, table.line[kept])
+    return LoopRecord(
+        time,
+        values["command"],
+        values["speed"],
+        values.get("setpoint"),
+        speed_unit=mapped.units["speed"] or mapped.units.get("setpoint", ""),
+        command_unit=mapped.units["command"],
+        start=stamps.start or begin,
+        source=Source(body.sha256, rows, mapped.headers, tuple(findings)),
+    )
+
+
+def _zone(zone: str | None) -> ZoneInfo | None:
+    if zone is None:
+        return None
+    try:
+        return ZoneInfo(zone)
+    except (ZoneInfoNotFoundError, ValueError, OSError) as cause:
+        raise ReadError(
+            "bad-option",
+            f'There is no time zone {quoted(str(zone))}: give a name such as "Europe/Berlin" or "UTC".',
+        ) from cause
+
+
+def _start(start: datetime | str | None, zone: ZoneInfo | None) -> datetime | None:
+    if start is None:
+        return None
+    try:
+        begin = datetime.fromisoformat(start) if isinstance(start, str) else start
+    except ValueError as cause:
+        raise ReadError(
+            "bad-option", f"start {quoted(str(start))} is no ISO 8601 time, such as 2026-03-02T08:15:00Z."
+        ) from cause
+    if begin.utcoffset() is None:
+        if zone is None:
+            raise ReadError(
+                "bad-option", "start needs an offset (2026-03-02T08:15:00Z), or give the zone too."
+            )
+        begin = begin.replace(tzinfo=zone)
+    return begin.astimezone(UTC)
+
+
+def _stamps(
+    table: Table, mapped: Mapped, decimal: str, zone: ZoneInfo | None, date_order: str | None
+) -> Stamps:
+    name = mapped.headers["time"]
+    cells = table.cells[mapped.index["time"]]
+    blank = cells.isna().to_numpy()
+    if mapped.date is not None:
+        blank = blank | table.cells[mapped.date].isna().to_numpy()
+    if blank.any():
+        row = int(np.argmax(blank))
+        raise ReadError(
+            "unreadable-time",
+            f"Line {table.line[row]}, column {quoted(name)}: the time stamp is missing; delete that row or fill it.",
+            {"line": int(table.line[row]), "column": printable(name), "count": int(blank.sum())},
+        )
+    if mapped.date is not None:
+        cells = table.cells[mapped.date].astype("str").str.strip() + " " + cells.astype("str").str.strip()
+    if cells.dtype.kind in "iuf" or _mostly_numbers(cells):
+        values = to_numbers(cells, name=name, decimal=decimal, line=table.line)
+        lost = np.isnan(values.values)
+        if lost.any():
+            row = int(np.argmax(lost))
+            raise ReadError(
+                "unreadable-time",
+                f"Line {table.line[row]}, column {quoted(name)}: {quoted(str(cells.iloc[row]))} is no number of seconds.",
+                {"line": int(table.line[row]), "column": printable(name), "count": int(lost.sum())},
+            )
+        scale = TIME_UNITS.get(mapped.units["time"].casefold())
+        return from_numbers(values.values, scale=scale, name=name, line=int(table.line[0]))
+    return from_text(cells, table.line, name=name, zone=zone, date_order=date_order)
+
+
+def _mostly_numbers(cells: pd.Series) -> bool:
+    try:
+        float(str(cells.iloc[0]).replace(",", "."))
+    except ValueError:
+        return False
+    return True
+
+
+def _missing(numbers: dict[str, Numbers], mapped: Mapped, rows: int) -> list[Finding]:
+    found = []
+    for role, column in numbers.items():
+        lost = column.blank + column.unread
+        if not lost:
+            continue
+        words = ", ".join(f"{word} ({count})" for word, count in column.words.items())
+        also = f"; in their place stood {words}" if words else ""
+        matter = "those rows are left out" if role != "setpoint" else "the setpoint is unknown there"
+        found.append(
+            Finding(
+                "missing-values",
+                "error" if 2 * lost > rows and role != "setpoint" else "warning",
+                f"{lost} of {rows} rows have no number for {role} ({quoted(mapped.headers[role])}): {matter}{also}. "
+                "Blank cells are not taken to mean unchanged.",
+                {
+                    "role": role,
+                    "count": lost,
+                    "blank": column.blank,
+                    **{f"word: {w}": c for w, c in column.words.items()},
+                },
+            )
+        )
+    return found
+
+
+def _dated(stamps: Stamps, begin: datetime | None) -> list[Finding]:
+    if stamps.start is not None:
+        if begin is None:
+            return []
+        return [
+            Finding(
+                "start-ignored", "info", "The stamps carry their own date, so the start given was not used."
+            )
+        ]
+    if begin is not None:
+        return []
+    if stamps.kind == "local":
+        message = (
+            "The stamps carry no offset and no zone was given: elapsed times hold, but the start is unknown."
+        )
+        return [Finding("zone-unknown", "warning", f'{message} Pass zone, for example "Europe/Berlin".')]
+    return [Finding("date-unknown", "info", "The log has no date: pass start to place it in time.")]
+
+
+def _quality(table: Table, mapped: Mapped) -> list[Finding]:
+    found = []
+    for i, name in mapped.quality.items():
+        counts = table.cells[i].value_counts(dropna=False)
+        other = int(counts.sum() - counts.iloc[0])
+        shown = listed([str(v) for v in counts.index[:4]])
+        found.append(
+            Finding(
+                "status-ignored",
+                "warning" if other else "info",
+                f"Column {quoted(name)} (status or mode) was not used"
+                + (
+                    f"; {other} rows differ from its commonest entry: {shown}. Check that they are good."
+                    if other
+                    else "."
+                ),
+                {"column": name, "rows_differing": other},
+            )
+        )
+    return found
