@@ -1,0 +1,34 @@
+// The whole report on one sheet, most wanted first.
+
+import { h } from "/page/dom.js";
+import { instant } from "/page/format.js";
+import { cautions, findings } from "/page/report/findings.js";
+import { headline } from "/page/report/headline.js";
+import { log } from "/page/report/log.js";
+import { parameters, profile } from "/page/report/parameters.js";
+import { predicted } from "/page/report/predicted.js";
+import { residuals } from "/page/report/residuals.js";
+import { robustness } from "/page/report/robustness.js";
+import { statistics } from "/page/report/statistics.js";
+import { trend } from "/page/report/trend.js";
+import { tunings } from "/page/report/tunings.js";
+import { againForm } from "/page/views/options.js";
+
+function download(report, name) {
+  return h("button", { type: "button", class: "button quiet", "data-testid": "download", onclick: () => {
+    const url = URL.createObjectURL(new Blob([JSON.stringify(report, null, 1)], { type: "application/json" }));
+    h("a", { href: url, download: `${name.replace(/\.\w+$/, "")}-report.json` }).click();
+    setTimeout(() => URL.revokeObjectURL(url), 1000);
+  } }, "Download JSON");
+}
+
+/** report: as the service gave it; name: of the file; onAgain(form): analyse the same log otherwise. */
+export function report(data, { name, onAgain, options }) {
+  return h("article", { class: "report", "data-testid": "report" },
+    h("header", { class: "report-head" },
+      h("div", {}, h("p", { class: "eyebrow" }, "Report on one log"), h("h1", {}, name), data.log.start && h("p", { class: "note" }, instant(data.log.start))),
+      h("div", { class: "actions" }, download(data, name), h("button", { type: "button", class: "button quiet", onclick: () => print() }, "Print"))),
+    headline(data), findings(data), cautions(data), trend(data), predicted(data), robustness(data), tunings(data),
+    parameters(data), profile(data), statistics(data), residuals(data), log(data, name),
+    againForm(options, onAgain, { "data-testid": "again-fold" }));
+}

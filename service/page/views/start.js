@@ -1,0 +1,44 @@
+// Where a log comes in: drop zone, file picker, sample.
+
+import { h } from "/page/dom.js";
+import { optionFields, options } from "/page/views/options.js";
+
+const EXAMPLE = `time,setpoint [rpm],command [%],speed [rpm]
+2026-11-17T09:12:30.000Z,600.0,42.50,600.5
+2026-11-17T09:12:30.100Z,600.0,42.84,596.0`;
+
+export function start({ samples, notice, onLog, onSample }) {
+  const form = h("form", { onsubmit: (event) => event.preventDefault() });
+  const take = (file) => file && onLog(file, options(form));
+  const input = h("input", {
+    id: "file", class: "unseen", type: "file", accept: ".csv,.txt,.tsv,.log,text/csv,text/plain", name: "log",
+    "data-testid": "file", onchange: (event) => take(event.target.files[0]),
+  });
+  const zone = h("div", { class: "drop", "data-testid": "drop" },
+    h("p", { class: "drop-title" }, "Drop a CSV log here"),
+    h("p", { class: "drop-or" }, input, h("label", { class: "button", for: "file" }, "Choose a file"),
+      samples.map((sample) => h("button", {
+        class: "button quiet", type: "button", title: sample.description, "data-testid": "sample", onclick: () => onSample(sample.name, options(form)),
+      }, samples.length === 1 ? "Use the sample log" : sample.title))),
+    samples.length === 1 && h("p", { class: "hint" }, `Sample: ${samples[0].title}. ${samples[0].description}`));
+  const lit = (on) => (event) => { event.preventDefault(); zone.classList.toggle("lit", on); };
+  zone.addEventListener("dragenter", lit(true));
+  zone.addEventListener("dragover", lit(true));
+  zone.addEventListener("dragleave", lit(false));
+  zone.addEventListener("drop", (event) => { lit(false)(event); take(event.dataTransfer.files[0]); });
+  form.append(zone, h("details", { class: "fold", "data-testid": "options" },
+    h("summary", {}, "Options: target, controller period, zone, column names"), optionFields()));
+  return h("section", { class: "sheet start" },
+    h("div", { class: "opening" },
+      h("h1", {}, "From a speed loop’s log to settings you can defend"),
+      h("p", { class: "lead" }, "Drop a log of one motor speed loop. Back comes a model of the motor with its uncertainty, and PI settings that keep the robustness you ask for, with the response to expect."),
+      notice && h("p", { class: "notice", role: "status", "data-testid": "notice" }, notice)),
+    form,
+    h("div", { class: "advice" },
+      h("section", {}, h("h2", {}, "What the log needs"),
+        h("p", {}, "Time, command and measured speed in columns; the setpoint too, if it was logged. Units in the header are read. Stamps may be ISO 8601, epoch or elapsed seconds."),
+        h("pre", { tabindex: "0", "aria-label": "The first rows of a log" }, EXAMPLE)),
+      h("section", {}, h("h2", {}, "What makes a good test"),
+        h("p", {}, "In manual, wait until the speed is steady. Move the command by a few times what the noise hides, hold it until the speed has settled, and move it back; twice is better than once. Moves of the setpoint in automatic work too."),
+        h("p", {}, "A one-off log is analysed and forgotten: nothing of it is kept."))));
+}
