@@ -1,0 +1,1 @@
+"""Api: routes, request and response shapes, problem+json. Knows no SQL."""

@@ -1,0 +1,90 @@
+"""The log in a request: raw, gzipped or a multipart field, received piece by piece under one limit.
+
+request.stream() -> limited (as sent) -> gunzip -> limited (unpacked) -> raw bytes, or the form's `file`
+"""
+
+from __future__ import annotations
+
+import io
+from collections.abc import AsyncGenerator, AsyncIterator
+
+from starlette.datastructures import UploadFile
+from starlette.formparsers import MultiPartException, MultiPartParser
+from starlette.requests import Request
+
+from service.api.gzip import gunzip
+from service.errors import ProblemError
+
+FIELD = "file"
+
+
+async def read_log(request: Request, limit: int) -> bytes:
+    """The log's bytes, decoded.
+
+    Raises ProblemError: too-large, unsupported-encoding, broken-gzip, broken-multipart, no-file.
+    """
+    announced = request.headers.get("content-length", "")
+    if announced.isdecimal() and int(announced) > limit:
+        raise too_large(limit)
+    pieces = limited(request.stream(), limit)
+    encoding = request.headers.get("content-encoding", "identity").strip().lower()
+    if encoding in ("gzip", "x-gzip"):
+        pieces = limited(gunzip(pieces), limit)
+    elif encoding not in ("identity", ""):
+        raise ProblemError(
+            "unsupported-encoding",
+            f"Content-Encoding {encoding!r} is not understood. Send the log plain or as gzip.",
+        )
+    if request.headers.get("content-type", "").lower().startswith("multipart/form-data"):
+        return await _from_form(request, pieces)
+    return await _joined(pieces)
+
+
+def too_large(limit: int) -> ProblemError:
+    return ProblemError(
+        "too-large",
+        f"The log is larger than the {limit:,} bytes accepted here. Send a shorter span or a coarser "
+        "sampling, or let the operator raise GAINWRIGHT_MAX_UPLOAD_BYTES.",
+        {"limit_bytes": limit},
+    )
+
+
+async def limited(pieces: AsyncIterator[bytes], limit: int) -> AsyncGenerator[bytes, None]:
+    """The same pieces, until they are more than `limit` bytes."""
+    size = 0
+    async for piece in pieces:
+        size += len(piece)
+        if size > limit:
+            raise too_large(limit)
+        yield piece
+
+
+async def _joined(pieces: AsyncIterator[bytes]) -> bytes:
+    whole = io.BytesIO()
+    async for piece in pieces:
+        whole.write(piece)
+    return whole.getvalue()
+
+
+async def _from_form(request: Request, pieces: AsyncGenerator[bytes, None]) -> bytes:
+    try:
+        form = await MultiPartParser(request.headers, pieces, max_files=1, max_fields=1).parse()
+    except MultiPartException as error:
+        raise ProblemError(
+            "broken-multipart",
+            f"The form cannot be read: {error.message} Send one file in the field {FIELD!r}.",
+        ) from error
+    try:
+        others = sorted(name for name in form if name != FIELD)
+        if others:
+            raise ProblemError(
+                "unexpected-field",
+                f"The form has a field {others[0]!r} and takes only {FIELD!r}. Options belong in the "
+                "address, such as /v1/reports?Ms=1.4.",
+            )
+        file = form.get(FIELD)
+        if not isinstance(file, UploadFile):
+            raise ProblemError("no-file", f"The form has no complete file in its field {FIELD!r}.")
+        return await file.read()
+    finally:
+        await form.close()

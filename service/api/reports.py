@@ -1,0 +1,56 @@
+"""POST /v1/reports: a log in, its report out, nothing kept."""
+
+from __future__ import annotations
+
+from typing import Annotated, Any
+
+from fastapi import APIRouter, Query, Request, Response
+
+import ident
+from service.api.body import FIELD, read_log
+from service.api.problems import documented
+from service.api.state import state
+from service.errors import Problem, ProblemError
+from service.work.options import Options
+
+router = APIRouter(prefix="/v1", tags=["reports"])
+
+UPLOAD: dict[str, Any] = {
+    "requestBody": {
+        "required": True,
+        "description": "The log, plain or with Content-Encoding gzip, or a form with it in the field `file`.",
+        "content": {
+            "text/csv": {"schema": {"type": "string"}},
+            "multipart/form-data": {
+                "schema": {
+                    "type": "object",
+                    "properties": {FIELD: {"type": "string", "format": "binary"}},
+                    "required": [FIELD],
+                    "additionalProperties": False,
+                }
+            },
+        },
+    }
+}
+
+
+@router.post(
+    "/reports",
+    summary="Analyse a log",
+    response_model=ident.Report,
+    responses=documented(400, 413, 415, 422, 500, 503),
+    openapi_extra=UPLOAD,
+)
+async def post_report(request: Request, options: Annotated[Options, Query()]) -> Response:
+    """The report of a step test or a closed-loop log: model, settings, margins, findings.
+
+    A log that can be read but has nothing in it to learn from is answered with 200 too; its report says so.
+    """
+    service = state(request)
+    with service.workers.admit():
+        source = await read_log(request, service.settings.max_upload_bytes)
+        answer = await service.workers.run(source, options)
+    service.metrics.analysed(answer)
+    if isinstance(answer, Problem):
+        raise ProblemError.of(answer)
+    return Response(answer, media_type="application/json")

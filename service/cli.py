@@ -1,0 +1,130 @@
+"""The command `gainwright`: serve the page and the API, or report on one log.
+
+Exit status: 0 done, 1 a fault of the program, 2 a log or an option that cannot be used.
+"""
+
+from __future__ import annotations
+
+import argparse
+import sys
+from collections.abc import Sequence
+from pathlib import Path
+from typing import Any, Literal, get_args, get_origin
+
+from pydantic import ValidationError
+
+from service.errors import Problem
+from service.settings import PREFIX, Settings
+from service.version import version
+from service.work.options import Options, wrong_options
+from service.work.threads import one_blas_thread
+
+# Whatever imports numpy is imported in a function below, after the number of BLAS threads is set.
+
+
+def main(arguments: Sequence[str] | None = None) -> int:
+    """Run the command; `arguments` without the program's name, None: those of the process."""
+    one_blas_thread()
+    asked = parser().parse_args(arguments)
+    try:
+        return int(asked.run(asked))
+    except KeyboardInterrupt:
+        return 130
+
+
+def parser() -> argparse.ArgumentParser:
+    top = argparse.ArgumentParser(
+        prog="gainwright",
+        description="From the log of a motor speed loop to its model, and to PI settings that stay robust.",
+        epilog="Example: gainwright report monday.csv --summary",
+    )
+    top.add_argument("--version", action="version", version=f"gainwright {version()}")
+    commands = top.add_subparsers(title="commands", required=True, metavar="serve | report")
+    serve = commands.add_parser(
+        "serve",
+        help="start the service: the page for the browser and the HTTP interface",
+        description="Start the service and say where its page is. Ctrl-C stops it. "
+        f"Every other setting is an environment variable {PREFIX}...; the README lists them.",
+    )
+    serve.add_argument("--host", help="address to listen on (127.0.0.1: this machine only)")
+    serve.add_argument("--port", help="port to listen on (8000); 0 takes a free one")
+    serve.set_defaults(run=_serve)
+    report = commands.add_parser(
+        "report",
+        help="analyse one log and print the report",
+        description="Analyse a CSV log with columns for time, command and measured speed (and the setpoint, "
+        "if it was logged) and print the report as JSON. The log is only read.",
+    )
+    report.add_argument("file", metavar="FILE", help="the log; - reads standard input")
+    report.add_argument("--summary", action="store_true", help="print a summary to read instead of JSON")
+    _add_options(report)
+    report.set_defaults(run=_report)
+    return top
+
+
+def _add_options(report: argparse.ArgumentParser) -> None:
+    group = report.add_argument_group("options (each also a query option of POST /v1/reports)")
+    for name, field in Options.model_fields.items():
+        spellings = dict.fromkeys((f"--{name.replace('_', '-')}", f"--{name}"))
+        choices = _choices(field.annotation)
+        default = "" if field.default is None else f" (default {field.default})"
+        group.add_argument(
+            *spellings,
+            dest=f"option_{name}",
+            metavar="|".join(choices) if choices else name.upper() if name != "Ms" else name,
+            help=f"{field.description}{default}".replace("%", "%%"),
+        )
+
+
+def _choices(annotation: Any) -> tuple[str, ...]:
+    """The words that a Literal, alone or in a union, allows."""
+    if get_origin(annotation) is Literal:
+        return get_args(annotation)
+    return tuple(word for part in get_args(annotation) for word in _choices(part))
+
+
+def _serve(asked: argparse.Namespace) -> int:
+    given: dict[str, Any] = {"host": asked.host, "port": asked.port}
+    try:
+        settings = Settings(**{name: value for name, value in given.items() if value is not None})
+    except ValidationError as error:
+        for fault in error.errors():
+            name = str(fault["loc"][-1])
+            print(f"gainwright: {name} ({PREFIX}{name.upper()}): {fault['msg']}", file=sys.stderr)
+        return 2
+    from service.serve import serve
+
+    return serve(settings)
+
+
+def _report(asked: argparse.Namespace) -> int:
+    given = {name: getattr(asked, f"option_{name}") for name in Options.model_fields}
+    try:
+        options = Options.model_validate({name: text for name, text in given.items() if text is not None})
+    except ValidationError as error:
+        return _refuse(wrong_options(error))
+    try:
+        source = sys.stdin.buffer.read() if asked.file == "-" else Path(asked.file).read_bytes()
+    except OSError as error:
+        return _refuse(Problem("unreadable-file", f"{asked.file} cannot be opened: {error.strerror}."))
+    from service.work.report import report_bytes, report_summary
+
+    answer = report_summary(source, options) if asked.summary else report_bytes(source, options)
+    if isinstance(answer, Problem):
+        return _refuse(answer)
+    output = answer.encode() if isinstance(answer, str) else answer
+    sys.stdout.buffer.write(output)
+    # The bytes are those of the HTTP answer; only a terminal wants its prompt on a new line.
+    if sys.stdout.isatty() and not output.endswith(b"\n"):
+        sys.stdout.buffer.write(b"\n")
+    sys.stdout.buffer.flush()
+    return 0
+
+
+def _refuse(problem: Problem) -> int:
+    print(f"gainwright: {problem.detail}\n  code: {problem.code}", file=sys.stderr)
+    return 1 if problem.code == "internal" else 2
+
+
+if __name__ == "__main__":
+    sys.exit(main())

@@ -1,0 +1,73 @@
+"""One log to one report: the only road from bytes to numbers, for the command and for every route."""
+
+from __future__ import annotations
+
+import logging
+from collections.abc import Callable
+from typing import TypeVar
+
+from pydantic import TypeAdapter
+
+import ident
+from service.errors import Problem
+from service.work.options import Options
+
+T = TypeVar("T")
+
+log = logging.getLogger("gainwright.work")
+
+_report = TypeAdapter(ident.Report)
+
+
+def report(source: bytes, options: Options) -> ident.Report:
+    """Read and analyse a log.
+
+    Raises ident.IdentError where the log cannot be read or the request has no answer.
+    """
+    record = ident.read_csv(
+        source,
+        columns=options.columns,
+        zone=options.zone,
+        date_order=options.date_order,
+        start=options.start,
+        counts_per_rev=options.counts_per_rev,
+    )
+    return ident.analyse(
+        record,
+        model=options.model,
+        Ms=options.Ms,
+        form=options.form,
+        goal=options.goal,
+        period=options.period,
+    )
+
+
+def to_json(report: ident.Report) -> bytes:
+    """The report's JSON, the bytes that are sent, printed and stored; NaN and infinity become null."""
+    return _report.dump_json(report)
+
+
+def report_bytes(source: bytes, options: Options) -> bytes | Problem:
+    """The JSON of a log's report, or the problem that stands in its way. Never raises.
+
+    It runs in worker processes, where an exception on its way back can break the pool, and SystemExit would
+    be raised again in the service.
+    """
+    return _told(source, options, to_json)
+
+
+def report_summary(source: bytes, options: Options) -> str | Problem:
+    """A log's report as text to read, or the problem that stands in its way. Never raises."""
+    return _told(source, options, ident.summary)
+
+
+def _told(source: bytes, options: Options, form: Callable[[ident.Report], T]) -> T | Problem:
+    try:
+        return form(report(source, options))
+    except ident.IdentError as error:
+        return Problem(error.code, error.message, dict(error.evidence))
+    except KeyboardInterrupt:
+        raise  # only the command gets one: workers ignore the signal
+    except BaseException:
+        log.exception("an analysis failed")
+        return Problem("internal", "The analysis failed by a fault of the program; its log says where.")

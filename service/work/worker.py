@@ -1,0 +1,37 @@
+"""How a worker process is made: from which kind of parent, and what it does before its first log."""
+
+from __future__ import annotations
+
+import multiprocessing
+import os
+import signal
+import sys
+import threading
+from multiprocessing.connection import wait
+from multiprocessing.context import BaseContext
+
+PRELOAD = ["service.work.report"]  # brings ident, scipy and pandas with it
+
+
+def context() -> BaseContext:
+    """A fork server with the numerics loaded on Linux (a new worker in 0.01 s), else spawn (2 to 3 s)."""
+    if sys.platform != "linux":
+        return multiprocessing.get_context("spawn")
+    server = multiprocessing.get_context("forkserver")
+    server.set_forkserver_preload(PRELOAD)
+    return server
+
+
+def prepare() -> None:
+    """Initializer of every worker."""
+    # Ctrl-C reaches the whole process group; the service alone decides when workers stop.
+    signal.signal(signal.SIGINT, signal.SIG_IGN)
+    # A service killed outright leaves its workers waiting for ever unless they watch it.
+    threading.Thread(target=_end_with_parent, daemon=True, name="end-with-parent").start()
+
+
+def _end_with_parent() -> None:
+    parent = multiprocessing.parent_process()
+    if parent is not None:
+        wait([parent.sentinel])
+        os._exit(1)
