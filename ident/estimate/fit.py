@@ -1,0 +1,45 @@
+"""Fit: a model with its uncertainty, how well it describes the log, and what was noticed on the way."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+
+from ident.estimate.friction import Friction
+from ident.evidence import Covariance, Estimate, Statistics
+from ident.findings import Finding
+from ident.plants import Fopdt
+from ident.record.segments import Floats
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class DeadTimeProfile:
+    """Sum of squares over its minimum along the dead time, everything else refitted.
+
+    L      (m,), s;  ratio  (m,), >= 1;  limit  the ratio that bounds the 95 % interval
+    """
+
+    L: Floats
+    ratio: Floats
+    limit: float
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class Fit:
+    """One fitted model.
+
+    parameters   {name: Estimate}, the model's own, in its order
+    derived      what follows from them: "K/T", per s
+    covariance   of the parameters, coloured residuals accounted for
+    simulated    (rows of the record,), the model's response to the logged command; NaN on rows not used
+    """
+
+    name: str
+    model: Fopdt
+    parameters: dict[str, Estimate]
+    derived: dict[str, Estimate]
+    covariance: Covariance
+    friction: Friction | None
+    statistics: Statistics
+    findings: tuple[Finding, ...]
+    simulated: Floats
+    profile: DeadTimeProfile | None

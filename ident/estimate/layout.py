@@ -1,0 +1,206 @@
+"""Stretches: what an estimator sees of a record, segment by segment.
+
+Each segment starts from its own initial condition; all share one model and one offset. How a start is
+treated decides what may be learnt from its first rows:
+
+settled   the command had been held at its first value long before the log: no transient is freed. Assumed,
+          and stated, where the command moves at once and seldom, because a free transient could then not
+          be told from the response itself.
+free      rows before the first move show the initial state: an exponential transient is freed.
+joined    the segment begins in the middle of the action (after a gap, or under a command that always moves):
+          the transient is freed and the first L seconds, which answer to a command nobody logged, are left out.
+"""
+
+from __future__ import annotations
+
+from dataclasses import dataclass, replace
+from typing import Literal
+
+import numpy as np
+
+from ident.errors import NotIdentifiable
+from ident.record import LoopRecord, Segment
+from ident.record.segments import Floats
+
+Start = Literal["settled", "free", "joined"]
+
+QUIET_ROWS = 5  # rows before the first move that support an initial state of their own
+RICH_MOVES = 10  # moves that let a transient be told from the response
+SHORTEST = 8  # rows; a shorter segment cannot pay for its own initial condition
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class Stretch:
+    """One segment ready for fitting.
+
+    row0        first row in the record
+    time        (n,), s from the segment's first row
+    step        s, or None where the rows are not on one grid
+    command     (n,), deviation from the record's first usable command
+    speed       (n,), deviation from the mean of the usable speeds
+    skip        rows at the start left out of the residuals
+    """
+
+    row0: int
+    time: Floats
+    step: float | None
+    command: Floats
+    speed: Floats
+    start: Start
+    skip: int = 0
+
+    @property
+    def rows(self) -> int:
+        return len(self.time)
+
+    @property
+    def intervals(self) -> float | Floats:
+        """The step, or the (n-1,) intervals where there is none."""
+        return self.step if self.step is not None else np.diff(self.time)
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class Layout:
+    """All stretches of a record, with the levels taken off them.
+
+    speed       (rows,), of the rows that enter the residuals, stretch after stretch
+    step        s, typical sample time: the median interval;  duration  s, of all stretches together
+    """
+
+    stretches: tuple[Stretch, ...]
+    command_level: float
+    speed_level: float
+    speed: Floats
+    step: float
+    duration: float
+
+    @property
+    def rows(self) -> int:
+        """Rows that enter the residuals."""
+        return len(self.speed)
+
+    @property
+    def freed(self) -> tuple[int, ...]:
+        """Indices of the stretches with a free transient."""
+        return tuple(i for i, s in enumerate(self.stretches) if s.start != "settled")
+
+    @property
+    def uniform(self) -> bool:
+        """Whether every stretch has its rows on one grid."""
+        return all(s.step is not None for s in self.stretches)
+
+    def skipping(self, dead_time: float) -> Layout:
+        """The same stretches, each joined one without the rows within `dead_time` of its start."""
+        return levelled(
+            tuple(
+                replace(
+                    s,
+                    skip=int(np.searchsorted(s.time, dead_time, side="right")) if s.start == "joined" else 0,
+                )
+                for s in self.stretches
+            ),
+            self.command_level,
+            self.speed_level,
+        )
+
+    def evened(self) -> Layout:
+        """Every stretch on the typical step: command held, speed interpolated. For start values only."""
+        if self.uniform:
+            return self
+        return levelled(
+            tuple(s if s.step is not None else _even(s, self.step) for s in self.stretches),
+            self.command_level,
+            self.speed_level,
+        )
+
+    def thinned(self, blocks: int) -> Layout:
+        """Block means of `blocks` rows of uniform stretches. For start values only."""
+        if blocks == 1:
+            return self
+        return levelled(
+            tuple(_thin(s, blocks) for s in self.stretches if s.rows >= 2 * blocks),
+            self.command_level,
+            self.speed_level,
+        )
+
+
+def lay_out(record: LoopRecord) -> Layout:
+    """Stretches of a record.
+
+    Raises NotIdentifiable (code too-short) where no segment has SHORTEST rows.
+    """
+    segments = [s for s in record.segments if s.rows >= SHORTEST]
+    if not segments:
+        raise NotIdentifiable(
+            "too-short",
+            f"No run of rows without a gap is longer than {SHORTEST} rows: log faster, or longer without gaps.",
+            {"longest_rows": max((s.rows for s in record.segments), default=0)},
+        )
+    command_level = float(record.command[segments[0].start])
+    speed_level = float(np.concatenate([record.speed[s.slice] for s in segments]).mean())
+    stretches = tuple(
+        _stretch(record, segment, first=i == 0, levels=(command_level, speed_level))
+        for i, segment in enumerate(segments)
+    )
+    return levelled(stretches, command_level, speed_level)
+
+
+def _stretch(record: LoopRecord, segment: Segment, *, first: bool, levels: tuple[float, float]) -> Stretch:
+    command = record.command[segment.slice] - levels[0]
+    moves = np.flatnonzero(np.diff(command))
+    quiet = int(moves[0]) + 1 if len(moves) else segment.rows
+    start: Start = "joined"
+    if first and quiet >= QUIET_ROWS:
+        start = "free"
+    elif first and len(moves) < RICH_MOVES:
+        start = "settled"
+    time = record.time[segment.slice]
+    time = time - time[0]
+    if segment.step is not None:
+        # Stamps are rounded by the logger; the clock behind them is not.
+        time = np.asarray(segment.step * np.arange(segment.rows), dtype=np.float64)
+    return Stretch(segment.start, time, segment.step, command, record.speed[segment.slice] - levels[1], start)
+
+
+def _even(stretch: Stretch, step: float) -> Stretch:
+    time = np.arange(0.0, stretch.time[-1] + 0.5 * step, step)
+    held = np.searchsorted(stretch.time, time, side="right") - 1
+    speed = np.interp(time, stretch.time, stretch.speed)
+    skip = int(np.searchsorted(time, stretch.time[min(stretch.skip, stretch.rows - 1)]))
+    return replace(stretch, time=time, step=step, command=stretch.command[held], speed=speed, skip=skip)
+
+
+def _thin(stretch: Stretch, blocks: int) -> Stretch:
+    rows = stretch.rows // blocks * blocks
+    command, speed = (series[:rows].reshape(-1, blocks).mean(axis=1) for series in (stretch.command, stretch.speed))
+    step = (stretch.step or 0.0) * blocks
+    return replace(
+        stretch,
+        time=np.asarray(step * np.arange(len(speed)), dtype=np.float64),
+        step=step,
+        command=command,
+        speed=speed,
+        skip=min(-(-stretch.skip // blocks), len(speed) - 1),
+    )
+
+
+def levelled(stretches: tuple[Stretch, ...], command_level: float, speed_level: float) -> Layout:
+    used = tuple(s for s in stretches if s.skip < s.rows)
+    if not used:
+        raise NotIdentifiable("too-short", "Every run of rows is shorter than the dead time: log longer.", {})
+    speed = used[0].speed[used[0].skip :]
+    if len(used) > 1:
+        speed = np.concatenate([s.speed[s.skip :] for s in used])
+    if all(s.step is not None for s in used):
+        # Rows weigh the steps, as they would in the median of all intervals.
+        steps = np.repeat([s.step or 0.0 for s in used], [s.rows for s in used]) if len(used) > 1 else used[0].step
+    else:
+        steps = np.concatenate([np.diff(s.time) for s in used])
+    return Layout(
+        used,
+        command_level,
+        speed_level,
+        speed,
+        float(np.median(steps)) if steps is not None else 0.0,
+        float(sum(s.time[-1] for s in used)),
+    )

@@ -1,0 +1,85 @@
+"""Search: from a log to the global least-squares FOPDT, coarse to fine.
+
+A first look on block means gives a few (T, L). Each is followed through finer and finer block means, every cell
+of the dead time in a window looked at on each level, down to the full record; the best is refined there, and its
+neighbouring cells are looked at once more.
+"""
+
+from __future__ import annotations
+
+import math
+
+import numpy as np
+
+from ident.estimate.cells import Cells, cells
+from ident.estimate.layout import Layout
+from ident.estimate.refine import Point, refine
+from ident.estimate.start import starts, thinning
+
+FINER = 8  # block means shrink by this factor from level to level
+MARGIN = 2  # cells beyond the window that a level's resolution asks for
+MOST_ROUNDS = 6
+SETTLED = 0.1  # relative change of T below which a level has done its work
+NEIGHBOURS = 6  # cells on either side of the refined minimum
+
+
+def search(layout: Layout) -> Point:
+    """The least-squares FOPDT of a layout: global over L up to half the longest stretch."""
+    even = layout.evened()
+    blocks = thinning(even)
+    ends = [_follow(even, start.T, start.L, blocks) for start in starts(even.thinned(blocks))]
+    _, T, L = min(ends)
+    return settle(layout, T, L)
+
+
+def settle(layout: Layout, T: float, L: float) -> Point:
+    """Refine from (T, L), then look at the neighbouring cells from the refined T and keep the least."""
+    if not layout.uniform:
+        h = layout.step
+        return min((refine(layout, T, max(L + s * h, 0.0)) for s in (-0.5, 0.0, 0.5)), key=lambda p: p.rss)
+    best = refine(layout, T, L)
+    rss, T_there, L_there = around(layout, best).minima()
+    i = int(np.argmin(rss))
+    if rss[i] < best.rss * (1.0 - 1e-9) and abs(L_there[i] - best.L) > 0.5 * layout.step:
+        nearby = float(np.clip(T_there[i], 0.5 * best.T, 2.0 * best.T))
+        best = min(best, refine(layout, nearby, float(L_there[i])), key=lambda p: p.rss)
+    return best
+
+
+def around(layout: Layout, at: Point, neighbours: int = NEIGHBOURS) -> Cells:
+    """The cells within `neighbours` of a point, at its T."""
+    cell = int(at.L / layout.step)
+    first = max(cell - neighbours, 0)
+    return cells(layout, at.T, first, cell - first + neighbours + 1)
+
+
+def _follow(layout: Layout, T: float, L: float, blocks: int) -> tuple[float, float, float]:
+    """One start followed from block means of `blocks` rows to the full record: (rss, T, L)."""
+    spacing = layout.step * blocks
+    while True:
+        level = layout.thinned(blocks)
+        width = math.ceil(spacing / level.step) + MARGIN
+        rss, T, L = _settle_cells(level, T, L, width)
+        if blocks == 1:
+            return rss, T, L
+        spacing = level.step
+        blocks = max(blocks // FINER, 1)
+
+
+def _settle_cells(layout: Layout, T: float, L: float, width: int) -> tuple[float, float, float]:
+    """Alternate the best cell of the window and a step of T until both stay."""
+    rss = math.inf
+    for _ in range(MOST_ROUNDS):
+        first = max(int(L / layout.step) - width, 0)
+        values, T_there, L_there = cells(layout, T, first, 2 * width + 1).minima()
+        i = int(np.argmin(values))
+        rss, L = float(values[i]), float(L_there[i])
+        T_next = float(T_there[i]) if np.isfinite(T_there[i]) and T_there[i] > 0 else 0.5 * T
+        change = float(np.clip(math.log(T_next / T), -0.9, 0.9))
+        T *= math.exp(change)
+        at_edge = i == 2 * width or (i == 0 and first > 0)
+        if abs(change) < SETTLED and not at_edge:
+            break
+        if not at_edge:
+            width = min(width, MARGIN + 1)
+    return rss, T, L

@@ -1,0 +1,106 @@
+"""Start: a global first look at (T, L) on a thinned record, every dead time at once.
+
+For each T of a coarse grid the lag's answer is correlated with the speed at every whole-sample dead time by one
+fast Fourier transform; with the running sums of the answer this gives the share of the speed's variance that a
+gain and an offset can explain. Transients wait for the fit itself.
+"""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+
+import numpy as np
+from scipy import fft
+
+from ident.estimate.layout import Layout, Stretch
+from ident.plants.hold import lag_gap
+from ident.record.segments import Floats
+
+FEWEST_ROWS = 1000  # never thin below
+KEPT_VARIANCE = 0.98  # of the command, by its block means
+GRID = 10  # time constants tried
+LONGEST_DEAD_TIME = 0.5  # of the longest stretch
+CANDIDATES = 3
+
+
+@dataclass(frozen=True, slots=True)
+class Start:
+    """A first (T, L), s, and the share of the speed's variance explained there."""
+
+    T: float
+    L: float
+    explained: float
+
+
+def thinning(layout: Layout) -> int:
+    """Rows per block mean: the most (a power of two) that keeps the command's variance and FEWEST_ROWS rows."""
+    command = np.concatenate([s.command for s in layout.stretches])
+    variance = float(command.var())
+    blocks = 1
+    while layout.rows // (2 * blocks) >= FEWEST_ROWS:
+        n = len(command) // (2 * blocks) * (2 * blocks)
+        kept = float(command[:n].reshape(-1, 2 * blocks).mean(axis=1).var())
+        if kept < KEPT_VARIANCE * variance:
+            break
+        blocks *= 2
+    return blocks
+
+
+def starts(layout: Layout) -> tuple[Start, ...]:
+    """The best few starting points of a uniform layout, best first: maxima over L that come near the best."""
+    h = layout.step
+    longest = max(s.rows for s in layout.stretches)
+    delays = max(int(LONGEST_DEAD_TIME * longest), 1)
+    grid = np.geomspace(0.3 * h, 2.0 * longest * h, GRID)
+    crossed = [_command_against_speed(s) for s in layout.stretches]
+    explained = np.stack([_explained(layout, crossed, T, delays) for T in grid])
+    best_T = explained.argmax(axis=0)
+    over_L = explained.max(axis=0)
+    rises = over_L >= np.concatenate(([-1.0], over_L[:-1]))
+    falls = over_L >= np.concatenate((over_L[1:], [-1.0]))
+    peaks = np.flatnonzero(rises & falls)
+    peaks = peaks[np.argsort(-over_L[peaks], kind="stable")]
+    share = over_L[peaks]
+    near = peaks[(share >= 0.9 * share[0]) & (1.0 - share <= 2.0 * (1.0 - share[0]) + 1e-9)][:CANDIDATES]
+    return tuple(Start(float(grid[best_T[d]]), float(d * h), float(over_L[d])) for d in near)
+
+
+def _command_against_speed(stretch: Stretch) -> Floats:
+    """Sum over the used rows of v[k-d] y[k] for d = 0..n-1, v the command's deviation from its first value."""
+    n = stretch.rows
+    y = stretch.speed.copy()
+    y[: stretch.skip] = 0.0
+    size = fft.next_fast_len(2 * n, real=True)
+    moved = stretch.command - stretch.command[0]
+    product = fft.irfft(np.conj(fft.rfft(moved, size)) * fft.rfft(y, size), size)
+    return np.asarray(product[:n], dtype=np.float64)
+
+
+def _explained(layout: Layout, crossed: list[Floats], T: float, delays: int) -> Floats:
+    """Share of the speed's variance explained at each dead time 0..delays-1 in steps."""
+    x_sum, x_square, x_y = (np.zeros(delays) for _ in range(3))
+    for stretch, command_speed in zip(layout.stretches, crossed, strict=True):
+        n, skip, level = stretch.rows, stretch.skip, float(stretch.command[0])
+        moved = lag_gap(stretch.command, stretch.intervals, T) + stretch.command - level
+        # The lag's answer is zero before the first row, so filtering the command and filtering its products
+        # with the speed (backwards in d) give the same sums, and the transform is needed once for all T.
+        reverse = command_speed[::-1]
+        filtered = (lag_gap(reverse, layout.step, T) + reverse)[::-1]
+        some = min(delays, n)
+        x_y[:some] += filtered[:some]
+        d = np.arange(delays)
+        low = np.minimum(np.maximum(skip - d, 0), n)
+        high = np.maximum(np.maximum(n - d, 0), low)
+        running = np.cumsum(np.stack((moved, moved * moved)), axis=1)
+        running = np.concatenate((np.zeros((2, 1)), running), axis=1)
+        moved_sum, moved_square = running[:, high] - running[:, low]
+        x_y += level * float(stretch.speed[skip:].sum())
+        x_sum += moved_sum + (n - skip) * level
+        x_square += moved_square + 2.0 * level * moved_sum + (n - skip) * level**2
+    y = layout.speed
+    covariance = x_y - x_sum * float(y.sum()) / len(y)
+    x_variance = x_square - x_sum**2 / len(y)
+    y_variance = float(y @ y) - float(y.sum()) ** 2 / len(y)
+    floor = 1e-12 * float(x_square.max()) + 1e-300
+    share = np.where(x_variance > floor, covariance**2 / np.maximum(x_variance * y_variance, 1e-300), 0.0)
+    return np.asarray(share, dtype=np.float64)

@@ -1,0 +1,108 @@
+"""Uncertainty of a FOPDT: covariance under the residuals' colour, intervals, the dead time's profile.
+
+The slopes are taken in log|K/T|, log T and L. Where a record is short against T only the ratio K/T is known, and
+in these coordinates that is one good and one poor direction instead of a singular matrix.
+"""
+
+from __future__ import annotations
+
+import math
+from dataclasses import dataclass
+
+import numpy as np
+
+from ident.estimate.fit import DeadTimeProfile
+from ident.estimate.layout import Layout
+from ident.estimate.refine import Point
+from ident.estimate.search import around
+from ident.evidence.colour import Colour, coloured_covariance
+from ident.evidence.estimates import NORMAL_95, Covariance, Estimate
+from ident.record.segments import Floats
+
+CHI2_95 = NORMAL_95**2
+OPEN = 1.0  # std of a logarithm beyond which the log leaves that side of an interval open
+PROFILE_CELLS = 24  # most cells on either side of the minimum
+PROFILE_POINTS = 121
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class Uncertainty:
+    """log_covariance: (3, 3) of log|K|, log T and L (s);  inflation: variance of L over that under white noise."""
+
+    log_covariance: Floats
+    inflation: float
+
+    def std_log_ratio(self) -> float:
+        """Std of log|K/T|."""
+        c = self.log_covariance
+        return math.sqrt(max(c[0, 0] + c[1, 1] - 2.0 * c[0, 1], 0.0))
+
+
+def uncertainty(at: Point, colour: Colour) -> Uncertainty:
+    """First-order covariance at the least-squares point."""
+    slopes = at.jacobian.copy()
+    slopes[0] *= at.K  # log|K/T| at fixed T
+    slopes[1] += slopes[0]  # log T at fixed K/T
+    coloured = coloured_covariance(slopes, colour)[:3, :3]
+    degrees = at.jacobian.shape[1] / max(at.jacobian.shape[1] - at.jacobian.shape[0], 1)
+    white = coloured_covariance(slopes, Colour(np.zeros(0), at.rss / at.jacobian.shape[1]))[:3, :3]
+    to_logs = np.array([[1.0, 1.0, 0.0], [0.0, 1.0, 0.0], [0.0, 0.0, 1.0]])
+    inflation = float(coloured[2, 2] / white[2, 2]) if white[2, 2] > 0 else 1.0
+    return Uncertainty(degrees * to_logs @ coloured @ to_logs.T, inflation)
+
+
+def log_estimate(value: float, std_log: float, unit: str) -> Estimate:
+    """An Estimate whose logarithm is normal; an interval side the log does not bound is None."""
+    size = abs(value)
+    low = size * math.exp(-NORMAL_95 * std_log) if std_log <= OPEN else None
+    high = size * math.exp(NORMAL_95 * std_log) if std_log <= OPEN else None
+    ci = (low, high)
+    if value < 0:
+        ci = (None if high is None else -high, None if low is None else -low)
+    return Estimate(value, size * std_log if std_log <= OPEN else None, ci, unit)
+
+
+def dead_time_profile(layout: Layout, at: Point, known: Uncertainty) -> DeadTimeProfile | None:
+    """The profile over the cells around the minimum; None where rows are not on one grid or fit exactly."""
+    std = math.sqrt(known.log_covariance[2, 2])
+    if not layout.uniform or at.rss <= 1e-20 * float(layout.speed @ layout.speed) or std == 0.0:
+        return None
+    h = layout.step
+    reach = max(1, min(math.ceil(4.5 * std / h), PROFILE_CELLS))
+    window = around(layout, at, reach)
+    low = max(at.L - 4.5 * std, window.first * h)
+    high = min(at.L + 4.5 * std, (window.first + len(window.gram)) * h)
+    L = np.unique(np.concatenate((np.linspace(low, high, PROFILE_POINTS), [at.L])))
+    rss, _ = window.profile(L)
+    ratio = np.maximum(rss / at.rss, 1.0)
+    return DeadTimeProfile(L, ratio, math.exp(CHI2_95 * known.inflation / layout.rows))
+
+
+def dead_time_estimate(L: float, std: float, profile: DeadTimeProfile | None) -> Estimate:
+    """The dead time with its interval from the profile; beyond the profile's ends the normal one, never below 0."""
+    low, high = max(L - NORMAL_95 * std, 0.0), L + NORMAL_95 * std
+    if profile is not None:
+        allowed = np.flatnonzero(profile.ratio <= profile.limit)
+        if len(allowed):
+            if allowed[0] > 0:
+                low = _crossing(profile, int(allowed[0]), -1)
+            elif profile.L[0] <= 0.0:
+                low = 0.0
+            if allowed[-1] < len(profile.L) - 1:
+                high = _crossing(profile, int(allowed[-1]), 1)
+    return Estimate(L, std, (low, high), "s")
+
+
+def _crossing(profile: DeadTimeProfile, inside: int, step: int) -> float:
+    """Where the profile crosses its limit between an allowed point and its neighbour."""
+    a, b = profile.ratio[inside], profile.ratio[inside + step]
+    share = (profile.limit - a) / (b - a) if b > a else 0.0
+    return float(profile.L[inside] + share * (profile.L[inside + step] - profile.L[inside]))
+
+
+def parameter_covariance(at: Point, known: Uncertainty) -> Covariance:
+    """Covariance of K, T, L in their own units, to first order."""
+    scale = np.diag([abs(at.K), at.T, 1.0])
+    sign = np.diag([math.copysign(1.0, at.K), 1.0, 1.0])
+    matrix = sign @ scale @ known.log_covariance @ scale @ sign
+    return Covariance(("K", "T", "L"), tuple(tuple(float(v) for v in row) for row in matrix))

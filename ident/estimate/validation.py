@@ -1,0 +1,65 @@
+"""Validation: the model fitted on the first part of a record, simulated over the rest."""
+
+from __future__ import annotations
+
+from dataclasses import replace
+
+import numpy as np
+
+from ident.errors import NotIdentifiable
+from ident.estimate.layout import SHORTEST, Layout, Stretch, levelled
+from ident.estimate.refine import Point, point, refine
+from ident.evidence.criteria import fit_percent
+
+TRAINED = 0.7  # share of the rows that the model is fitted on
+MOVES = 0.2  # of the command's whole span: what each part must move
+
+
+def validation_fit(layout: Layout, at: Point) -> float | None:
+    """NRMSE fit, %, of a simulation over the last rows by a model fitted to the first.
+
+    None where one of the two parts does not move enough to say anything.
+    """
+    train, row = _first_rows(layout, int(TRAINED * layout.rows))
+    if train is None or not _moves(layout, row):
+        return None
+    try:
+        trained = refine(train, at.T, at.L)
+    except (NotIdentifiable, np.linalg.LinAlgError):
+        return None
+    # The same (T, L) on the whole record; gain, offset and known transients are the trained ones.
+    whole = point(layout, trained.T, trained.L)
+    response, offset_and_transients = whole.jacobian[0], whole.jacobian[3:]
+    known = len(trained.nuisance)
+    base = trained.K * response + trained.nuisance @ offset_and_transients[:known]
+    # A stretch that begins later has an initial state of its own: taken from that stretch.
+    for transient in offset_and_transients[known:]:
+        rest = layout.speed - base
+        base = base + float(transient @ rest) / float(transient @ transient) * transient
+    return fit_percent(layout.speed[row:], base[row:])
+
+
+def _first_rows(layout: Layout, rows: int) -> tuple[Layout | None, int]:
+    """The stretches that make up the first `rows` used rows, and how many that came to."""
+    kept: list[Stretch] = []
+    taken = 0
+    for s in layout.stretches:
+        own = s.rows - s.skip
+        if taken + own > rows:
+            own = rows - taken
+            if own >= SHORTEST:
+                stop = s.skip + own
+                kept.append(replace(s, time=s.time[:stop], command=s.command[:stop], speed=s.speed[:stop]))
+                taken += own
+            break
+        kept.append(s)
+        taken += own
+    if not kept:
+        return None, 0
+    return levelled(tuple(kept), layout.command_level, layout.speed_level), taken
+
+
+def _moves(layout: Layout, row: int) -> bool:
+    command = np.concatenate([s.command[s.skip :] for s in layout.stretches])
+    span = float(np.ptp(command))
+    return min(float(np.ptp(command[:row])), float(np.ptp(command[row:]))) >= MOVES * span
