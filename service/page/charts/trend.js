@@ -72,7 +72,8 @@ export function trend(time, strips) {
     const [first, end] = [time[0], time[time.length - 1]];
     const { min, max } = charts[0].scales.x;
     const [low, high] = change(min, max, first, end);
-    const span = Math.min(high - low, end - first);
+    // Never narrower than a few rows, never wider than the log.
+    const span = Math.min(Math.max(high - low, (6 * (end - first)) / time.length), end - first);
     const start = Math.min(Math.max(low, first), end - span);
     charts.forEach((c) => c.setScale("x", { min: start, max: start + span }));
   }
@@ -90,7 +91,13 @@ export function trend(time, strips) {
       holders[k],
     ]), h("p", { class: "axis-note" }, "Time from the first sample, s. Drag across a strip to zoom; double-click for the whole log."));
 
-  const repaint = () => charts.forEach((c) => c.redraw(false));
+  const dark = matchMedia("(prefers-color-scheme: dark)");
+  const repaint = () => {
+    if (box.isConnected) return charts.forEach((c) => c.redraw(false));
+    dark.removeEventListener("change", repaint);
+    removeEventListener("repaint", repaint);
+    return null;
+  };
   new ResizeObserver(([entry]) => {
     const width = Math.round(entry.contentRect.width);
     if (!box.isConnected || width < 40) return;
@@ -100,7 +107,7 @@ export function trend(time, strips) {
       charts.forEach((c, k) => holders[k].append(c.root));
     }
   }).observe(box);
-  matchMedia("(prefers-color-scheme: dark)").addEventListener("change", repaint);
+  dark.addEventListener("change", repaint);
   addEventListener("repaint", repaint);
   return box;
 }

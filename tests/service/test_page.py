@@ -1,0 +1,285 @@
+"""The page in a real browser: a log goes in, the numbers on screen are those of the API."""
+
+from __future__ import annotations
+
+import hashlib
+import json
+import os
+import re
+import shutil
+import urllib.request
+from collections.abc import Callable, Iterator
+from dataclasses import dataclass, field
+from pathlib import Path
+from typing import Any
+
+import pytest
+from conftest import ROOT, Served
+from playwright.sync_api import Browser, FilePayload, Page, expect, sync_playwright
+
+SAMPLES = ROOT / "sample_logs"
+WIDE, NARROW = {"width": 1440, "height": 900}, {"width": 390, "height": 844}
+REPORT_MS = 60_000  # a slow machine under load; the page itself is quick
+
+
+@dataclass
+class Visit:
+    """A page with everything that went on behind it."""
+
+    page: Page
+    base: str
+    requests: list[str] = field(default_factory=list)
+    complaints: list[str] = field(default_factory=list)
+
+    def bring(self, name: str, body: bytes) -> None:
+        file: FilePayload = {"name": name, "mimeType": "text/csv", "buffer": body}
+        self.page.get_by_test_id("file").set_input_files(file)
+
+    def report(self, name: str, body: bytes) -> dict[str, Any]:
+        """Bring a log and wait for its report; the JSON that the page was given."""
+        with self.page.expect_response(lambda r: "/v1/reports" in r.url, timeout=REPORT_MS) as answer:
+            self.bring(name, body)
+        expect(self.page.get_by_test_id("report")).to_be_visible()
+        told: dict[str, Any] = answer.value.json()
+        return told
+
+    def value(self, hook: str) -> tuple[float, str]:
+        """A number on screen: exactly as given to the page, and as people read it."""
+        element = self.page.get_by_test_id(hook)
+        return float(element.get_attribute("value") or "nan"), element.inner_text()
+
+    def sideways(self) -> int:
+        """How many pixels the page is wider than its window."""
+        return int(self.page.evaluate("document.documentElement.scrollWidth - innerWidth"))
+
+
+@pytest.fixture(scope="module")
+def browser() -> Iterator[Browser]:
+    found = shutil.which("chromium")
+    if found is None:
+        if os.environ.get("CI") == "true":
+            pytest.fail("CI needs the chromium command")
+        pytest.skip("no chromium on this machine: the page is not tried in a browser")
+    with sync_playwright() as playwright:
+        # No sandbox: as root, and in most containers, Chromium will not start with one.
+        browser = playwright.chromium.launch(executable_path=found, args=["--no-sandbox"])
+        yield browser
+        browser.close()
+
+
+@pytest.fixture
+def visit(browser: Browser, served: Served) -> Iterator[Callable[..., Visit]]:
+    """Open the page: visit(path="/", viewport=WIDE)."""
+    contexts = []
+
+    def opened(path: str = "/", viewport: Any = WIDE) -> Visit:
+        context = browser.new_context(viewport=viewport)
+        contexts.append(context)
+        one = Visit(context.new_page(), f"http://{served.host}:{served.port}")
+        one.page.on("request", lambda request: one.requests.append(request.url))
+        one.page.on("pageerror", lambda error: one.complaints.append(str(error)))
+        one.page.on("console", lambda m: one.complaints.append(m.text) if m.type == "error" else None)
+        one.page.goto(one.base + path)
+        return one
+
+    yield opened
+    for context in contexts:
+        context.close()
+
+
+def shown_as(value: float, text: str) -> None:
+    """The text is the value rounded to the text's own decimals (a true minus sign is read as one)."""
+    plain = text.replace("\u2212", "-")
+    decimals = len(plain.partition(".")[2])
+    assert float(plain) == pytest.approx(value, abs=0.5000001 * 10**-decimals)
+    # Rounded, but to something worth reading: three digits at least.
+    assert len(re.sub(r"^0+", "", re.sub(r"\D", "", plain))) >= 3
+
+
+def test_the_numbers_on_the_page_are_those_of_the_api(visit: Callable[..., Visit], step_test: bytes) -> None:
+    one = visit()
+    told = one.report("step_test.csv", step_test)
+    request = urllib.request.Request(f"{one.base}/v1/reports", step_test, {"Content-Type": "text/csv"}, method="POST")
+    with urllib.request.urlopen(request) as answer:
+        assert json.load(answer) == told
+    parameters = told["fits"][told["selected"]]["parameters"]
+    settings = told["tunings"][told["recommended"]]["settings"]
+    hooks = {f"{place}-{name}": parameters[name]["value"] for name in "KTL" for place in ("headline", "parameter")}
+    hooks |= {f"setting-{name}": settings[name] for name in ("Kp", "Ti")}
+    for hook, expected in hooks.items():
+        value, text = one.value(hook)
+        assert value == expected, hook
+        shown_as(expected, text)
+    assert one.complaints == []
+
+
+def test_value_and_standard_deviation_agree_in_their_decimals(visit: Callable[..., Visit], step_test: bytes) -> None:
+    one = visit()
+    one.report("step_test.csv", step_test)
+    for name in "KTL":
+        cells = (
+            one.page.get_by_test_id("parameters").locator("tr").filter(has=one.page.get_by_test_id(f"parameter-{name}"))
+        )
+        value, std = cells.locator("td").nth(0).inner_text(), cells.locator("td").nth(1).inner_text()
+        assert len(value.partition(".")[2]) == len(std.partition(".")[2]), (value, std)
+
+
+def test_a_file_dropped_on_the_page_is_analysed(visit: Callable[..., Visit], step_test: bytes) -> None:
+    one = visit()
+    transfer = one.page.evaluate_handle(
+        """(text) => {
+            const transfer = new DataTransfer();
+            transfer.items.add(new File([text], "dropped.csv", { type: "text/csv" }));
+            return transfer;
+        }""",
+        step_test.decode(),
+    )
+    one.page.dispatch_event("[data-testid=drop]", "drop", {"dataTransfer": transfer})
+    expect(one.page.get_by_role("heading", name="dropped.csv")).to_be_visible(timeout=REPORT_MS)
+    expect(one.page.get_by_test_id("model")).to_contain_text("First-order")
+
+
+@pytest.mark.parametrize("viewport", [WIDE, NARROW], ids=["1440", "390"])
+@pytest.mark.parametrize("name", ["step_test", "setpoint_change", "oscillating", "nothing_to_learn"])
+def test_every_sample_draws_without_complaint_or_sideways_scrolling(
+    visit: Callable[..., Visit], name: str, viewport: dict[str, int]
+) -> None:
+    one = visit(viewport=viewport)
+    expect(one.page.get_by_test_id("drop")).to_be_visible()
+    assert one.sideways() <= 0
+    told = one.report(f"{name}.csv", (SAMPLES / f"{name}.csv").read_bytes())
+    expect(one.page.locator("[data-testid=part-trend] canvas").first).to_be_visible()
+    assert one.sideways() <= 0
+    assert one.complaints == []
+    # Nothing but the service's own, and no empty place where a number or a chart should be.
+    assert [url for url in one.requests if not url.startswith(one.base + "/")] == []
+    text = one.page.locator("body").inner_text()
+    for blot in ("undefined", "NaN", "null", "[object", "ident"):
+        assert re.search(rf"(?<!\w){re.escape(blot)}(?!\w)", text) is None, blot
+    charts = one.page.locator("svg.plot")
+    assert (charts.count() > 0) is (told["selected"] is not None)
+
+
+def test_a_log_without_information_says_why_and_what_to_do(visit: Callable[..., Visit]) -> None:
+    one = visit()
+    told = one.report("quiet.csv", (SAMPLES / "nothing_to_learn.csv").read_bytes())
+    assert told["selected"] is None
+    expect(one.page.get_by_test_id("reason")).to_have_text(told["record"]["excitation"]["reason"])
+    expect(one.page.get_by_test_id("advice")).to_have_text(told["record"]["advice"]["message"])
+    for part in ("predicted", "robustness", "tunings", "parameters", "statistics", "residuals"):
+        expect(one.page.get_by_test_id(f"part-{part}")).to_have_count(0)
+
+
+def test_a_refusal_shows_its_sentence_and_its_code(visit: Callable[..., Visit]) -> None:
+    one = visit()
+    with one.page.expect_response(lambda r: "/v1/reports" in r.url, timeout=REPORT_MS) as answer:
+        one.bring("picture.csv", b"\x89PNG\r\n\x1a\n" + bytes(range(256)) * 8)
+    told = answer.value.json()
+    assert answer.value.status >= 400
+    expect(one.page.get_by_test_id("problem-message")).to_have_text(told["detail"])
+    expect(one.page.get_by_test_id("problem-code")).to_have_text(told["code"])
+    # And the page goes on.
+    one.page.get_by_role("link", name="Bring another log").click()
+    expect(one.page.get_by_test_id("drop")).to_be_visible()
+
+
+def test_the_sample_opens_by_keyboard_and_has_an_address(visit: Callable[..., Visit]) -> None:
+    one = visit()
+    button = one.page.get_by_test_id("sample").first
+    expect(button).to_be_visible()
+    for _ in range(12):
+        one.page.keyboard.press("Tab")
+        if button.evaluate("node => node === document.activeElement"):
+            break
+    expect(button).to_be_focused()
+    assert button.evaluate("node => getComputedStyle(node).outlineStyle") == "solid"
+    one.page.keyboard.press("Enter")
+    expect(one.page.get_by_test_id("report")).to_be_visible(timeout=REPORT_MS)
+    assert one.page.url.endswith("/#/sample/step_test.csv")
+    one.page.reload()
+    expect(one.page.get_by_test_id("report")).to_be_visible(timeout=REPORT_MS)
+
+
+def test_a_one_off_report_is_gone_after_a_reload_and_says_so(visit: Callable[..., Visit], step_test: bytes) -> None:
+    one = visit()
+    one.report("step_test.csv", step_test)
+    one.page.reload()
+    expect(one.page.get_by_test_id("notice")).to_contain_text("Drop the log again")
+
+
+def test_the_options_reach_the_service(visit: Callable[..., Visit], step_test: bytes) -> None:
+    one = visit()
+    one.page.get_by_test_id("options").locator("summary").click()
+    one.page.get_by_label("Target Ms").fill("1.4")
+    told = one.report("step_test.csv", step_test)
+    assert told["options"]["Ms"] == 1.4
+    expect(one.page.get_by_test_id("margin-target")).to_have_text("1.4")
+    one.page.get_by_test_id("again-fold").locator("summary").click()
+    again = one.page.get_by_test_id("again")
+    expect(again.get_by_label("Target Ms")).to_have_value("1.4")
+    again.get_by_label("Target Ms").fill("2")
+    with one.page.expect_response(lambda r: "/v1/reports" in r.url, timeout=REPORT_MS) as answer:
+        again.get_by_role("button", name="Analyse again").click()
+    assert answer.value.json()["options"]["Ms"] == 2
+    expect(one.page.get_by_test_id("margin-target")).to_have_text("2")
+
+
+def test_markup_in_a_log_stays_text(visit: Callable[..., Visit], step_test: bytes) -> None:
+    trap = "<img src=x onerror=window.caught=1>"
+    one = visit()
+    head, _, rows = step_test.partition(b"\n")
+    renamed = head.replace(b"speed", b"speed " + trap.encode())
+    one.page.get_by_test_id("options").locator("summary").click()
+    one.page.get_by_label("Measured speed").fill(renamed.decode().split(",")[-1])
+    one.report(f"{trap}.csv", renamed + b"\n" + rows)
+    expect(one.page.get_by_role("heading", name=f"{trap}.csv")).to_be_visible()
+    expect(one.page.get_by_test_id("part-log")).to_contain_text(trap)
+    assert one.page.locator("main img").count() == 0
+    assert one.page.evaluate("window.caught") is None
+
+
+def test_zooming_moves_both_strips(visit: Callable[..., Visit], step_test: bytes) -> None:
+    one = visit()
+    one.report("step_test.csv", step_test)
+    trend = one.page.get_by_test_id("part-trend")
+    canvases = trend.locator("canvas")
+    expect(canvases).to_have_count(2)
+    before = [canvases.nth(i).evaluate("node => node.toDataURL()") for i in range(2)]
+    trend.get_by_role("button", name="Zoom in").click()
+    one.page.wait_for_timeout(200)
+    after = [canvases.nth(i).evaluate("node => node.toDataURL()") for i in range(2)]
+    assert before[0] != after[0]
+    assert before[1] != after[1]
+    trend.get_by_role("button", name="Show the whole log").click()
+    one.page.wait_for_timeout(200)
+    assert [canvases.nth(i).evaluate("node => node.toDataURL()") for i in range(2)] == before
+
+
+def test_charts_have_words_and_tables(visit: Callable[..., Visit], step_test: bytes) -> None:
+    one = visit()
+    one.report("step_test.csv", step_test)
+    plots = one.page.locator("svg.plot")
+    for i in range(plots.count()):
+        assert plots.nth(i).locator("title").text_content()
+        assert plots.nth(i).locator("desc").text_content()
+    table = one.page.get_by_test_id("part-trend").locator("details")
+    table.locator("summary").click()
+    assert table.locator("tbody tr").count() == 60
+
+
+def test_the_report_can_be_taken_home(visit: Callable[..., Visit], step_test: bytes) -> None:
+    one = visit()
+    told = one.report("step_test.csv", step_test)
+    with one.page.expect_download() as download:
+        one.page.get_by_test_id("download").click()
+    assert download.value.suggested_filename == "step_test-report.json"
+    assert json.loads(Path(download.value.path()).read_text()) == told
+
+
+def test_the_vendored_library_is_the_one_its_readme_names() -> None:
+    # Source: the sums taken from the npm package uplot 1.6.32 when it was copied.
+    folder = ROOT / "service" / "page" / "vendor" / "uplot"
+    sums = dict(re.findall(r"\| `([^`]+)` \| `([0-9a-f]{64})` \|", (folder / "README.md").read_text()))
+    assert set(sums) == {path.name for path in folder.iterdir()} - {"README.md"}
+    for name, expected in sums.items():
+        assert hashlib.sha256((folder / name).read_bytes()).hexdigest() == expected, name
