@@ -37,9 +37,7 @@ class HeldPlant:
         w = np.asarray(w, dtype=np.float64)
         # Raveled: a caller's own plant need not know about shapes.
         flat = w.ravel()
-        response = np.asarray(self.plant.frequency_response(flat), dtype=np.complex128) * np.exp(
-            -1j * self.lag * flat
-        )
+        response = np.asarray(self.plant.frequency_response(flat), dtype=np.complex128) * np.exp(-1j * self.lag * flat)
         if response.shape != flat.shape or not np.isfinite(response).all():
             raise Refused(
                 "plant-response-unusable",
@@ -58,15 +56,11 @@ def held_plant(plant: Any, period: float = 0.0, compute_delay: float = 0.0) -> H
     """
     for name, value in (("period", period), ("compute_delay", compute_delay)):
         if not (np.isfinite(value) and value >= 0):
-            raise Refused(
-                f"{name.replace('_', '-')}-out-of-range", f"{name} must be 0 s or more; got {value}."
-            )
+            raise Refused(f"{name.replace('_', '-')}-out-of-range", f"{name} must be 0 s or more; got {value}.")
     if not hasattr(plant, "frequency_response"):
         plant = getattr(plant, "model", plant)
     if not hasattr(plant, "frequency_response"):
-        raise Refused(
-            "plant-without-response", "A plant needs frequency_response(w): pass a fit, a model or your own."
-        )
+        raise Refused("plant-without-response", "A plant needs frequency_response(w): pass a fit, a model or your own.")
     h = getattr(plant, "h", None)
     if h is None:
         return HeldPlant(plant, period / 2.0 + compute_delay, np.inf)

@@ -92,8 +92,8 @@ def _peaks(run: Sweep, size: Callable[[Complex], Floats], at_ends: list[float]) 
     values = size(run.loop)
     inner, floor = values[1:-1], values[1:-1] * (1.0 - ROUNDING)
     rise = (inner >= values[:-2]) & (inner >= values[2:]) & ((floor > values[:-2]) | (floor > values[2:]))
-    # Neighbours differ by at most a few percent, so lower bumps cannot grow past the highest.
-    bumps = np.flatnonzero(rise & (inner > 0.7 * values.max())) + 1
+    # Neighbours are so close in angle that a bump this much lower cannot hide the highest peak.
+    bumps = np.flatnonzero(rise & (inner > 0.93 * values.max())) + 1
     w, height = maxima(lambda w: size(run.evaluate(w)), run.w[bumps - 1], run.w[bumps + 1])
     return Peaks(w, height, float(max([*at_ends, *height, values[-1]])))
 

@@ -147,9 +147,7 @@ def _bisect(loop: OpenLoop, w: Floats, response: Complex, focus: float) -> tuple
         from_one = (1.0 + response[1:]) / np.where(response[:-1] == -1.0, 1e-300, 1.0 + response[:-1])
         rough = (
             (np.abs(np.angle(ratio)) > TURN)
-            | (np.abs(np.log(np.abs(ratio))) > STEP)
-            & (np.abs(response[1:]) < LOUD)
-            & (np.abs(response[:-1]) > QUIET)
+            | (np.abs(np.log(np.abs(ratio))) > STEP) & (np.abs(response[1:]) < LOUD) & (np.abs(response[:-1]) > QUIET)
             | (np.abs(np.angle(from_one)) > 2 * TURN)
         ) & (w[:-1] < focus)
         if not rough.any() or len(w) > 200_000:

@@ -8,9 +8,9 @@ import numpy as np
 from numpy.typing import NDArray
 
 Floats = NDArray[np.float64]
-# One round narrows a bracket 16-fold (a maximum) or 32-fold (a root).
-POINTS = 33
-ROUNDS = 4
+# One round narrows a bracket 8-fold (a maximum) or 16-fold (a root).
+POINTS = 17
+ROUNDS = 5
 
 
 def _grid(lo: Floats, hi: Floats) -> Floats:

@@ -1,0 +1,84 @@
+"""Band: the frequencies where a controller for this plant is decided, and the plant's sign."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+
+import numpy as np
+from numpy.typing import NDArray
+
+from ident.errors import Refused
+from ident.loop.held_plant import Complex, HeldPlant
+
+Floats = NDArray[np.float64]
+
+PER_DECADE_SCAN = 20
+POINTS = 400
+# rad of lag, counted from the low-frequency asymptote: a controller acts on the phase between these.
+EARLY, LATE = 0.05, 3.5
+FADED = 0.05  # of abs(P) where the lag is LATE: what lies beyond is far too small to come near -1
+UNBOUNDED_LAG = 1.6  # rad: a plant that never lags more than 90 degrees takes any gain
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class Band:
+    """Plant response, sign taken out, on a grid where the loop is decided.
+
+    sign      of the plant's low-frequency gain
+    w, plant  (n,) rad/s increasing, (n,) sign * P(jw)
+    """
+
+    source: HeldPlant
+    sign: float
+    w: Floats
+    plant: Complex
+
+    def with_points(self, w: Floats) -> Band:
+        """The same band with further frequencies in it."""
+        w = np.setdiff1d(w, self.w)
+        both = np.concatenate([self.w, w])
+        order = np.argsort(both)
+        plant = np.concatenate([self.plant, self.sign * self.source(w)])
+        return Band(self.source, self.sign, both[order], plant[order])
+
+
+def find_band(plant: HeldPlant) -> Band:
+    """Scan all decades for the phase between EARLY and LATE, then grid it finely.
+
+    Raises Refused: unbounded (no delay and at most one pole more than zeros), plant-response-unusable.
+    """
+    # One scan from nanoseconds to decades; a stated delay moves its centre, so that time scales out.
+    centre = 1.0 / plant.known_delay if plant.known_delay > 0 else 1.0
+    top = min(centre * 1e9, plant.w_max)
+    bottom = min(centre * 1e-9, top * 1e-6)
+    scan = np.geomspace(bottom, top, round(np.log10(top / bottom) * PER_DECADE_SCAN))
+    response = plant(scan)
+    order = round(-float(np.log10(np.abs(response[PER_DECADE_SCAN] / response[0]))))
+    asymptote = (response[0] * (1j) ** order).real
+    if order < 0 or asymptote == 0:
+        raise Refused("plant-without-gain", "The plant has no gain at low frequency, so integral action cannot work.")
+    sign = float(np.sign(asymptote))
+    lag = order * np.pi / 2 - np.unwrap(np.angle(sign * response * 1j**order))
+    if plant.known_delay == 0 and np.isinf(plant.w_max) and lag[-1] < UNBOUNDED_LAG and _settled(plant, top):
+        raise _unbounded()
+    late = np.flatnonzero(lag > LATE)
+    last = int(late[0]) if len(late) else int(np.argmax(lag > lag.max() - 0.02))
+    early = np.flatnonzero(lag[: last + 1] < max(EARLY, lag[0] + EARLY))
+    first = int(early[-1]) if len(early) else 0
+    loud = np.flatnonzero(np.abs(response) > FADED * np.abs(response[last]))
+    end = float(min(scan[max(last, int(loud[-1]))], scan[last] * 30.0))
+    w = np.geomspace(scan[first] / 3.0, min(end * 3.0, plant.w_max), POINTS)
+    return Band(plant, sign, w, sign * plant(w))
+
+
+def _settled(plant: HeldPlant, w: float) -> bool:
+    phase = np.angle(plant(w * np.array([1.0, 0.73, 0.51, 0.37])))
+    return float(np.ptp(phase)) < 1e-3
+
+
+def _unbounded() -> Refused:
+    return Refused(
+        "unbounded",
+        "Without dead time, hold or computing delay this plant takes any gain, so no largest gain exists: "
+        "give the controller's period, the computing delay, or a model with dead time.",
+    )

@@ -1,0 +1,31 @@
+"""SIMC: Skogestad's PI rule for a first-order plant with dead time."""
+
+from __future__ import annotations
+
+import numpy as np
+
+from ident.errors import Refused
+from ident.loop import PidSettings
+from ident.plants import Fopdt
+
+
+def simc(K: float, T: float, L: float, *, Tc: float | None = None) -> PidSettings:
+    """Kp = T/(K (Tc + L)), Ti = min(T, 4 (Tc + L)): Skogestad 2003, J. Process Control 13, 291-309.
+
+    K, T, L  of the plant; L is all the dead time in the loop, half the controller's period and the computing
+             delay included, s
+    Tc       closed-loop time constant, s; L unless given
+    Raises Refused: plant-out-of-range, closed-loop-time-missing (L = 0 and no Tc), closed-loop-time-out-of-range.
+    """
+    Fopdt(K, T, L)
+    if Tc is None:
+        if L == 0:
+            raise Refused(
+                "closed-loop-time-missing",
+                "Without dead time the rule needs the closed-loop time constant Tc: give Tc, or the controller's "
+                "period.",
+            )
+        Tc = L
+    if not (np.isfinite(Tc) and Tc > -L):
+        raise Refused("closed-loop-time-out-of-range", f"Tc must be above -L = {-L:g} s, usually L or more; got {Tc}.")
+    return PidSettings(T / (K * (Tc + L)), min(T, 4.0 * (Tc + L)))

@@ -1,0 +1,88 @@
+"""Tuning: one proposal with the margins it really has, and `tune`, which makes it for a robustness target."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+from typing import Any
+
+import numpy as np
+
+from ident.errors import Refused
+from ident.findings import Finding
+from ident.loop import Margins, PidSettings, margins
+from ident.loop.held_plant import held_plant
+from ident.tune.band import find_band
+from ident.tune.largest_ki import largest_ki
+from ident.tune.predicted import Predicted
+
+FORMS = ("pi", "pid")
+GOALS = ("integral", "load", "setpoint")
+
+
+@dataclass(frozen=True, slots=True)
+class Tuning:
+    """One proposal.
+
+    method     largest-ki | simc
+    form       pi | pid
+    margins    of the loop with half the controller's period and the computing delay in it
+    predicted  None where the plant is not one that is simulated
+    because    one sentence: what makes these settings
+    """
+
+    method: str
+    form: str
+    settings: PidSettings
+    margins: Margins
+    predicted: Predicted | None
+    findings: tuple[Finding, ...]
+    because: str
+
+
+def tune(
+    plant: Any,
+    *,
+    Ms: float = 1.6,
+    form: str = "pi",
+    goal: str = "integral",
+    period: float = 0.0,
+    compute_delay: float = 0.0,
+) -> Tuning:
+    """Settings that are best for a goal while the loop is stable and max(Ms, Mt) stays at the target.
+
+    plant          a fit, a model, or anything with frequency_response(w), taken to be stable, gain of any sign
+    Ms             target, > 1; sensible 1.2 (calm) to 2 (sharp)
+    goal           integral: the largest ki
+    period         controller sample time, s, 0 for analogue: half of it is dead time;  compute_delay  s
+    The setpoint weight is 1: it does not touch the margins (see choose_setpoint_weight).
+    Raises Refused: target-out-of-range, unbounded, not-offered, no-settings-found and those of `margins`.
+    """
+    check_request(Ms, form, goal)
+    held = held_plant(plant, period, compute_delay)
+    settings = largest_ki(find_band(held), Ms)
+    return Tuning(
+        "largest-ki",
+        form,
+        settings,
+        margins(held.plant, settings, period=period, compute_delay=compute_delay),
+        None,
+        (),
+        f"The largest integral gain, {settings.ki:.4g}, with Ms and Mt at most {Ms:g}.",
+    )
+
+
+def check_request(Ms: float, form: str, goal: str) -> None:
+    """Refuse a target, form or goal that has no answer here."""
+    if not (np.isfinite(Ms) and Ms > 1.0):
+        raise Refused(
+            "target-out-of-range",
+            f"Ms must be above 1, and 1.2 (calm) to 2 (sharp) is sensible; got {Ms:g}.",
+        )
+    if form not in FORMS or goal not in GOALS:
+        raise Refused(
+            "not-offered", f"form is one of {', '.join(FORMS)}; goal one of {', '.join(GOALS)}; got {form}, {goal}."
+        )
+    if form == "pid":
+        raise Refused("not-offered", 'PID settings are not offered yet: use form="pi".')
+    if goal != "integral":
+        raise Refused("not-offered", f'The goal "{goal}" is not offered yet: use goal="integral".')
