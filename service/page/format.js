@@ -17,7 +17,8 @@ export function significant(value, digits = 4) {
   if (!known(value)) return UNKNOWN;
   if (value === 0) return "0";
   if (Math.abs(value) < 1e-4 || Math.abs(value) >= 1e7) return scientific(value, digits - 1);
-  const rounded = Number(value.toPrecision(digits));
+  // Digits before the point are never replaced by zeros.
+  const rounded = Math.abs(value) >= 10 ** digits ? value : Number(value.toPrecision(digits));
   return minus(rounded.toFixed(Math.max(0, digits - 1 - exponent(rounded))));
 }
 

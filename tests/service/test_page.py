@@ -283,3 +283,51 @@ def test_the_vendored_library_is_the_one_its_readme_names() -> None:
     assert set(sums) == {path.name for path in folder.iterdir()} - {"README.md"}
     for name, expected in sums.items():
         assert hashlib.sha256((folder / name).read_bytes()).hexdigest() == expected, name
+
+
+# Sources: JCGM 100:2008 (GUM) 7.2.6, two digits of the standard uncertainty and the value to the same decimal
+# place; its example 100.021 47 g with 0.35 mg. The others by hand from that rule.
+ESTIMATES = [
+    ((100.02147, 0.00035), ("100.02147", "0.00035")),
+    ((14.58734, 0.02131), ("14.587", "0.021")),
+    ((-0.51249, 0.0996), ("\u22120.51", "0.10")),  # 0.0996 is 0.10 with two digits
+    ((2461.7, 137.0), ("2462", "137")),
+    ((3.0, None), ("3.000", "–")),
+    ((4.2e-9, 3.1e-10), ("4.200 × 10⁻⁹", "3.100 × 10⁻¹⁰")),
+]
+
+
+def test_estimates_are_rounded_by_their_uncertainty(visit: Callable[..., Visit]) -> None:
+    shown = visit().page.evaluate(
+        """async (estimates) => {
+            const { estimate } = await import("/page/format.js");
+            return estimates.map(([value, std]) => {
+              const one = estimate({ value, std, ci95: [null, null] });
+              return [one.value, one.std];
+            });
+        }""",
+        [list(given) for given, _ in ESTIMATES],
+    )
+    assert shown == [list(expected) for _, expected in ESTIMATES]
+
+
+# By hand; the third is a number that rounds up into another decade.
+SIGNIFICANT = [
+    (0.157312, "0.1573"),
+    (1.62, "1.620"),
+    (0.99999, "1.000"),
+    (-12345.6, "\u221212346"),
+    (0, "0"),
+    (2e-6, "2.000 × 10⁻⁶"),
+]
+
+
+def test_four_significant_digits(visit: Callable[..., Visit]) -> None:
+    shown = visit().page.evaluate(
+        """async (values) => {
+            const { significant } = await import("/page/format.js");
+            return values.map((value) => significant(value, 4));
+        }""",
+        [value for value, _ in SIGNIFICANT],
+    )
+    assert shown == [expected for _, expected in SIGNIFICANT]

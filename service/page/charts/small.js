@@ -21,9 +21,19 @@ export function autocorrelation(width, { lag, value, bound }, describe) {
   return node;
 }
 
-/** {parameter, value, ratio, unit} with the estimate and its interval marked. */
-export function profile(width, { parameter, value, ratio, unit }, estimate, describe) {
-  const top = Math.max(...ratio);
+/** Where the valley is: points whose ratio stays within sight of the limit, and one more on each side. */
+function valley(ratio, limit) {
+  const sight = 1 + 30 * (limit - 1);
+  const inside = ratio.flatMap((r, i) => (r <= sight ? [i] : []));
+  return [Math.max(0, inside[0] - 1), Math.min(ratio.length, inside[inside.length - 1] + 2), sight];
+}
+
+/** {parameter, value, ratio, limit, unit} with the estimate and its interval marked. */
+export function profile(width, curve, estimate, describe) {
+  const { parameter, limit, unit } = curve;
+  const [from, to, sight] = valley(curve.ratio, limit);
+  const [value, ratio] = [curve.value.slice(from, to), curve.ratio.slice(from, to)];
+  const top = Math.min(Math.max(...ratio, limit), sight);
   const { node, X, Y, area } = plot({
     width, height: 220, title: `Misfit along ${parameter}`, describe, margin: { top: 28 },
     x: { domain: [value[0], value[value.length - 1]], label: `${parameter}, ${unit}` },
@@ -33,6 +43,7 @@ export function profile(width, { parameter, value, ratio, unit }, estimate, desc
   const bottom = Y(1 - 0.05 * (top - 1 || 1));
   if (low !== null && high !== null) area.append(s("rect", { class: "band", x: X(low), width: Math.max(1, X(high) - X(low)), y: 0, height: bottom }));
   if (estimate) area.append(s("line", { class: "line other", x1: X(estimate.value), x2: X(estimate.value), y1: 0, y2: bottom }));
-  area.append(line(X, Y, value, ratio, { class: "line best" }));
+  area.append(s("line", { class: "line limit", x1: X(value[0]), x2: X(value[value.length - 1]), y1: Y(limit), y2: Y(limit) }),
+    line(X, Y, value, ratio, { class: "line best" }));
   return node;
 }

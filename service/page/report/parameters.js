@@ -40,7 +40,7 @@ export function profile(report) {
   const said = shown ? `Least at ${shown.value} ${one.unit}; 95 % interval ${interval(shown)}.` : "The lowest point is the best value.";
   const name = curve.parameter === "L" ? "Dead-time profile" : `Profile along ${curve.parameter}`;
   return section("profile", name, "How much worse the fit gets with this parameter held elsewhere and the others fitted anew. A narrow valley is a well-known number.",
-    h("p", { class: "note" }, said, " The band is the interval, the dashed line the estimate."),
+    h("p", { class: "note" }, said, " The band is the interval, the dashed line the estimate, the dotted line the ratio that bounds the interval."),
     responsive((width) => profileChart(width, curve, one, said)),
     dataTable(name, [[`${curve.parameter}, ${curve.unit}`, curve.value], ["Ratio", curve.ratio]]));
 }

@@ -16,12 +16,7 @@ export const PARAMETERS = {
 };
 
 export const METHODS = {
-  "max-ki": "Largest integral gain within the target",
-  max_ki: "Largest integral gain within the target",
   "largest-ki": "Largest integral gain within the target",
-  integral: "Largest integral gain within the target",
-  load: "Least error after a load step",
-  setpoint: "Least error after a setpoint step",
   simc: "SIMC rule",
 };
 
