@@ -42,9 +42,7 @@ def check_increasing(time: Floats, line: Lines) -> None:
         advice = "export stamps with the full resolution of the sampling"
     else:
         what = f"lies {-step:.6g} s before the row before it"
-        advice = (
-            "sort the rows if they were mixed up, or export the parts before and after a clock change apart"
-        )
+        advice = "sort the rows if they were mixed up, or export the parts before and after a clock change apart"
     raise ReadError(
         "time-not-increasing",
         f"Line {line[row]} {what} ({len(bad)} such rows): {advice}.",

@@ -77,19 +77,14 @@ def map_columns(above: tuple[tuple[str, ...], ...], width: int, columns: Columns
         for role, i in index.items()
     }
     shown = {
-        role: printable(names[i]) if names else f"column {i}"
-        for role, i in sorted(index.items(), key=lambda e: e[1])
+        role: printable(names[i]) if names else f"column {i}" for role, i in sorted(index.items(), key=lambda e: e[1])
     }
     if date is not None and names:
         shown["time"] = f"{printable(names[date])} + {shown['time']}"
-    return Mapped(
-        index, date, shown, units, {i: printable((names or [])[i]) for i in kinds.get("quality", [])}
-    )
+    return Mapped(index, date, shown, units, {i: printable((names or [])[i]) for i in kinds.get("quality", [])})
 
 
-def _header(
-    above: tuple[tuple[str, ...], ...], width: int
-) -> tuple[list[str] | None, tuple[str, ...] | None]:
+def _header(above: tuple[tuple[str, ...], ...], width: int) -> tuple[list[str] | None, tuple[str, ...] | None]:
     """The row with the most known words, and the units row under it."""
     known = [sum(meaning(understand(cell)) is not None for cell in row if cell) for row in above]
     wide = [i for i, row in enumerate(above) if sum(bool(c) for c in row) >= min(2, width)]
@@ -119,13 +114,9 @@ def _find(role: str, want: str | int, names: list[str] | None, width: int) -> in
     if 0 <= position < width:
         return position
     among = (
-        f"the headers are {listed(names)}"
-        if names
-        else f"the log has no header and {width} columns, 0 to {width - 1}"
+        f"the headers are {listed(names)}" if names else f"the log has no header and {width} columns, 0 to {width - 1}"
     )
-    raise ReadError(
-        "missing-column", f"There is no column {quoted(str(want))} for {role}: {among}.", {"role": role}
-    )
+    raise ReadError("missing-column", f"There is no column {quoted(str(want))} for {role}: {among}.", {"role": role})
 
 
 def _by_words(index: dict[str, int], kinds: dict[str, list[int]], names: list[str]) -> int | None:

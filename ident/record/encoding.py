@@ -1,4 +1,4 @@
-"""From a source to UTF-8 bytes: byte order marks, the cp1252 fallback, power-cut tails, and what is no text."""
+"""From a source to UTF-8 bytes: byte order marks, Windows-1252, power-cut tails, and what is no text."""
 
 from __future__ import annotations
 
@@ -44,6 +44,8 @@ def load(source: LogSource) -> Body:
     text, findings = _utf8(raw)
     text, cut = _without_nul_tail(text)
     if not text.strip():
+        if raw.strip(b"\0\r\n\t ") not in (b"", *(mark for mark, _ in _MARKS)):
+            raise ReadError("not-text", _NOT_TEXT)
         raise ReadError("empty-log", "The log is empty: send the rows of a CSV file.", {"bytes": len(raw)})
     probe = text[:_PROBE]
     if b"\0" in text or len(probe) - len(probe.translate(None, _CONTROLS)) > len(probe) // 100:
@@ -82,9 +84,7 @@ def _utf8(raw: bytes) -> tuple[bytes, list[Finding]]:
             try:
                 return body.decode(name).encode(), []
             except UnicodeError as cause:
-                raise ReadError(
-                    "not-text", f"The file says it is {name} but is damaged: export it again."
-                ) from cause
+                raise ReadError("not-text", f"The file says it is {name} but is damaged: export it again.") from cause
     else:
         body = raw
     try:
@@ -102,7 +102,8 @@ def _utf8(raw: bytes) -> tuple[bytes, list[Finding]]:
         Finding(
             "encoding-assumed",
             "warning",
-            "The log is not UTF-8 and has no byte order mark; it was read as Windows-1252. Check the headers and units.",
+            "The log is not UTF-8 and has no byte order mark; it was read as Windows-1252. Check "
+            "the headers and units.",
             {"encoding": "cp1252"},
         )
     ]

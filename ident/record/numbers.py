@@ -1,4 +1,4 @@
-"""From cells to numbers: plain ones as they stand, units and thousands signs by one rule for the whole column."""
+"""From cells to numbers: plain ones as they stand, others by one rule for the whole column."""
 
 from __future__ import annotations
 
@@ -57,8 +57,8 @@ def to_numbers(cells: pd.Series, *, name: str, decimal: str, line: Lines) -> Num
         at = int(line[np.argmax(bad)])
         raise ReadError(
             "not-finite",
-            f"Line {at}, column {quoted(name)}: the number is infinite or too large; replace it by a number or leave "
-            "the cell empty.",
+            f"Line {at}, column {quoted(name)}: the number is infinite or too large; replace it by "
+            "a number or leave the cell empty.",
             {"line": at, "column": printable(name), "count": int(bad.sum())},
         )
     if not np.isfinite(values).any():
@@ -82,9 +82,7 @@ def _from_text(cells: pd.Series, *, name: str, decimal: str, line: Lines) -> tup
     rest = np.flatnonzero(~plain & ~blank)
     if any(_HAS_DIGITS.match(array[i]) and "#" not in array[i] for i in rest):
         return _by_one_rule(array, blank, name=name, decimal=decimal, line=line)
-    values[plain] = (
-        text[plain].str.replace(decimal, ".", regex=False).to_numpy(dtype=object).astype(np.float64)
-    )
+    values[plain] = text[plain].str.replace(decimal, ".", regex=False).to_numpy(dtype=object).astype(np.float64)
     infinite = [i for i in rest if _INFINITE.fullmatch(array[i])]
     values[infinite] = np.inf
     words = Counter(printable(array[i]) for i in rest)
@@ -115,8 +113,8 @@ def _by_one_rule(
     if len(odd) > _NOT_UNDERSTOOD * len(array):
         raise ReadError(
             "unreadable-number",
-            f"Line {line[odd[0]]}, column {quoted(name)}: {quoted(array[odd[0]])} is not a plain number; export numbers "
-            "without units or thousands signs.",
+            f"Line {line[odd[0]]}, column {quoted(name)}: {quoted(array[odd[0]])} is not a plain "
+            "number; export numbers without units or thousands signs.",
             {"line": int(line[odd[0]]), "column": printable(name), "count": len(odd)},
         )
     return values, words, int(blank.sum())
@@ -145,8 +143,8 @@ def _grouping(cells: list[str], decimal: str, name: str, line: Lines) -> tuple[s
         row = next(i for i, c in enumerate(cells) if other in c)
         raise ReadError(
             "ambiguous-numbers",
-            f"Line {line[row]}, column {quoted(name)}: {quoted(cells[row])} may have a decimal or a thousands sign, and "
-            "no other cell decides; export without thousands signs.",
+            f"Line {line[row]}, column {quoted(name)}: {quoted(cells[row])} may have a decimal or "
+            "a thousands sign, and no other cell decides; export without thousands signs.",
             {"line": int(line[row]), "column": printable(name)},
         )
     return decimal, other

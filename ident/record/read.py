@@ -19,7 +19,7 @@ from ident.record.quote import listed, printable, quoted
 from ident.record.record import LoopRecord, Source
 from ident.record.table import Table, read_table
 from ident.record.times import DATE_ORDERS, Stamps, from_numbers, from_text
-from ident.record.vocabulary import TIME_UNITS
+from ident.record.vocabulary import TIME_UNITS, UTC_NAMES
 
 
 def read_csv(
@@ -34,24 +34,23 @@ def read_csv(
     """Read a CSV log of one speed loop.
 
     source          path, bytes or binary file; delimiter , ; or tab, decimal point or comma
-    columns         {"time": ..., "setpoint": ..., "command": ..., "speed": ...}: header names, or positions from 0;
-                    what is left out is mapped by the header's words
+    columns         {"time": ..., "setpoint": ..., "command": ..., "speed": ...}: header names, or positions
+                    from 0; what is left out is mapped by the header's words
     zone            name of the time zone of stamps without offset, such as "Europe/Berlin"
     date_order      "dmy" or "mdy" where the dates do not tell
-    start           time of the first row, for logs with elapsed time only; aware, ISO 8601, or local with `zone`
+    start           time of the first row, for logs with elapsed time only: an aware datetime or ISO 8601,
+                    local where `zone` is given
     counts_per_rev  encoder counts are not converted yet: refused
 
-    Returns a LoopRecord whose `source` holds sha256, rows, columns and findings. Raises ReadError, its message naming
-    line and column where there is one.
+    Returns a LoopRecord whose `source` holds sha256, rows, columns and findings.
+    Raises ReadError, its message naming line and column where there is one.
     """
     if counts_per_rev is not None:
         raise ReadError(
             "not-offered", "Encoder counts are not converted yet: convert counts to speed before the upload."
         )
     if date_order is not None and date_order not in DATE_ORDERS:
-        raise ReadError(
-            "bad-option", f"date_order is one of {', '.join(DATE_ORDERS)}; not {quoted(str(date_order))}."
-        )
+        raise ReadError("bad-option", f"date_order is one of {', '.join(DATE_ORDERS)}; not {quoted(str(date_order))}.")
     place = _zone(zone)
     begin = _start(start, place)
 
@@ -69,7 +68,12 @@ def read_csv(
         if role != "time"
     }
     kept, dropped = axis.without_duplicates(stamps.time, [n.values for n in numbers.values()], table.line)
-    findings += [*dropped, *_missing(numbers, mapped, rows), *_dated(stamps, begin)]
+    findings += [
+        *dropped,
+        *_missing(numbers, mapped, rows),
+        *_dated(stamps, begin),
+        *_unit_assumed(stamps, mapped),
+    ]
     time = stamps.time[kept]
     values = {role: n.values[kept] for role, n in numbers.items()}
     axis.check_increasing(time, table.line[kept])
@@ -109,16 +113,12 @@ def _start(start: datetime | str | None, zone: ZoneInfo | None) -> datetime | No
         ) from cause
     if begin.utcoffset() is None:
         if zone is None:
-            raise ReadError(
-                "bad-option", "start needs an offset (2026-03-02T08:15:00Z), or give the zone too."
-            )
+            raise ReadError("bad-option", "start needs an offset (2026-03-02T08:15:00Z), or give the zone too.")
         begin = begin.replace(tzinfo=zone)
     return begin.astimezone(UTC)
 
 
-def _stamps(
-    table: Table, mapped: Mapped, decimal: str, zone: ZoneInfo | None, date_order: str | None
-) -> Stamps:
+def _stamps(table: Table, mapped: Mapped, decimal: str, zone: ZoneInfo | None, date_order: str | None) -> Stamps:
     name = mapped.headers["time"]
     cells = table.cells[mapped.index["time"]]
     blank = cells.isna().to_numpy()
@@ -140,11 +140,15 @@ def _stamps(
             row = int(np.argmax(lost))
             raise ReadError(
                 "unreadable-time",
-                f"Line {table.line[row]}, column {quoted(name)}: {quoted(str(cells.iloc[row]))} is no number of seconds.",
+                f"Line {table.line[row]}, column {quoted(name)}: {quoted(str(cells.iloc[row]))} is "
+                "no number of seconds.",
                 {"line": int(table.line[row]), "column": printable(name), "count": int(lost.sum())},
             )
+        exact = cells.to_numpy(dtype=np.int64) if cells.dtype.kind == "i" else values.values
         scale = TIME_UNITS.get(mapped.units["time"].casefold())
-        return from_numbers(values.values, scale=scale, name=name, line=int(table.line[0]))
+        return from_numbers(exact, scale=scale, name=name, line=int(table.line[0]))
+    if zone is None and mapped.units["time"].casefold() in UTC_NAMES:
+        zone = ZoneInfo("UTC")
     return from_text(cells, table.line, name=name, zone=zone, date_order=date_order)
 
 
@@ -169,8 +173,8 @@ def _missing(numbers: dict[str, Numbers], mapped: Mapped, rows: int) -> list[Fin
             Finding(
                 "missing-values",
                 "error" if 2 * lost > rows and role != "setpoint" else "warning",
-                f"{lost} of {rows} rows have no number for {role} ({quoted(mapped.headers[role])}): {matter}{also}. "
-                "Blank cells are not taken to mean unchanged.",
+                f"{lost} of {rows} rows have no number for {role} "
+                f"({quoted(mapped.headers[role])}): {matter}{also}. Blank cells are not taken to mean unchanged.",
                 {
                     "role": role,
                     "count": lost,
@@ -186,19 +190,24 @@ def _dated(stamps: Stamps, begin: datetime | None) -> list[Finding]:
     if stamps.start is not None:
         if begin is None:
             return []
-        return [
-            Finding(
-                "start-ignored", "info", "The stamps carry their own date, so the start given was not used."
-            )
-        ]
+        return [Finding("start-ignored", "info", "The stamps carry their own date, so the start given was not used.")]
     if begin is not None:
         return []
     if stamps.kind == "local":
-        message = (
-            "The stamps carry no offset and no zone was given: elapsed times hold, but the start is unknown."
-        )
+        message = "The stamps carry no offset and no zone was given: elapsed times hold, but the start is unknown."
         return [Finding("zone-unknown", "warning", f'{message} Pass zone, for example "Europe/Berlin".')]
     return [Finding("date-unknown", "info", "The log has no date: pass start to place it in time.")]
+
+
+def _unit_assumed(stamps: Stamps, mapped: Mapped) -> list[Finding]:
+    """Whole numbers without a unit may be seconds, milliseconds or a row count."""
+    if stamps.kind != "elapsed" or mapped.units["time"] or not np.array_equal(stamps.time, np.round(stamps.time)):
+        return []
+    message = (
+        f"Column {quoted(mapped.headers['time'])} holds whole numbers and names no unit: they were read as seconds. "
+        'If they are milliseconds, name the column "time [ms]".'
+    )
+    return [Finding("time-unit-assumed", "warning", message, {"unit": "s"})]
 
 
 def _quality(table: Table, mapped: Mapped) -> list[Finding]:

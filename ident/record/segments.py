@@ -12,15 +12,16 @@ Flags = NDArray[np.bool_]
 Lines = NDArray[np.int64]
 
 # A step longer than this many typical steps is a gap. One row lost from a steady clock makes a step of 1.8
-# typical steps or more (20 among 10 and 11 ms); logs written on change space their rows freely and need the second.
+# typical steps or more (20 among 10 and 11 ms); logs written on change space their rows freely and need
+# the second.
 STEADY_GAP = 1.75
 IRREGULAR_GAP = 10.0
-# A clock is steady when nearly all steps lie this close to the typical one (stamps of 3, 3, 4 ms do).
+# A clock is steady when all steps but a few lie this close to the typical one (stamps of 3, 3, 4 ms do).
 STEADY_SPREAD = 0.35
-STEADY_SHARE = 0.9
+ODD_SHARE = 0.1
 # Stamps rounded to a few percent of the step still describe one grid.
 UNIFORM_TOLERANCE = 0.1
-# The sample time is given to this many digits: stamps carry no more, and the rounding of sums stays out of it.
+# The sample time is given to this many digits: stamps carry no more, and the rounding of sums stays out.
 STEP_DIGITS = 12
 
 
@@ -78,7 +79,8 @@ def gaps(time: Floats) -> NDArray[np.intp]:
     if len(steps) == 0:
         return np.zeros(0, dtype=np.intp)
     typical = float(np.median(steps))
-    steady = float(np.mean(np.abs(steps - typical) <= STEADY_SPREAD * typical)) >= STEADY_SHARE
+    odd = np.count_nonzero(np.abs(steps - typical) > STEADY_SPREAD * typical)
+    steady = odd <= max(2, ODD_SHARE * len(steps))
     limit = (STEADY_GAP if steady else IRREGULAR_GAP) * typical
     # Stamps are rounded: a step of exactly the limit must not become a gap by its last digit.
     return np.flatnonzero(steps > limit * (1 + 1e-9)) + 1

@@ -62,9 +62,7 @@ def read_table(text: bytes, dialect: Dialect) -> Table:
     cells, line = cells[~blank], line[~blank]
     findings: list[Finding] = []
     # A comment or footer fills its first field and nothing else.
-    short = (
-        cells.iloc[:, 1:].isna().all(axis=1).to_numpy() if dialect.width > 1 else np.zeros(len(cells), bool)
-    )
+    short = cells.iloc[:, 1:].isna().all(axis=1).to_numpy(copy=True)
     last_cut = len(cells) > 0 and not body.endswith((b"\n", b"\r")) and bool(cells.iloc[-1, -1:].isna().all())
     if last_cut and not short[-1] and len(cells) > 1 and not cells.iloc[:-1, -1].isna().any():
         short[-1] = True
@@ -102,8 +100,8 @@ def _explained(message: str, dialect: Dialect) -> ReadError:
         line = int(ragged[2]) + dialect.line - 1
         return ReadError(
             "ragged-row",
-            f"Line {line} has {ragged[3]} fields where {ragged[1]} are expected: is a decimal comma also the delimiter? "
-            "Export with semicolons or decimal points.",
+            f"Line {line} has {ragged[3]} fields where {ragged[1]} are expected: is a decimal "
+            "comma also the delimiter? Export with semicolons or decimal points.",
             {"line": line, "fields": int(ragged[3]), "expected": int(ragged[1])},
         )
     quote = re.search(r"EOF inside string starting at row (\d+)", message)

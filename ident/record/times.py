@@ -45,10 +45,10 @@ class Stamps:
     kind: str
 
 
-def from_numbers(values: Floats, *, scale: float | None, name: str, line: int) -> Stamps:
+def from_numbers(values: Floats | Lines, *, scale: float | None, name: str, line: int) -> Stamps:
     """Elapsed seconds, or epoch seconds to nanoseconds told apart by their size.
 
-    values    (n,), finite
+    values    (n,), finite; whole numbers as integers, because nanoseconds since 1970 need all 64 bits
     scale     s per unit where the header names one, else None
 
     Raises ReadError: unreadable-time.
@@ -58,14 +58,15 @@ def from_numbers(values: Floats, *, scale: float | None, name: str, line: int) -
         if scale is None and 20000 <= values[0] <= 80000 and 0 < np.median(np.diff(values)) < 1e-4:
             raise ReadError(
                 "unreadable-time",
-                f"Column {quoted(name)} looks like spreadsheet days ({values[0]:.6f}): export stamps as ISO 8601, or "
+                f"Column {quoted(name)} looks like spreadsheet days ({values[0]:.6f}): export "
+                "stamps as ISO 8601, or "
                 'name the unit in the header, as in "time [s]".',
                 {"line": line},
             )
         return Stamps(_shifted(values) * (scale or 1.0), None, "elapsed")
     for unit, digits in _EPOCH:
         if values.min() * unit >= _FIRST and size * unit <= _LAST and scale in (None, unit):
-            elapsed = np.round((values - values[0]) * unit, digits)
+            elapsed = np.round(_shifted(values) * unit, digits)
             start = datetime(1970, 1, 1, tzinfo=UTC) + timedelta(seconds=float(np.floor(values[0] * unit)))
             part = timedelta(microseconds=round((values[0] * unit - np.floor(values[0] * unit)) * 1e6))
             return Stamps(elapsed, start + part, "epoch")
@@ -73,14 +74,14 @@ def from_numbers(values: Floats, *, scale: float | None, name: str, line: int) -
         return Stamps(np.round(_shifted(values) * scale, 12), None, "elapsed")
     raise ReadError(
         "unreadable-time",
-        f"Line {line}, column {quoted(name)}: {values[0]:.17g} is neither elapsed seconds nor an epoch stamp between 1990 "
-        "and 2100; export stamps as ISO 8601 or seconds.",
+        f"Line {line}, column {quoted(name)}: {values[0]:.17g} is neither elapsed seconds nor an "
+        "epoch stamp between 1990 and 2100; export stamps as ISO 8601 or seconds.",
         {"line": line},
     )
 
 
-def _shifted(values: Floats) -> Floats:
-    shifted: Floats = values - values[0]
+def _shifted(values: Floats | Lines) -> Floats:
+    shifted: Floats = (values - values[0]).astype(np.float64)
     return shifted
 
 
@@ -121,8 +122,8 @@ def from_text(
             row = int(np.argmax(offset != offset[0]))
             raise ReadError(
                 "unreadable-time",
-                f"Line {line[row]}, column {quoted(name)}: {quoted(str(cells.iloc[row]))} and the first row differ in "
-                "having an offset; export all stamps with one.",
+                f"Line {line[row]}, column {quoted(name)}: {quoted(str(cells.iloc[row]))} and the "
+                "first row differ in having an offset; export all stamps with one.",
                 {"line": int(line[row])},
             )
     stamps = _parsed(text, cells, line, name, utc=bool(offset.all()))
@@ -166,21 +167,24 @@ def _in_zone(stamps: Texts, zone: ZoneInfo, line: Lines, name: str) -> Texts:
     twice = stamps.dt.tz_localize(zone, ambiguous="NaT", nonexistent="NaT")
     lost = twice.isna().to_numpy()
     if not lost.any():
-        return twice.dt.tz_convert(None)
+        certain: Texts = twice.dt.tz_convert(None)
+        return certain
     try:
-        return stamps.dt.tz_localize(zone, ambiguous="infer").dt.tz_convert(None)
+        inferred: Texts = stamps.dt.tz_localize(zone, ambiguous="infer").dt.tz_convert(None)
     except ValueError as cause:
         row = int(np.argmax(lost))
         raise ReadError(
             "ambiguous-times",
-            f"Line {line[row]}, column {quoted(name)}: {quoted(str(stamps.iloc[row]))} occurs twice or never in "
-            f"{printable(str(zone))} (clock change), and the order of the rows does not tell; export stamps with offset.",
+            f"Line {line[row]}, column {quoted(name)}: {quoted(str(stamps.iloc[row]))} occurs twice "
+            f"or never in {printable(str(zone))} (clock change), and the order of the rows does not tell; "
+            "export stamps with offset.",
             {"line": int(line[row]), "count": int(lost.sum())},
         ) from cause
+    return inferred
 
 
 def _ordered(text: Texts, first: str, date_order: str | None, line: Lines, name: str) -> Texts:
-    """Dates with the year last, rewritten as ISO 8601; the order of day and month asked for where no row tells."""
+    """Dates with the year last as ISO 8601; the order of day and month is asked for where no row tells."""
     dmy, mdy = (text.str.replace(_DAY_FIRST, order, regex=True) for order in (r"\3-\2-\1", r"\3-\1-\2"))
     if date_order == "dmy" or (date_order is None and re.match(r"\d+\.", first)):
         return dmy
@@ -189,18 +193,15 @@ def _ordered(text: Texts, first: str, date_order: str | None, line: Lines, name:
     if date_order == "ymd":
         raise _unreadable(first, int(line[0]), name)
     as_dmy, as_mdy = (pd.to_datetime(t, format="ISO8601", errors="coerce") for t in (dmy, mdy))
-    if as_mdy.isna().any() and not as_dmy.isna().any():
-        return dmy
-    if as_dmy.isna().any() and not as_mdy.isna().any():
+    if as_dmy.isna().any():
+        # Where neither order fits, the parser names the first bad line.
         return mdy
-    if as_dmy.equals(as_mdy):
+    if as_mdy.isna().any() or as_dmy.equals(as_mdy):
         return dmy
     raise ReadError(
         "ambiguous-dates",
         f"Line {line[0]}, column {quoted(name)}: {quoted(first)} may be {as_dmy.iloc[0]:%d %B %Y} or "
-        f'{as_mdy.iloc[0]:%d %B %Y}, and no row decides; pass date_order="dmy" or date_order="mdy".'
-        if not (pd.isna(as_dmy.iloc[0]) or pd.isna(as_mdy.iloc[0]))
-        else f"Line {line[0]}, column {quoted(name)}: dates from {quoted(first)} on fit neither day first nor month first.",
+        f'{as_mdy.iloc[0]:%d %B %Y}, and no row decides; pass date_order="dmy" or date_order="mdy".',
         {"line": int(line[0])},
     )
 

@@ -1,4 +1,4 @@
-"""What a header says: the trade's usual words for time, setpoint, command and speed, and the unit beside them."""
+"""What a header says: the usual words for time, setpoint, command and speed, and the unit beside them."""
 
 from __future__ import annotations
 
@@ -13,47 +13,64 @@ def _words(text: str) -> frozenset[str]:
 
 # English, German, French, Spanish, Italian; without accents, ß as ss, ö as o or oe.
 TIME = _words(
-    "time timestamp t datetime zeit zeitstempel zeitpunkt uhrzeit temps heure horodatage horodate tiempo hora "
-    "tempo ora elapsed sourcetimestamp servertimestamp epoch"
+    """time timestamp t datetime zeit zeitstempel zeitpunkt uhrzeit temps heure horodatage horodate tiempo
+    hora tempo ora elapsed sourcetimestamp servertimestamp epoch"""
 )
-DATE = _words("date datum fecha data jour tag")
+DATE = _words("date datum fecha data jour")
 SETPOINT = _words(
-    "sp sv setpoint setpt set reference ref target soll sollwert solldrehzahl fuhrungsgrosse fuehrungsgroesse "
-    "consigne reference consigna referencia riferimento setpunkt drehzahlsollwert r"
+    """sp sv r setpoint setpt set reference ref target soll sollwert solldrehzahl drehzahlsollwert setpunkt
+    fuhrungsgrosse fuehrungsgroesse consigne consigna referencia riferimento"""
 )
 COMMAND = _words(
-    "command cmd co op out mv u stellgrosse stellgroesse stellwert stellsignal commande comando mando manipulated "
-    "actuator actuation duty dutycycle pwm"
+    """command cmd co op out mv u manipulated actuator actuation duty dutycycle pwm stellgrosse stellgroesse
+    stellwert stellsignal reglerausgang commande comando mando"""
 )
 SPEED = _words(
-    "speed pv rpm tacho tachometer velocity drehzahl istdrehzahl drehzahlistwert geschwindigkeit vitesse velocidad "
-    "velocita regime giri tours revolutions rps"
+    """speed pv rpm rps tacho tachometer velocity omega drehzahl istdrehzahl drehzahlistwert geschwindigkeit
+    vitesse regime velocidad velocita giri"""
 )
 MEASURED = _words(
-    "measured measurement actual act ist istwert feedback mesure mesuree mesura medida medido misurata misura real reale"
+    """measured measurement actual act feedback ist istwert mesure mesuree mesura medida medido misura
+    misurata"""
 )
-WEAK = _words("output y ausgang sortie salida uscita")
+OUTPUT = _words("output y ausgang sortie salida uscita")
 INPUT = _words("input eingang entree entrada ingresso")
 CONTROLLER = _words("controller control regler regulateur regulador controlador regolatore pid pi")
+# What a drive is commanded by; beside a word for command they say no more than it.
+EFFORT = _words(
+    """torque moment drehmoment couple par coppia current strom courant corriente corrente voltage spannung
+    tension tensione"""
+)
 # Words that make a signal something else than one of the four, whatever stands beside them.
 OTHER = _words(
-    "error err deviation abweichung regelabweichung erreur ecart errore limit limits limite max min maximum minimum "
-    "alarm alarme torque moment drehmoment couple par coppia current strom courant corriente corrente temperature "
-    "temperatur temp voltage spannung tension position pos angle winkel acceleration power leistung pressure druck "
-    "flow status quality mode counts count encoder"
+    """error err deviation abweichung regelabweichung erreur ecart errore limit limits limite max min maximum
+    minimum alarm alarme temperature temperatur temp position pos angle winkel acceleration power leistung
+    pressure druck flow count counts encoder"""
 )
 QUALITY = _words(
-    "status statuscode quality qualitat qualitaet qualite calidad qualita mode modus betriebsart opcquality"
+    """status statuscode quality opcquality qualitat qualitaet qualite calidad qualita mode modus betriebsart
+    state zustand etat estado stato"""
 )
 AMBIGUOUS = _words("cv")
 
-TIME_UNITS = {"s": 1.0, "sec": 1.0, "secs": 1.0, "seconds": 1.0, "sek": 1.0, "ms": 1e-3, "msec": 1e-3, "us": 1e-6, "µs": 1e-6,
-              "μs": 1e-6, "ns": 1e-9, "min": 60.0, "h": 3600.0}  # fmt: skip
-_SUFFIX_UNITS = _words("rpm rps hz pct percent % v volt volts ma s ms us ns sec")
-_UNIT_ROW = _words(
-    "rpm 1/min min-1 u/min tr/min rad/s rps rev/s hz m/min m/s % pct percent v mv volt a ma nm s ms us ns sec utc local "
-    "iso iso8601 - deg/s °/s turns/s g/min giri/min"
-)
+TIME_UNITS = {
+    **dict.fromkeys(("s", "sec", "secs", "second", "seconds", "sek"), 1.0),
+    **dict.fromkeys(("ms", "msec"), 1e-3),
+    **dict.fromkeys(("us", "µs", "μs"), 1e-6),  # the micro sign and the Greek letter
+    "ns": 1e-9,
+    "min": 60.0,
+    "h": 3600.0,
+}
+UTC_NAMES = _words("utc gmt z")
+_SPEED_UNITS = _words("rpm 1/min min-1 u/min tr/min rad/s rps rev/s hz m/min m/s deg/s °/s turns/s g/min giri/min")
+_UNITS = _SPEED_UNITS | UTC_NAMES | _words("% pct percent v mv volt a ma nm s ms us ns sec local iso iso8601 -")
+_SUFFIXES = {
+    **{unit: unit for unit in ("rpm", "rps", "%", "s", "ms", "us", "ns", "sec", "utc")},
+    **dict.fromkeys(("pct", "percent"), "%"),
+    **dict.fromkeys(("v", "volt", "volts"), "V"),
+    "ma": "mA",
+    "hz": "Hz",
+}
 _BRACKETED = re.compile(r"(.*?)[\s_]*[\[(]([^\])]*)[\])]\s*")
 
 
@@ -67,71 +84,73 @@ class Header:
 
 
 def understand(text: str) -> Header:
-    """Split a header into words and unit: "Drehzahl [1/min]", "speed_rpm", "SIC101.PV"."""
-    bracketed = _BRACKETED.fullmatch(text)
-    base, unit = (bracketed[1], bracketed[2].strip()) if bracketed else (text, "")
-    if not bracketed and base.strip().casefold() in _UNIT_ROW - {"-", "mv", "a", "s", "v", "t"}:
-        return Header(text, ("speed",) if base.strip().casefold() in _SPEED_UNITS else (), base.strip())
+    """Split a header into words and unit: "Drehzahl [1/min]", "speed_rpm", "SIC101.PV", "rpm"."""
+    base, unit = text.strip(), ""
+    if bracketed := _BRACKETED.fullmatch(base):
+        base, unit = bracketed[1], bracketed[2].strip()
+    elif base.casefold() in _SPEED_UNITS:
+        return Header(text, ("speed",), base)
+    elif base.casefold() in TIME_UNITS:
+        return Header(text, ("time",), base)
+    elif (parts := base.rsplit(maxsplit=1)) and len(parts) == 2 and parts[1].casefold() in _SPEED_UNITS - SPEED:
+        base, unit = parts
     # A full tag path: the signal is named by its last part.
-    tail = re.split(r"[./\\:|]", base.strip())[-1]
-    if re.fullmatch(r"[A-Za-z]{1,12}", tail) and len(_split(tail)) == 1 and len(tail) < len(base.strip()):
+    tail = re.split(r"[./\\:|]", base)[-1]
+    if tail != base and re.fullmatch(r"[A-Za-z]{1,12}[0-9]*", tail):
         base = tail
     words = _split(base)
-    if not unit and len(words) > 1 and words[-1] in _SUFFIX_UNITS:
-        *words, unit = words
-        unit = "%" if unit in {"pct", "percent"} else unit
-        unit = {"v": "V", "volt": "V", "volts": "V", "ma": "mA", "hz": "Hz"}.get(unit, unit)
-    return Header(text, tuple(words), unit)
-
-
-_SPEED_UNITS = _words(
-    "rpm 1/min min-1 u/min tr/min rad/s rps rev/s hz m/min m/s deg/s °/s turns/s g/min giri/min"
-)
+    if not unit and len(words) > 1 and words[-1] in _SUFFIXES:
+        unit = _SUFFIXES[words[-1]]
+        if unit not in SPEED:
+            words.pop()
+    # A single letter is a name only where it stands alone.
+    return Header(text, tuple(w for w in words if len(w) > 1 or len(words) == 1), unit)
 
 
 def _split(text: str) -> list[str]:
     spaced = re.sub(r"(?<=[a-z])(?=[A-Z])", " ", text)
     plain = unicodedata.normalize("NFKD", spaced.casefold())
     plain = "".join(c for c in plain if not unicodedata.combining(c))
-    return re.findall(r"%|[^\W_]+", plain)
+    # Loops are numbered: PV1, speed2.
+    return [re.sub(r"(?<=[^\W\d_]{2})\d+$", "", word) for word in re.findall(r"%|[^\W_]+", plain)]
 
 
 def is_unit(text: str) -> bool:
     """Whether a cell of a units row is a unit (or blank)."""
-    return not text or text.strip("[]() ").casefold() in _UNIT_ROW
+    return not text or text.strip("[]() ").casefold() in _UNITS
 
 
 def meaning(header: Header) -> str | None:
-    """time, date, setpoint, command, speed; output or input where only the other columns can tell; cv where
-    nothing can; quality for a status column; None where no word is known or the words contradict each other."""
-    words = set(header.words)
-    joined = "".join(header.words)
-    if words & QUALITY or joined in QUALITY:
+    """What a column holds.
+
+    time, date, setpoint, command or speed; output or input where only the other columns can tell; cv where
+    nothing can; quality for a status column; None where no word is known or the words contradict each other.
+    """
+    words = {*header.words, "".join(header.words)}
+    if words & QUALITY:
         return "quality"
     if words & AMBIGUOUS:
         return "cv"
-    if joined in TIME or (words & TIME and not words & (SPEED | MEASURED | COMMAND | SETPOINT | OTHER)):
+    if words & TIME and not words & (SPEED | COMMAND | SETPOINT | OTHER):
         return "time"
-    if joined in DATE:
+    if words & DATE:
         return "date"
     if words & OTHER:
         return None
-    setpoint = bool(words & SETPOINT) or joined in SETPOINT
-    command = bool(words & COMMAND) or joined in COMMAND
-    speed = bool(words & (SPEED | MEASURED)) or joined in SPEED
-    output = bool(words & WEAK)
-    if output and words & CONTROLLER:
-        command, output = True, False
-    if output and words & MEASURED:
-        output = False
-    if setpoint and not command:
+    controlled = bool(words & OUTPUT) and bool(words & CONTROLLER)
+    roles = {
+        "setpoint": bool(words & SETPOINT),
+        "command": bool(words & COMMAND) or controlled,
+        "speed": bool(words & (SPEED | MEASURED)),
+    }
+    if words & EFFORT:
+        return "command" if roles == {"setpoint": False, "command": True, "speed": False} else None
+    if roles["setpoint"] and not roles["command"]:
         return "setpoint"
-    if command and not (setpoint or speed or (output and "out" not in words and "command" not in words)):
-        return "command"
-    if speed and not (command or setpoint):
-        return "speed"
-    if output and len(words) == 1:
-        return "output"
-    if words & INPUT and len(words) == 1:
-        return "input"
+    if roles["command"] or roles["speed"]:
+        # "speed command" may be either: it is asked for.
+        named = [role for role, said in roles.items() if said]
+        return named[0] if len(named) == 1 else None
+    if len(header.words) == 1:
+        return "output" if words & OUTPUT else "input" if words & INPUT else None
     return None
