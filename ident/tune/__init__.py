@@ -1,8 +1,24 @@
 """Tuning: settings under a robustness target, published rules, predicted responses, worst case."""
 
+from ident.tune.predict import predict
 from ident.tune.predicted import LoadStep, Predicted, Response, SetpointStep
+from ident.tune.propose import Proposal, propose
+from ident.tune.setpoint_weight import choose_setpoint_weight
 from ident.tune.simc import simc
 from ident.tune.tuning import Tuning, tune
 from ident.tune.worst_case import WorstCase
 
-__all__ = ["LoadStep", "Predicted", "Response", "SetpointStep", "Tuning", "WorstCase", "simc", "tune"]
+__all__ = [
+    "LoadStep",
+    "Predicted",
+    "Proposal",
+    "Response",
+    "SetpointStep",
+    "Tuning",
+    "WorstCase",
+    "choose_setpoint_weight",
+    "predict",
+    "propose",
+    "simc",
+    "tune",
+]

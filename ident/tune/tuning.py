@@ -13,7 +13,9 @@ from ident.loop import Margins, PidSettings, margins
 from ident.loop.held_plant import held_plant
 from ident.tune.band import find_band
 from ident.tune.largest_ki import largest_ki
+from ident.tune.predict import first_order, predict
 from ident.tune.predicted import Predicted
+from ident.tune.setpoint_weight import choose_setpoint_weight
 
 FORMS = ("pi", "pid")
 GOALS = ("integral", "load", "setpoint")
@@ -54,19 +56,25 @@ def tune(
     Ms             target, > 1; sensible 1.2 (calm) to 2 (sharp)
     goal           integral: the largest ki
     period         controller sample time, s, 0 for analogue: half of it is dead time;  compute_delay  s
-    The setpoint weight is 1: it does not touch the margins (see choose_setpoint_weight).
+    For an Fopdt the setpoint weight is chosen and both step responses are predicted; else b is 1.
     Raises Refused: target-out-of-range, unbounded, not-offered, no-settings-found and those of `margins`.
     """
     check_request(Ms, form, goal)
     held = held_plant(plant, period, compute_delay)
     settings = largest_ki(find_band(held), Ms)
+    timing = {"period": period, "compute_delay": compute_delay}
+    found = margins(held.plant, settings, **timing)
+    model, advice, predicted = first_order(plant), None, None
+    if model is not None:
+        settings, advice = choose_setpoint_weight(model, settings, **timing)
+        predicted = predict(model, settings, **timing)
     return Tuning(
         "largest-ki",
         form,
         settings,
-        margins(held.plant, settings, period=period, compute_delay=compute_delay),
-        None,
-        (),
+        found,
+        predicted,
+        () if advice is None else (advice,),
         f"The largest integral gain, {settings.ki:.4g}, with Ms and Mt at most {Ms:g}.",
     )
 

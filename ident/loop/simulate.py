@@ -1,0 +1,181 @@
+"""Closed-loop response of a first-order plant with dead time, digital or analogue, in difference equations.
+
+The plant's response to what enters from outside is written down in closed form; what the feedback adds is a
+linear recursion, y = y_open - P C y, run by scipy's compiled filter:
+
+- digital (period > 0): zero-order hold with fractional dead time and a controller in trapezoidal form,
+  I_k = I_(k-1) + Kp h/(2 Ti) (e_k + e_(k-1)); filter and derivative by Tustin's rule. Exact at the samples.
+- analogue (period 0): y is continuous, so P C y with y taken as straight between close samples (first-order
+  hold) and C by Tustin's rule is right to second order in the step.
+"""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+
+import numpy as np
+from numpy.typing import NDArray
+from scipy.signal import lfilter
+
+from ident.errors import Refused
+from ident.loop.settings import PidSettings
+from ident.plants import Fopdt
+
+Floats = NDArray[np.float64]
+
+FEW = 48  # delay samples up to which one dense recursion is cheaper than one call per delay
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class Trace:
+    """A closed-loop response from rest: changes of speed and controller output, (n,) each, time in s from 0."""
+
+    time: Floats
+    speed: Floats
+    command: Floats
+
+
+@dataclass(frozen=True, slots=True)
+class Clock:
+    """The grid of a simulation.
+
+    step       s: the period of a digital controller, else small against the loop
+    samples    number of steps
+    substeps   points drawn per step of a digital controller: the speed moves on between samples
+    digital    False: analogue controller
+    """
+
+    step: float
+    samples: int
+    substeps: int = 1
+    digital: bool = True
+
+    @property
+    def time(self) -> Floats:
+        return np.asarray(self.step * np.arange(self.samples), dtype=np.float64)
+
+
+def setpoint_step(plant: Fopdt, settings: PidSettings, clock: Clock, *, compute_delay: float = 0.0) -> Trace:
+    """Answer to a setpoint step of 1 at time 0; compute_delay, s, from sample to command.
+
+    Raises Refused derivative-without-filter.
+    """
+    delayed = Fopdt(plant.K, plant.T, plant.L + compute_delay)
+    s, time = settings, clock.time
+    if clock.digital:
+        # Trapezoid of the reference's part of the error, which is zero before the step.
+        reference = s.Kp * (s.b + (time + clock.step / 2) / s.Ti)
+        open_speed = _through_hold(delayed, clock.step, reference)
+    else:
+        reference = s.Kp * (s.b + time / s.Ti)
+        after = time - delayed.L
+        open_speed = s.Kp * (s.b * _rise(delayed, after) + _ramp(delayed, after) / s.Ti)
+    speed = _close(delayed, settings, clock, open_speed)
+    command = reference - _feedback(settings, clock.step, speed)
+    return _between(delayed, clock, speed, command, None)
+
+
+def load_step(plant: Fopdt, settings: PidSettings, clock: Clock, *, compute_delay: float = 0.0) -> Trace:
+    """Answer to a step of 1 at time 0 at the plant input; arguments as for `setpoint_step`."""
+    delayed = Fopdt(plant.K, plant.T, plant.L + compute_delay)
+    # The load itself does not wait for the computer.
+    open_speed = _rise(plant, clock.time - plant.L)
+    speed = _close(delayed, settings, clock, open_speed)
+    command = -_feedback(settings, clock.step, speed)
+    return _between(delayed, clock, speed, command, plant)
+
+
+def _between(delayed: Fopdt, clock: Clock, speed: Floats, command: Floats, loaded: Fopdt | None) -> Trace:
+    """Draw a digital loop's speed between samples, from the held command and the load."""
+    if not clock.digital or clock.substeps == 1:
+        return Trace(clock.time, speed, command)
+    step = clock.step / clock.substeps
+    held = np.repeat(command, clock.substeps)
+    time = np.asarray(step * np.arange(len(held)), dtype=np.float64)
+    finer = _through_hold(delayed, step, held)
+    if loaded is not None:
+        finer = finer + _rise(loaded, time - loaded.L)
+    return Trace(time, finer, held)
+
+
+def _rise(plant: Fopdt, after: Floats) -> Floats:
+    """Response to a unit step, `after` the dead time has passed."""
+    response: Floats = -plant.K * np.expm1(-np.maximum(after, 0.0) / plant.T)
+    return response
+
+
+def _ramp(plant: Fopdt, after: Floats) -> Floats:
+    """Response to a ramp of unit slope, `after` the dead time has passed."""
+    t = np.maximum(after, 0.0)
+    response: Floats = plant.K * (t + plant.T * np.expm1(-t / plant.T))
+    return response
+
+
+def _zero_order(plant: Fopdt, h: float) -> tuple[int, Floats, Floats]:
+    """(delay samples, numerator, denominator) of the plant behind a zero-order hold.
+
+    The hold makes a pulse of one sample, a difference of steps; the plant's answer to it, times 1 - a z^-1, is
+    b0, b1 of the modified z-transform (Astrom and Wittenmark, Computer-Controlled Systems).
+    """
+    whole = int(np.floor(plant.L / h + 1e-9))
+    at = np.asarray(h * (whole + np.arange(0, 3)) - plant.L, dtype=np.float64)
+    pulse = _rise(plant, at) - _rise(plant, at - h)
+    a = float(np.exp(-h / plant.T))
+    return whole + 1, pulse[1:] - a * pulse[:-1], np.array([1.0, -a])
+
+
+def _first_order(plant: Fopdt, h: float) -> tuple[int, Floats, Floats]:
+    """The same for an input that is straight between samples: each sample makes a triangle."""
+    whole = int(np.floor(plant.L / h + 1e-9))
+    at = np.asarray(h * (whole + np.arange(-1, 3)) - plant.L, dtype=np.float64)
+    pulse = (_ramp(plant, at + h) - 2 * _ramp(plant, at) + _ramp(plant, at - h)) / h
+    a = float(np.exp(-h / plant.T))
+    return whole, pulse[1:] - a * pulse[:-1], np.array([1.0, -a])
+
+
+def _through_hold(plant: Fopdt, h: float, command: Floats) -> Floats:
+    delay, num, den = _zero_order(plant, h)
+    speed = np.zeros(len(command))
+    speed[delay:] = lfilter(num, den, command)[: max(len(command) - delay, 0)]
+    return speed
+
+
+def _controller(settings: PidSettings, h: float) -> tuple[Floats, Floats]:
+    """C F by Tustin's rule, in powers of z^-1; for PI this is the trapezoidal integral."""
+    Kp, Ti, Td, Tf = settings.Kp, settings.Ti, settings.Td, settings.Tf
+    minus, plus = np.array([2.0, -2.0]) / h, np.array([1.0, 1.0])
+    if Td == 0 and Tf == 0:
+        return Kp / Ti * (Ti * minus + plus), minus
+    if Tf == 0:
+        raise Refused(
+            "derivative-without-filter", "A derivative without filter cannot be simulated: give Tf, say Td/10."
+        )
+    twice, mixed, squared = np.polymul(plus, plus), np.polymul(minus, plus), np.polymul(minus, minus)
+    num = Kp / Ti * (twice + Ti * mixed + Ti * Td * squared)
+    den = np.polymul(minus, twice + Tf * mixed + Tf**2 / 2 * squared)
+    return np.asarray(np.polymul(num, plus), np.float64), np.asarray(den, np.float64)
+
+
+def _feedback(settings: PidSettings, h: float, speed: Floats) -> Floats:
+    num, den = _controller(settings, h)
+    return np.asarray(lfilter(num, den, speed), dtype=np.float64)
+
+
+def _close(plant: Fopdt, settings: PidSettings, clock: Clock, open_speed: Floats) -> Floats:
+    """y = y_open - P C y."""
+    delay, plant_num, plant_den = (_zero_order if clock.digital else _first_order)(plant, clock.step)
+    c_num, c_den = _controller(settings, clock.step)
+    num, den = np.polymul(plant_num, c_num), np.polymul(plant_den, c_den)
+    if delay < FEW:
+        closed = np.zeros(max(len(den), len(num) + delay))
+        closed[: len(den)] = den
+        closed[delay : delay + len(num)] += num
+        return np.asarray(lfilter(den, closed, open_speed), dtype=np.float64)
+    # Method of steps: one delay's worth of feedback is known before it arrives.
+    speed = np.array(open_speed)
+    state = np.zeros(max(len(num), len(den)) - 1)
+    for start in range(delay, len(speed), delay):
+        block = speed[start : start + delay]
+        arrived, state = lfilter(num, den, speed[start - delay : start], zi=state)
+        block -= arrived[: len(block)]
+    return speed

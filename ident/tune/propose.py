@@ -1,0 +1,100 @@
+"""Propose: the optimum beside the rule that people know, one of them recommended, and why."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+from typing import Any
+
+from ident.findings import Finding
+from ident.loop import Margins, margins
+from ident.plants import Fopdt
+from ident.tune.predict import first_order, predict
+from ident.tune.setpoint_weight import choose_setpoint_weight
+from ident.tune.simc import simc
+from ident.tune.tuning import Tuning, tune
+
+TOLERANCE = 0.005  # above the target, in Ms or Mt
+
+
+@dataclass(frozen=True, slots=True)
+class Proposal:
+    """Tunings of one plant, the index of the one to take (None: no tuning at all), and one sentence why."""
+
+    tunings: tuple[Tuning, ...]
+    recommended: int | None
+    because: str
+
+
+def propose(
+    plant: Any,
+    *,
+    Ms: float = 1.6,
+    form: str = "pi",
+    goal: str = "integral",
+    period: float = 0.0,
+    compute_delay: float = 0.0,
+) -> Proposal:
+    """The settings best for the goal under the target and, for a first-order plant, SIMC with its margins.
+
+    Arguments and errors as for `tune`. What misses the target is shown with a finding, never recommended.
+    """
+    best = tune(plant, Ms=Ms, form=form, goal=goal, period=period, compute_delay=compute_delay)
+    model = first_order(plant)
+    if model is None:
+        return Proposal((best,), 0, best.because)
+    rule = _simc(model, Ms, period, compute_delay)
+    return Proposal((best, rule), 0, _compare(best, rule, Ms))
+
+
+def meets(found: Margins, Ms: float) -> bool:
+    """Whether a loop is stable with Ms and Mt at most the target, within TOLERANCE."""
+    if found.Ms is None or found.Mt is None:
+        return False
+    return found.stable and max(found.Ms, found.Mt) <= Ms + TOLERANCE
+
+
+def _simc(model: Fopdt, Ms: float, period: float, compute_delay: float) -> Tuning:
+    timing = {"period": period, "compute_delay": compute_delay}
+    settings = simc(model.K, model.T, model.L + period / 2.0 + compute_delay)
+    found = margins(model, settings, **timing)
+    findings: list[Finding] = []
+    if found.stable:
+        settings, advice = choose_setpoint_weight(model, settings, **timing)
+        findings += [advice] if advice else []
+    if not meets(found, Ms):
+        findings.append(_missed(found, Ms))
+    return Tuning(
+        "simc",
+        "pi",
+        settings,
+        found,
+        predict(model, settings, **timing) if found.stable else None,
+        tuple(findings),
+        "The SIMC rule with the closed-loop time constant equal to the dead time in the loop (Skogestad 2003).",
+    )
+
+
+def _missed(found: Margins, Ms: float) -> Finding:
+    what = f"has Ms {found.Ms:.3f} and Mt {found.Mt:.3f}" if found.stable else "is unstable"
+    return Finding(
+        "target-missed",
+        "warning",
+        f"With these settings the loop {what}; the target is {Ms:g}.",
+        {"Ms": found.Ms, "Mt": found.Mt, "target": Ms},
+    )
+
+
+def _compare(best: Tuning, rule: Tuning, Ms: float) -> str:
+    if not meets(rule.margins, Ms):
+        return (
+            f"It has the largest integral gain, {best.settings.ki:.4g}, with Ms and Mt at most {Ms:g}; "
+            "the SIMC rule misses that target on this plant."
+        )
+    sentence = (
+        f"Both meet the target of {Ms:g}; it has the larger integral gain, "
+        f"{best.settings.ki:.4g} against {rule.settings.ki:.4g} of the SIMC rule"
+    )
+    if best.predicted is None or rule.predicted is None:
+        return sentence + "."
+    mine, theirs = best.predicted.load_step.iae, rule.predicted.load_step.iae
+    return sentence + f" (integrated absolute error after a load step {mine:.4g} against {theirs:.4g})."
