@@ -4,7 +4,6 @@ from __future__ import annotations
 
 import logging
 import socket
-from contextlib import suppress
 
 import uvicorn
 
@@ -44,6 +43,10 @@ def serve(settings: Settings) -> int:
             timeout_graceful_shutdown=GRACE_S,
         )
     )
-    with suppress(KeyboardInterrupt):  # raised again by uvicorn after its orderly stop
+    try:
         server.run()
+    except KeyboardInterrupt:
+        pass  # raised again by uvicorn after its orderly stop
+    except SystemExit:
+        return 1  # uvicorn has said why
     return 0 if server.started else 1

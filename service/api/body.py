@@ -21,7 +21,8 @@ FIELD = "file"
 async def read_log(request: Request, limit: int) -> bytes:
     """The log's bytes, decoded.
 
-    Raises ProblemError: too-large, unsupported-encoding, broken-gzip, broken-multipart, no-file.
+    Raises ProblemError: too-large, unsupported-encoding, broken-gzip, broken-multipart, unexpected-field,
+    no-file-field.
     """
     announced = request.headers.get("content-length", "")
     if announced.isdecimal() and int(announced) > limit:
@@ -84,7 +85,7 @@ async def _from_form(request: Request, pieces: AsyncGenerator[bytes, None]) -> b
             )
         file = form.get(FIELD)
         if not isinstance(file, UploadFile):
-            raise ProblemError("no-file", f"The form has no complete file in its field {FIELD!r}.")
+            raise ProblemError("no-file-field", f"The form has no complete file in its field {FIELD!r}.")
         return await file.read()
     finally:
         await form.close()

@@ -9,9 +9,7 @@ from typing import Any
 MEMBERS = {"type", "title", "status", "detail", "code", "evidence"}
 
 
-def problem(
-    status: int, headers: Mapping[str, str], body: bytes, *, expected: int, code: str
-) -> dict[str, Any]:
+def problem(status: int, headers: Mapping[str, str], body: bytes, *, expected: int, code: str) -> dict[str, Any]:
     """The members of a problem+json answer (RFC 9457), after checking its shape, status and code."""
     told: dict[str, Any] = json.loads(body, parse_constant=_refuse)
     assert (status, told.get("code")) == (expected, code), told

@@ -42,9 +42,7 @@ def test_a_log_comes_back_from_another_process_with_one_blas_thread() -> None:
         assert workers.pids[0] != os.getpid()
         assert await workers.run(b"threads", OPTIONS) == b"1"
         refused = await workers.run(b"refuse", Options(Ms=1.4))
-        assert refused == Problem(
-            "refused-by-test", "The test asked for a refusal, and here it is.", {"Ms": 1.4}
-        )
+        assert refused == Problem("refused-by-test", "The test asked for a refusal, and here it is.", {"Ms": 1.4})
 
     within(1, use)
 

@@ -107,9 +107,7 @@ def peak(pid: int) -> int:
 
 def descendants(pid: int) -> list[int]:
     children = Path(f"/proc/{pid}/task/{pid}/children")
-    found = [
-        int(child) for task in children.parents[1].glob("*/children") for child in task.read_text().split()
-    ]
+    found = [int(child) for task in children.parents[1].glob("*/children") for child in task.read_text().split()]
     return found + [deeper for child in found for deeper in descendants(child)]
 
 

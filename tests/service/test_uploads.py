@@ -28,9 +28,7 @@ def test_plain_gzip_and_form_give_the_same_report(client: TestClient, step_test:
     packed = client.post("/v1/reports", content=gzip.compress(step_test), headers=GZIP)
     form = client.post("/v1/reports", files={"file": ("log.csv", step_test, "text/csv")})
     # curl --data-binary names this type when none is given.
-    curl = client.post(
-        "/v1/reports", content=step_test, headers={"Content-Type": "application/x-www-form-urlencoded"}
-    )
+    curl = client.post("/v1/reports", content=step_test, headers={"Content-Type": "application/x-www-form-urlencoded"})
     assert packed.content == plain.content
     assert form.content == plain.content
     assert curl.content == plain.content
@@ -46,9 +44,7 @@ def test_options_change_the_report(client: TestClient, step_test: bytes) -> None
     [("ms=1.4", "ms"), ("Ms=one", "Ms"), ("Ms=0.9", "Ms"), ("Ms=nan", "Ms"), ("model=best", "model")],
 )
 def test_an_option_that_is_wrong_is_named(client: TestClient, query: str, named: str) -> None:
-    told = expect.answer(
-        client.post(f"/v1/reports?{query}", content=b"a"), expected=422, code="invalid-option"
-    )
+    told = expect.answer(client.post(f"/v1/reports?{query}", content=b"a"), expected=422, code="invalid-option")
     assert list(told["evidence"]) == [named]
     assert f"{named}: " in told["detail"]
 
@@ -79,7 +75,7 @@ def test_a_form_must_hold_one_file(client: TestClient) -> None:
         content=b'--x\r\nContent-Disposition: form-data; name="file"\r\n\r\na\r\n--x--\r\n',
         headers={"Content-Type": "multipart/form-data; boundary=x"},
     )
-    expect.answer(text, expected=422, code="no-file")
+    expect.answer(text, expected=422, code="no-file-field")
     no_boundary = client.post("/v1/reports", content=b"a", headers={"Content-Type": "multipart/form-data"})
     expect.answer(no_boundary, expected=400, code="broken-multipart")
 
