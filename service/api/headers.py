@@ -6,9 +6,7 @@ from starlette.datastructures import MutableHeaders
 from starlette.types import ASGIApp, Message, Receive, Scope, Send
 
 FIXED = {
-    "Content-Security-Policy": (
-        "default-src 'self'; base-uri 'none'; form-action 'self'; frame-ancestors 'none'"
-    ),
+    "Content-Security-Policy": ("default-src 'self'; base-uri 'none'; form-action 'self'; frame-ancestors 'none'"),
     "X-Content-Type-Options": "nosniff",
     "Referrer-Policy": "no-referrer",
     # Kept copies are asked about each time (ETag, 304): a new version shows at once.

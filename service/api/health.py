@@ -34,9 +34,7 @@ async def healthz() -> Alive:
 async def readyz(request: Request) -> Ready:
     service = state(request)
     if not service.workers.ready:
-        raise ProblemError(
-            "not-ready", "The worker processes are not running yet. Ask again in a few seconds."
-        )
+        raise ProblemError("not-ready", "The worker processes are not running yet. Ask again in a few seconds.")
     return Ready(workers=service.settings.workers)
 
 

@@ -111,7 +111,5 @@ def _routing(request: Request, error: HTTPException) -> Problem:
     if error.status_code == 404:
         return Problem("not-found", f"Nothing is found at {path}; /openapi.json lists what is.")
     if error.status_code == 405:
-        return Problem(
-            "method-not-allowed", f"{path} does not take {method}; the header Allow says what it takes."
-        )
+        return Problem("method-not-allowed", f"{path} does not take {method}; the header Allow says what it takes.")
     return Problem("bad-request", str(error.detail))

@@ -16,9 +16,7 @@ def install(app: FastAPI) -> None:
     def openapi() -> dict[str, Any]:
         if app.openapi_schema is None:
             app.openapi_schema = _with_problems(
-                get_openapi(
-                    title=app.title, version=app.version, description=app.description, routes=app.routes
-                )
+                get_openapi(title=app.title, version=app.version, description=app.description, routes=app.routes)
             )
         return app.openapi_schema
 

@@ -27,9 +27,7 @@ class Options(BaseModel):
 
     model_config = ConfigDict(frozen=True, extra="forbid")
 
-    model: Literal["fopdt", "sopdt", "arx", "auto"] = Field(
-        default="auto", description="Model to fit; auto chooses."
-    )
+    model: Literal["fopdt", "sopdt", "arx", "auto"] = Field(default="auto", description="Model to fit; auto chooses.")
     Ms: float = Field(
         default=1.6,
         gt=1.0,
