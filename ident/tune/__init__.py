@@ -2,7 +2,7 @@
 
 from ident.tune.predict import predict
 from ident.tune.predicted import LoadStep, Predicted, Response, SetpointStep
-from ident.tune.propose import Proposal, propose
+from ident.tune.propose import Proposals, propose
 from ident.tune.setpoint_weight import choose_setpoint_weight
 from ident.tune.simc import simc
 from ident.tune.tuning import Tuning, tune
@@ -11,7 +11,7 @@ from ident.tune.worst_case import WorstCase
 __all__ = [
     "LoadStep",
     "Predicted",
-    "Proposal",
+    "Proposals",
     "Response",
     "SetpointStep",
     "Tuning",

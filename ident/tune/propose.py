@@ -17,7 +17,7 @@ TOLERANCE = 0.005  # above the target, in Ms or Mt
 
 
 @dataclass(frozen=True, slots=True)
-class Proposal:
+class Proposals:
     """Tunings of one plant, the index of the one to take (None: no tuning at all), and one sentence why."""
 
     tunings: tuple[Tuning, ...]
@@ -33,7 +33,7 @@ def propose(
     goal: str = "integral",
     period: float = 0.0,
     compute_delay: float = 0.0,
-) -> Proposal:
+) -> Proposals:
     """The settings best for the goal under the target and, for a first-order plant, SIMC with its margins.
 
     Arguments and errors as for `tune`. What misses the target is shown with a finding, never recommended.
@@ -41,9 +41,9 @@ def propose(
     best = tune(plant, Ms=Ms, form=form, goal=goal, period=period, compute_delay=compute_delay)
     model = first_order(plant)
     if model is None:
-        return Proposal((best,), 0, best.because)
+        return Proposals((best,), 0, best.because)
     rule = _simc(model, Ms, period, compute_delay)
-    return Proposal((best, rule), 0, _compare(best, rule, Ms))
+    return Proposals((best, rule), 0, _compare(best, rule, Ms))
 
 
 def meets(found: Margins, Ms: float) -> bool:
