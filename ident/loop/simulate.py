@@ -111,7 +111,7 @@ def _ramp(plant: Fopdt, after: Floats) -> Floats:
     return response
 
 
-def _zero_order(plant: Fopdt, h: float) -> tuple[int, Floats, Floats]:
+def zero_order(plant: Fopdt, h: float) -> tuple[int, Floats, Floats]:
     """(delay samples, numerator, denominator) of the plant behind a zero-order hold.
 
     The hold makes a pulse of one sample, a difference of steps; the plant's answer to it, times 1 - a z^-1, is
@@ -124,7 +124,7 @@ def _zero_order(plant: Fopdt, h: float) -> tuple[int, Floats, Floats]:
     return whole + 1, pulse[1:] - a * pulse[:-1], np.array([1.0, -a])
 
 
-def _first_order(plant: Fopdt, h: float) -> tuple[int, Floats, Floats]:
+def first_order(plant: Fopdt, h: float) -> tuple[int, Floats, Floats]:
     """The same for an input that is straight between samples: each sample makes a triangle."""
     whole = int(np.floor(plant.L / h + 1e-9))
     at = np.asarray(h * (whole + np.arange(-1, 3)) - plant.L, dtype=np.float64)
@@ -134,7 +134,7 @@ def _first_order(plant: Fopdt, h: float) -> tuple[int, Floats, Floats]:
 
 
 def _through_hold(plant: Fopdt, h: float, command: Floats) -> Floats:
-    delay, num, den = _zero_order(plant, h)
+    delay, num, den = zero_order(plant, h)
     speed = np.zeros(len(command))
     speed[delay:] = lfilter(num, den, command)[: max(len(command) - delay, 0)]
     return speed
@@ -163,7 +163,7 @@ def _feedback(settings: PidSettings, h: float, speed: Floats) -> Floats:
 
 def _close(plant: Fopdt, settings: PidSettings, clock: Clock, open_speed: Floats) -> Floats:
     """y = y_open - P C y."""
-    delay, plant_num, plant_den = (_zero_order if clock.digital else _first_order)(plant, clock.step)
+    delay, plant_num, plant_den = (zero_order if clock.digital else first_order)(plant, clock.step)
     c_num, c_den = _controller(settings, clock.step)
     num, den = np.polymul(plant_num, c_num), np.polymul(plant_den, c_den)
     if delay < FEW:
