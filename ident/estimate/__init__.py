@@ -1,7 +1,7 @@
 """The fits: start values, separable least squares, dead-time profile, what was noticed."""
 
+from ident.estimate.dispatch import fit
 from ident.estimate.fit import DeadTimeProfile, Fit
-from ident.estimate.fopdt import fit_fopdt
 from ident.estimate.friction import Friction
 
-__all__ = ["DeadTimeProfile", "Fit", "Friction", "fit_fopdt"]
+__all__ = ["DeadTimeProfile", "Fit", "Friction", "fit"]

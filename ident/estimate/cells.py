@@ -19,12 +19,12 @@ import numpy as np
 from numpy.typing import NDArray
 
 from ident.estimate.layout import Layout, Stretch
+from ident.evidence.normal import RIDGE, solve_normal
 from ident.plants.hold import lag_gap, lag_gap_slope
 from ident.record.segments import Floats
 
 Ints = NDArray[np.int64]
 
-RIDGE = 1e-13  # relative; keeps a collinear cell solvable without moving any other
 FORGOTTEN = 40.0  # time constants after which a transient is below rounding
 
 
@@ -47,9 +47,7 @@ class Cells:
     def minima(self) -> tuple[Floats, Floats, Floats]:
         """Per cell: least sum of squares, and the (T, L) where it lies, T linearised."""
         h, T = self.step, self.T
-        scale = np.sqrt(np.einsum("cii->ci", self.gram)) + np.finfo(float).tiny
-        gram = self.gram / (scale[:, :, None] * scale[:, None, :]) + RIDGE * np.eye(3)
-        b = np.linalg.solve(gram, (self.against / scale)[:, :, None])[:, :, 0] / scale
+        b = solve_normal(self.gram, self.against)
         with np.errstate(all="ignore"):
             E = b[:, 1] / b[:, 0]
             T_new = T + b[:, 2] / b[:, 1]
@@ -80,9 +78,7 @@ class Cells:
         to_two[:, 2, 1] = E
         gram = np.einsum("cij,cik,ckl->cjl", to_two, self.gram[i], to_two)
         against = np.einsum("cij,ci->cj", to_two, self.against[i])
-        scale = np.sqrt(np.einsum("cii->ci", gram)) + np.finfo(float).tiny
-        gram = gram / (scale[:, :, None] * scale[:, None, :]) + RIDGE * np.eye(2)
-        b = np.linalg.solve(gram, (against / scale)[:, :, None])[:, :, 0] / scale
+        b = solve_normal(gram, against)
         with np.errstate(all="ignore"):
             T = self.T + b[:, 1] / b[:, 0]
         return self.total - np.einsum("ci,ci->c", b, against), T

@@ -5,6 +5,7 @@ from __future__ import annotations
 import math
 
 import numpy as np
+from scipy.signal import lfilter
 
 from ident.estimate.layout import Layout
 from ident.estimate.refine import Point
@@ -46,26 +47,27 @@ def input_correlation(layout: Layout, at: Point, colour: Colour) -> float:
     reach = max(int((at.L + 3.0 * at.T) / layout.step), COMMAND_LAGS)
     longest = max(s.rows for s in layout.stretches)
     lags = np.unique(np.linspace(1, min(reach, longest // 2), COMMAND_LAGS).astype(int))
-    past = np.stack([_past_command(layout, int(lag)) for lag in lags])
-    whitened = _whiten(np.vstack((at.residual, at.jacobian, past)), colour)
-    k = at.jacobian.shape[0]
-    return left_in(whitened[0], whitened[1 : 1 + k], whitened[1 + k :])
+    own = at.jacobian.shape[0]
+    rows = np.empty((1 + own + len(lags), layout.rows))
+    rows[0] = at.residual
+    rows[1 : 1 + own] = at.jacobian
+    for row, lag in zip(rows[1 + own :], lags, strict=True):
+        _past_command(layout, int(lag), row)
+    return left_in(_whiten(rows, colour), own)
 
 
-def _past_command(layout: Layout, lag: int) -> Floats:
-    parts = []
+def _past_command(layout: Layout, lag: int, into: Floats) -> None:
+    """Write the command `lag` rows ago, at the used rows, into a row."""
+    at = 0
     for s in layout.stretches:
-        shifted = np.concatenate((np.full(min(lag, s.rows), s.command[0]), s.command[: max(s.rows - lag, 0)]))
-        parts.append(shifted[s.skip :])
-    return np.concatenate(parts) if len(parts) > 1 else parts[0]
+        n = s.rows - s.skip
+        early = min(max(lag - s.skip, 0), n)
+        into[at : at + early] = s.command[0]
+        into[at + early : at + n] = s.command[s.skip + early - lag : s.rows - lag] if early < n else 0.0
+        at += n
 
 
 def _whiten(rows: Floats, colour: Colour) -> Floats:
     if colour.white:
         return rows
-    order = len(colour.a)
-    n = rows.shape[1]
-    white = rows[:, order:].copy()
-    for k, a in enumerate(colour.a, start=1):
-        white += a * rows[:, order - k : n - k]
-    return white
+    return np.asarray(lfilter(np.concatenate(([1.0], colour.a)), [1.0], rows, axis=1)[:, len(colour.a) :])

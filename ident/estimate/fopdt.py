@@ -22,13 +22,17 @@ from ident.estimate.uncertainty import (
     uncertainty,
 )
 from ident.estimate.validation import validation_fit
-from ident.evidence.colour import autoregression
+from ident.evidence.colour import Colour, autoregression, coloured_covariance
 from ident.evidence.estimates import Estimate
 from ident.plants import Fopdt
 from ident.record import LoopRecord
 from ident.record.segments import Floats
 
-KNOWN = 0.5  # std of log|K| or of log|K/T| above which the log has not said what the plant does
+# Std of log|K| or of log|K/T| above which the log has not said what the plant does.
+KNOWN = 0.5
+# The response, its shape given, in its own standard deviations. Searched over all shapes, pure noise reaches four or
+# five; so a response of six is one.
+CLEAR = 6.0
 
 
 def fit_fopdt(record: LoopRecord) -> Fit:
@@ -47,7 +51,7 @@ def fit_fopdt(record: LoopRecord) -> Fit:
         layout, at = _leave_out_unknown_past(layout, at)
     colour = autoregression(at.residual)
     known = uncertainty(at, colour)
-    _require_known(at, known)
+    _require_known(at, colour, known)
     profile = dead_time_profile(layout, at, known)
     figures = statistics(layout, at, colour, validation_fit(layout, at))
     parameters, derived = _estimates(record, at, known)
@@ -92,14 +96,17 @@ def _leave_out_unknown_past(layout: Layout, at: Point) -> tuple[Layout, Point]:
     return shorter, at
 
 
-def _require_known(at: Point, known: Uncertainty) -> None:
+def _require_known(at: Point, colour: Colour, known: Uncertainty) -> None:
     gain, ratio = math.sqrt(max(known.log_covariance[0, 0], 0.0)), known.std_log_ratio()
-    if at.K == 0.0 or not (gain <= KNOWN or ratio <= KNOWN):
+    clear = abs(at.K) / math.sqrt(
+        max(coloured_covariance(np.delete(at.jacobian, (1, 2), axis=0), colour)[0, 0], 1e-300)
+    )
+    if at.K == 0.0 or clear < CLEAR or not (gain <= KNOWN or ratio <= KNOWN):
         raise NotIdentifiable(
             "not-identifiable",
-            "The speed does not answer to the command by more than its noise: neither the gain nor K/T is known "
-            "within a factor of two. Log a larger or longer step of the command.",
-            {"relative_std_gain": min(gain, 1e9), "relative_std_ratio": min(ratio, 1e9)},
+            "The speed does not answer to the command by clearly more than its noise, so neither the gain nor K/T can "
+            "be told. Log a larger or longer step of the command.",
+            {"response_in_stds": clear, "relative_std_gain": min(gain, 1e9), "relative_std_ratio": min(ratio, 1e9)},
         )
 
 

@@ -13,6 +13,7 @@ import numpy as np
 
 from ident.estimate.columns import Columns, columns
 from ident.estimate.layout import Layout
+from ident.evidence.normal import solve_normal
 from ident.record.segments import Floats
 
 MOST_STEPS = 40
@@ -63,13 +64,13 @@ def point(layout: Layout, T: float, L: float, side: int = 1) -> Point:
     return Point(T, L, K, nuisance, residual, float(residual @ residual), jacobian)
 
 
-def refine(layout: Layout, T: float, L: float) -> Point:
+def refine(layout: Layout, T: float, L: float, promise: float = PROMISE) -> Point:
     """The nearest minimum from (T, L), through as many cells of the dead time as it takes."""
     h = layout.step
     if not layout.uniform:
-        return _descend(layout, point(layout, T, max(L, 0.0)), 0.0, np.inf)
+        return _descend(layout, point(layout, T, max(L, 0.0)), 0.0, np.inf, promise)
     cell = int(max(L, 0.0) / h)
-    best = _descend(layout, point(layout, T, max(L, 0.0)), cell * h, (cell + 1) * h)
+    best = _descend(layout, point(layout, T, max(L, 0.0)), cell * h, (cell + 1) * h, promise)
     for _ in range(MOST_STEPS):
         if best.L >= (cell + 1) * h:
             step = 1
@@ -78,14 +79,14 @@ def refine(layout: Layout, T: float, L: float) -> Point:
         else:
             break
         start = point(layout, best.T, best.L, side=step)
-        other = _descend(layout, start, (cell + step) * h, (cell + step + 1) * h)
+        other = _descend(layout, start, (cell + step) * h, (cell + step + 1) * h, promise)
         if not other.rss < best.rss * (1.0 - 1e-12):
             break
         best, cell = other, cell + step
     return best
 
 
-def _descend(layout: Layout, at: Point, low: float, high: float) -> Point:
+def _descend(layout: Layout, at: Point, low: float, high: float, promise: float) -> Point:
     total = float(layout.speed @ layout.speed)
     shortest, longest = SHORTEST_T * layout.step, LONGEST_T * layout.duration
     for _ in range(MOST_STEPS):
@@ -98,7 +99,7 @@ def _descend(layout: Layout, at: Point, low: float, high: float) -> Point:
             short = _solve(free, at.residual)
             step = np.insert(short, 2, 0.0)
         promised = float(at.residual @ (step @ at.jacobian))
-        if promised <= PROMISE * at.rss / layout.rows:
+        if promised <= promise * at.rss / layout.rows:
             break
         ahead = None
         for halving in range(MOST_HALVINGS):
@@ -116,12 +117,8 @@ def _descend(layout: Layout, at: Point, low: float, high: float) -> Point:
 
 
 def _solve(rows: Floats, right: Floats) -> Floats:
-    """Least squares of `right` on the rows, by scaled normal equations; a row that adds nothing gets nothing."""
-    gram = rows @ rows.T
-    scale = np.sqrt(np.diag(gram)) + np.finfo(float).tiny
-    gram = gram / (scale[:, None] * scale) + 1e-13 * np.eye(len(scale))
-    solution: Floats = np.linalg.solve(gram, (rows @ right) / scale) / scale
-    return solution
+    """Least squares of `right` (n,) on the rows (k, n)."""
+    return solve_normal(rows @ rows.T, rows @ right)
 
 
 def _with_slope_below(at: Columns, below: Columns) -> Columns:

@@ -41,7 +41,7 @@ def settle(layout: Layout, T: float, L: float) -> Point:
     rss, T_there, L_there = around(layout, best).minima()
     i = int(np.argmin(rss))
     if rss[i] < best.rss * (1.0 - 1e-9) and abs(L_there[i] - best.L) > 0.5 * layout.step:
-        nearby = float(np.clip(T_there[i], 0.5 * best.T, 2.0 * best.T))
+        nearby = float(np.clip(np.nan_to_num(T_there[i], nan=best.T), 0.5 * best.T, 2.0 * best.T))
         best = min(best, refine(layout, nearby, float(L_there[i])), key=lambda p: p.rss)
     return best
 

@@ -47,7 +47,10 @@ def thinning(layout: Layout) -> int:
 
 
 def starts(layout: Layout) -> tuple[Start, ...]:
-    """The best few starting points of a uniform layout, best first: maxima over L that come near the best."""
+    """The best few starting points of a uniform layout without skipped rows, best first.
+
+    Maxima over L that come near the best one.
+    """
     h = layout.step
     longest = max(s.rows for s in layout.stretches)
     delays = max(int(LONGEST_DEAD_TIME * longest), 1)
@@ -66,13 +69,11 @@ def starts(layout: Layout) -> tuple[Start, ...]:
 
 
 def _command_against_speed(stretch: Stretch) -> Floats:
-    """Sum over the used rows of v[k-d] y[k] for d = 0..n-1, v the command's deviation from its first value."""
+    """Sum over the rows of v[k-d] y[k] for d = 0..n-1, v the command's deviation from its first value."""
     n = stretch.rows
-    y = stretch.speed.copy()
-    y[: stretch.skip] = 0.0
     size = fft.next_fast_len(2 * n, real=True)
     moved = stretch.command - stretch.command[0]
-    product = fft.irfft(np.conj(fft.rfft(moved, size)) * fft.rfft(y, size), size)
+    product = fft.irfft(np.conj(fft.rfft(moved, size)) * fft.rfft(stretch.speed, size), size)
     return np.asarray(product[:n], dtype=np.float64)
 
 
@@ -80,25 +81,24 @@ def _explained(layout: Layout, crossed: list[Floats], T: float, delays: int) -> 
     """Share of the speed's variance explained at each dead time 0..delays-1 in steps."""
     x_sum, x_square, x_y = (np.zeros(delays) for _ in range(3))
     for stretch, command_speed in zip(layout.stretches, crossed, strict=True):
-        n, skip, level = stretch.rows, stretch.skip, float(stretch.command[0])
+        n, level = stretch.rows, float(stretch.command[0])
+        some = min(delays, n)
         moved = lag_gap(stretch.command, stretch.intervals, T) + stretch.command - level
         # The lag's answer is zero before the first row, so filtering the command and filtering its products
         # with the speed (backwards in d) give the same sums, and the transform is needed once for all T.
         reverse = command_speed[::-1]
-        filtered = (lag_gap(reverse, layout.step, T) + reverse)[::-1]
-        some = min(delays, n)
-        x_y[:some] += filtered[:some]
-        d = np.arange(delays)
-        low = np.minimum(np.maximum(skip - d, 0), n)
-        high = np.maximum(np.maximum(n - d, 0), low)
-        running = np.cumsum(np.stack((moved, moved * moved)), axis=1)
-        running = np.concatenate((np.zeros((2, 1)), running), axis=1)
-        moved_sum, moved_square = running[:, high] - running[:, low]
-        x_y += level * float(stretch.speed[skip:].sum())
-        x_sum += moved_sum + (n - skip) * level
-        x_square += moved_square + 2.0 * level * moved_sum + (n - skip) * level**2
+        x_y[:some] += (lag_gap(reverse, layout.step, T) + reverse)[n - some :][::-1]
+        # Delayed by d, the last d rows of the answer have not come by yet.
+        moved_sum = np.cumsum(moved)[n - some :][::-1]
+        moved_square = np.cumsum(moved * moved)[n - some :][::-1]
+        x_sum[:some] += moved_sum
+        x_square[:some] += moved_square + 2.0 * level * moved_sum
+        # Where the level is not the reference, it adds to every dead time alike.
+        x_y += level * float(stretch.speed.sum())
+        x_sum += n * level
+        x_square += n * level**2
     y = layout.speed
-    covariance = x_y - x_sum * float(y.sum()) / len(y)
+    covariance = x_y - x_sum * (float(y.sum()) / len(y))
     x_variance = x_square - x_sum**2 / len(y)
     y_variance = float(y @ y) - float(y.sum()) ** 2 / len(y)
     floor = 1e-12 * float(x_square.max()) + 1e-300

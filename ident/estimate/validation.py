@@ -12,6 +12,7 @@ from ident.estimate.refine import Point, point, refine
 from ident.evidence.criteria import fit_percent
 
 TRAINED = 0.7  # share of the rows that the model is fitted on
+ROUGHLY = 1e-2  # of one residual's variance: a tenth of a standard deviation is enough here
 MOVES = 0.2  # of the command's whole span: what each part must move
 
 
@@ -24,7 +25,7 @@ def validation_fit(layout: Layout, at: Point) -> float | None:
     if train is None or not _moves(layout, row):
         return None
     try:
-        trained = refine(train, at.T, at.L)
+        trained = refine(train, at.T, at.L, ROUGHLY)
     except (NotIdentifiable, np.linalg.LinAlgError):
         return None
     # The same (T, L) on the whole record; gain, offset and known transients are the trained ones.

@@ -6,12 +6,14 @@ than white noise of the same power would give. R follows from an AR(p) model who
 
 from __future__ import annotations
 
+import math
 from dataclasses import dataclass
 
 import numpy as np
 from numpy.typing import NDArray
-from scipy.linalg import solve_toeplitz
 from scipy.signal import lfilter
+
+from ident.evidence.normal import lengths
 
 Floats = NDArray[np.float64]
 
@@ -29,21 +31,25 @@ class Colour:
 
 
 def autoregression(residual: Floats, most: int = 20) -> Colour:
-    """AR model by Yule and Walker's equations, order 0..most with the least AICc (residual (n,), mean removed)."""
+    """AR model of a residual (n,), mean removed: order 0..most with the least AICc, by Levinson's recursion.
+
+    (Yule and Walker's equations; Durbin 1960, Rev. Int. Stat. Inst. 28, 233-244.)
+    """
     n = len(residual)
     most = max(min(most, n // 10), 0)
     e = residual - residual.mean()
-    c = np.array([e @ e] + [e[k:] @ e[:-k] for k in range(1, most + 1)]) / n
+    c = np.array([e @ e, *(e[k:] @ e[:-k] for k in range(1, most + 1))]) / n
     if c[0] == 0.0:
         return Colour(np.zeros(0), 0.0)
-    best, least = Colour(np.zeros(0), float(c[0])), np.log(c[0]) * n
-    for order in range(1, most + 1):
-        a = -solve_toeplitz(c[:order], c[1 : order + 1])
-        variance = float(c[0] + a @ c[1 : order + 1])
+    a, variance = np.zeros(0), float(c[0])
+    best, least = Colour(a, variance), n * math.log(variance)
+    for p in range(1, most + 1):
+        reflection = -(float(c[p]) + float(a @ c[p - 1 : 0 : -1])) / variance
+        a = np.append(a + reflection * a[::-1], reflection)
+        variance *= 1.0 - reflection**2
         if variance <= 0.0:
             break
-        p = order
-        criterion = n * np.log(variance) + 2.0 * p + 2.0 * p * (p + 1) / (n - p - 1)
+        criterion = n * math.log(variance) + 2.0 * p + 2.0 * p * (p + 1) / (n - p - 1)
         if criterion < least:
             best, least = Colour(a, variance), criterion
     return best
@@ -55,7 +61,7 @@ def coloured_covariance(jacobian: Floats, colour: Colour) -> Floats:
     J'RJ = variance * |J passed backwards through 1/A|^2, as R = variance (A'A)^-1 for a filter matrix A.
     """
     gram = jacobian @ jacobian.T
-    scale = np.sqrt(np.diag(gram)) + np.finfo(float).tiny
+    scale = lengths(gram)
     inverse = np.linalg.pinv(gram / (scale[:, None] * scale), rcond=1e-14, hermitian=True)
     inverse /= scale[:, None] * scale
     if colour.white:

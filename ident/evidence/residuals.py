@@ -6,6 +6,8 @@ import numpy as np
 from numpy.typing import NDArray
 from scipy.stats import chi2
 
+from ident.evidence.normal import lengths
+
 Floats = NDArray[np.float64]
 
 
@@ -28,31 +30,29 @@ def ljung_box(r: Floats, n: int, fitted: int = 0) -> tuple[float, float]:
     return q, float(chi2.sf(q, max(m - fitted, 1)))
 
 
-def left_in(residual: Floats, explained: Floats, candidates: Floats) -> float:
-    """p of the hypothesis that the candidates explain nothing of the residual beyond what the model did.
+def left_in(rows: Floats, own: int) -> float:
+    """p of the hypothesis that candidate rows explain nothing of a residual beyond what the model did.
 
     A score (Lagrange multiplier) test: n R^2 of the residual on both sets of rows is chi-squared in the
     number of directions that the candidates add (Breusch 1978; Godfrey 1978). White residuals are assumed.
 
-    residual (n,);  explained (k, n), the model's own slopes;  candidates (m, n)
+    rows  (1 + own + m, n): the residual, the model's `own` slopes, m candidates
     """
-    basis = _orthonormal(explained)
-    rest = candidates - (candidates @ basis.T) @ basis
-    gone = np.linalg.norm(rest, axis=1) <= 1e-6 * (np.linalg.norm(candidates, axis=1) + 1e-300)
-    rest = _orthonormal(rest[~gone], 1e-8)
-    power = float(residual @ residual)
-    if len(rest) == 0 or power == 0.0:
+    gram = rows @ rows.T
+    if gram[0, 0] == 0.0:
         return 1.0
-    score = len(residual) * float(np.sum((rest @ residual) ** 2)) / power
-    return float(chi2.sf(score, len(rest)))
+    scale = lengths(gram)
+    gram /= scale[:, None] * scale
+    explained, directions = _explained_share(gram, 1 + own)
+    both, all_directions = _explained_share(gram, len(gram))
+    if all_directions <= directions:
+        return 1.0
+    return float(chi2.sf(rows.shape[1] * max(both - explained, 0.0), all_directions - directions))
 
 
-def _orthonormal(rows: Floats, cut: float = 1e-12) -> Floats:
-    """An orthonormal basis of the rows' span, by the Gram matrix's eigenvectors; near-zero directions dropped."""
-    if len(rows) == 0:
-        return rows
-    scaled = rows / (np.linalg.norm(rows, axis=1, keepdims=True) + 1e-300)
-    values, vectors = np.linalg.eigh(scaled @ scaled.T)
-    keep = values > cut * max(values[-1], 1e-300)
-    basis: Floats = (vectors[:, keep] / np.sqrt(values[keep])).T @ scaled
-    return basis
+def _explained_share(gram: Floats, rows: int, cut: float = 1e-10) -> tuple[float, int]:
+    """Share of row 0's power explained by rows 1..rows-1 of unit rows with this Gram matrix, and their rank."""
+    values, vectors = np.linalg.eigh(gram[1:rows, 1:rows])
+    keep = values > cut * values[-1]
+    along = vectors[:, keep].T @ gram[1:rows, 0]
+    return float(np.sum(along**2 / values[keep])), int(np.count_nonzero(keep))

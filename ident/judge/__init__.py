@@ -1,5 +1,6 @@
-"""What to believe: excitation, kind of operation, validation."""
+"""What to believe: excitation, kind of operation, the next test to run."""
 
-from ident.judge.excitation import Advice, Excitation
+from ident.judge.excitation import Advice, Excitation, advice, excitation
+from ident.judge.operation import Operation, operation
 
-__all__ = ["Advice", "Excitation"]
+__all__ = ["Advice", "Excitation", "Operation", "advice", "excitation", "operation"]

@@ -11,7 +11,7 @@ from dataclasses import dataclass, field
 from ident.estimate import Friction
 from ident.evidence import Covariance, Estimate, Statistics
 from ident.findings import Finding
-from ident.judge import Advice, Excitation
+from ident.judge import Advice, Excitation, Operation
 from ident.loop import Margins, PidSettings
 from ident.tune import Predicted, WorstCase
 
@@ -51,7 +51,7 @@ class Span:
 class RecordInfo:
     """What kind of record the log became."""
 
-    operation: str  # open-loop | closed-loop | unknown
+    operation: Operation
     excitation: Excitation
     advice: Advice | None
     segments: tuple[Span, ...]
@@ -117,11 +117,15 @@ class Autocorrelation:
 
 @dataclass(frozen=True, slots=True)
 class Profile:
-    """Sum of squared residuals over its minimum, along one parameter, the others refitted."""
+    """Sum of squared residuals over its minimum, along one parameter, the others refitted.
+
+    limit   the ratio that bounds the 95 % interval
+    """
 
     parameter: str
     value: Series
     ratio: Series
+    limit: float
     unit: str
 
 

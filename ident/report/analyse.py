@@ -1,0 +1,137 @@
+"""analyse: the whole order of work, from a record to its report."""
+
+from __future__ import annotations
+
+from importlib.metadata import PackageNotFoundError, version
+
+from ident.errors import NotIdentifiable, Refused
+from ident.estimate import Fit, fit
+from ident.findings import Finding
+from ident.judge import advice, excitation
+from ident.record import LoopRecord
+from ident.report.cautions import CAUTIONS
+from ident.report.curves import curves
+from ident.report.log import log_info, record_info
+from ident.report.shape import FitReport, Report, TuningReport
+from ident.tune import Proposals, propose
+
+
+def analyse(
+    record: LoopRecord,
+    *,
+    model: str = "auto",
+    Ms: float = 1.6,
+    form: str = "pi",
+    goal: str = "integral",
+    period: float | None = None,
+    compute_delay: float = 0.0,
+    seed: int = 0,
+) -> Report:
+    """Everything one record says: model, proposals, margins, predicted outcome.
+
+    model          fopdt, or auto to let the data choose
+    Ms             robustness target: max(Ms, Mt) of a proposal is at most this
+    form, goal     pi; integral (the largest ki)
+    period         s, of the controller; None: the log's sample time, with a finding; 0 for an analogue controller
+    compute_delay  s, from reading the speed to writing the command
+    seed           of every random draw: the same record and options give the same report
+
+    A record with too little in it gives a report without fits that says so. Raises Refused for options without
+    an answer.
+    """
+    options: dict[str, float | int | str | None] = {
+        "model": model,
+        "Ms": Ms,
+        "form": form,
+        "goal": goal,
+        "period": period,
+        "compute_delay": compute_delay,
+        "seed": seed,
+    }
+    found: list[Finding] = []
+    fitted, refused = _fit(record, model)
+    held, assumed = _period(record, period)
+    proposal: Proposals | None = None
+    if fitted is not None:
+        found += assumed
+        proposal, untunable = _propose(fitted, Ms=Ms, form=form, goal=goal, period=held, delay=compute_delay)
+        found += untunable
+    else:
+        assert refused is not None
+        found.append(Finding(refused.code, "error", refused.message, refused.evidence))
+    moved = excitation(record, refused)
+    tunings = tuple(
+        TuningReport(t.method, t.form, t.settings, t.margins, None, t.predicted, {}, t.findings)
+        for t in (proposal.tunings if proposal else ())
+    )
+    return Report(
+        engine_version=_engine(),
+        log=log_info(record),
+        record=record_info(record, moved, None if moved.sufficient else advice(record)),
+        fits=() if fitted is None else (_fit_report(fitted),),
+        selected=None if fitted is None else 0,
+        selected_because="" if fitted is None else "The only model fitted: first order with dead time.",
+        installed=None,
+        tunings=tunings,
+        recommended=proposal.recommended if proposal else None,
+        recommended_because=proposal.because if proposal else "",
+        curves=curves(record, fitted, tunings, period=held, compute_delay=compute_delay),
+        findings=tuple(found),
+        cautions=CAUTIONS,
+        options=options,
+    )
+
+
+def _fit(record: LoopRecord, model: str) -> tuple[Fit | None, NotIdentifiable | None]:
+    try:
+        return fit(record, model), None
+    except NotIdentifiable as error:
+        return None, error
+
+
+def _period(record: LoopRecord, period: float | None) -> tuple[float, list[Finding]]:
+    if period is not None:
+        if not 0.0 <= period < float("inf"):
+            raise Refused("period-out-of-range", f"The controller's period is a time in s, 0 or more; not {period}.")
+        return period, []
+    step = record.sample_time or float(record.time[-1] - record.time[0]) / max(record.rows - 1, 1)
+    return step, [
+        Finding(
+            "period-assumed",
+            "warning",
+            f"The controller's period was not given: the log's sample time, {step:.4g} s, was taken for it. A slower "
+            "controller has less margin than stated here: give its period (0 for an analogue one).",
+            {"period_s": step},
+        )
+    ]
+
+
+def _propose(
+    fitted: Fit, *, Ms: float, form: str, goal: str, period: float, delay: float
+) -> tuple[Proposals | None, list[Finding]]:
+    try:
+        return propose(fitted.model, Ms=Ms, form=form, goal=goal, period=period, compute_delay=delay), []
+    except Refused as error:
+        if error.code != "unbounded":
+            raise
+        # A property of this plant, not of the request: the model still stands.
+        return None, [Finding(error.code, "warning", error.message, error.evidence)]
+
+
+def _fit_report(fitted: Fit) -> FitReport:
+    return FitReport(
+        fitted.name,
+        fitted.parameters,
+        fitted.derived,
+        fitted.covariance,
+        fitted.friction,
+        fitted.statistics,
+        fitted.findings,
+    )
+
+
+def _engine() -> str:
+    try:
+        return version("gainwright")
+    except PackageNotFoundError:  # the library used from a bare folder
+        return "unknown"

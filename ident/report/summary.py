@@ -1,0 +1,110 @@
+"""summary: a report as text that can be read at the machine."""
+
+from __future__ import annotations
+
+import math
+from collections.abc import Iterator
+
+from ident.evidence import Estimate
+from ident.findings import Finding
+from ident.report.shape import FitReport, Report, TuningReport
+
+
+def summary(report: Report) -> str:
+    """The report in plain lines: model, statistics, settings, margins, findings, cautions."""
+    return "\n".join(_lines(report)) + "\n"
+
+
+def _lines(report: Report) -> Iterator[str]:
+    log = report.log
+    step = "irregular" if log.sample_time_s is None else f"every {log.sample_time_s:.4g} s"
+    yield f"Log         {log.rows} rows, {log.duration_s:.6g} s, {step}, {report.record.operation}"
+    if log.start:
+        yield f"            {log.start} to {log.end}"
+    for role, header in log.columns.items():
+        yield f"            {role:<9} from column {header!r}"
+    if report.selected is None:
+        yield ""
+        yield f"No model    {report.record.excitation.reason}"
+        if report.record.advice:
+            yield f"Next test   {report.record.advice.message}"
+    else:
+        yield from _model(report.fits[report.selected], report)
+    for i, tuning in enumerate(report.tunings):
+        yield from _tuning(tuning, report, recommended=i == report.recommended)
+    if report.recommended_because:
+        yield ""
+        yield f"Why         {report.recommended_because}"
+    yield from _findings(report)
+    yield ""
+    yield "Cautions"
+    yield from (f"  - {caution}" for caution in report.cautions)
+
+
+def _model(fit: FitReport, report: Report) -> Iterator[str]:
+    yield ""
+    yield "Model       K exp(-L s)/(T s + 1)"
+    for name, estimate in (fit.parameters | fit.derived).items():
+        yield f"  {name:<9} {quantity(estimate)}"
+    s = fit.statistics
+    percent = "not defined" if s.fit_percent is None else f"{s.fit_percent:.2f} %"
+    held_out = (
+        "no held-out span moves"
+        if s.validation_fit_percent is None
+        else f"{s.validation_fit_percent:.2f} % on rows it was not fitted to"
+    )
+    yield f"  fit       {percent} (NRMSE of the simulated response); {held_out}"
+    yield f"  residual  {s.rms_residual:.4g} {report.log.speed_unit} rms over {s.rows_used} rows"
+
+
+def _tuning(tuning: TuningReport, report: Report, *, recommended: bool) -> Iterator[str]:
+    s, m = tuning.settings, tuning.margins
+    unit = f"{report.log.command_unit or 'command'}/{report.log.speed_unit or 'speed'}"
+    yield ""
+    yield f"Settings    {tuning.method}, {tuning.form}{'   << recommended' if recommended else ''}"
+    yield f"  Kp {s.Kp:.5g} {unit}   Ti {s.Ti:.5g} s   Td {s.Td:.5g} s   Tf {s.Tf:.5g} s   b {s.b:.3g}"
+    if not m.stable:
+        yield "  the loop would be unstable"
+        return
+    yield (
+        f"  Ms {_number(m.Ms)}   Mt {_number(m.Mt)}   gain margin {_number(m.gain_margin)}   "
+        f"phase margin {_number(m.phase_margin_deg)} deg   delay margin {_number(m.delay_margin_s)} s"
+    )
+    if tuning.predicted:
+        step, load = tuning.predicted.setpoint_step, tuning.predicted.load_step
+        yield (
+            f"  setpoint step: overshoot {step.overshoot_percent:.1f} %, settled in {_number(step.settling_time_s)} s; "
+            f"unit load step: peak {load.peak_deviation:.4g} {report.log.speed_unit}, "
+            f"back in {_number(load.recovery_time_s)} s"
+        )
+
+
+def _findings(report: Report) -> Iterator[str]:
+    found: list[Finding] = [*report.log.findings, *report.findings]
+    for fit in report.fits:
+        found += fit.findings
+    for tuning in report.tunings:
+        found += tuning.findings
+    if found:
+        yield ""
+        yield "Findings"
+        yield from (f"  {f.severity:<8} {f.code}: {f.message}" for f in found)
+
+
+def quantity(estimate: Estimate) -> str:
+    """Value and 95 % interval with the decimals that the standard deviation supports."""
+    if estimate.std is None or estimate.std <= 0.0:
+        digits = 4 - _exponent(estimate.value)
+    else:
+        digits = 1 - _exponent(estimate.std)
+    digits = min(max(digits, 0), 12)
+    low, high = (("open" if v is None else f"{v:.{digits}f}") for v in estimate.ci95)
+    return f"{estimate.value:.{digits}f} {estimate.unit}   95 %: {low} to {high}"
+
+
+def _exponent(value: float) -> int:
+    return math.floor(math.log10(abs(value))) if value else 0
+
+
+def _number(value: float | None) -> str:
+    return "-" if value is None else f"{value:.4g}"
