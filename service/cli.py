@@ -92,6 +92,9 @@ def _serve(asked: argparse.Namespace) -> int:
             name = str(fault["loc"][-1])
             print(f"gainwright: {name} ({PREFIX}{name.upper()}): {fault['msg']}", file=sys.stderr)
         return 2
+    from service.work.worker import context
+
+    context()  # its process loads the numerics while this one loads the service
     from service.serve import serve
 
     return serve(settings)

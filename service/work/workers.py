@@ -10,7 +10,6 @@ from service.errors import ProblemError
 from service.work.lane import Answer, Lane, Task
 from service.work.options import Options
 from service.work.report import report_bytes
-from service.work.threads import one_blas_thread
 from service.work.worker import context
 
 
@@ -31,7 +30,6 @@ class Workers:
 
     async def start(self) -> None:
         """Start every process and wait until all of them answer."""
-        one_blas_thread()
         await asyncio.gather(*(asyncio.to_thread(lane.open) for lane in self._lanes))
         for lane in self._lanes:
             self._idle.put_nowait(lane)
