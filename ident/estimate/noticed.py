@@ -13,6 +13,7 @@ from ident.findings import Finding
 POOR_FIT = 50.0  # %
 WIDE = 0.3  # half-width of an interval over the value
 UNLIKELY = 0.01
+POORLY_KNOWN = 0.25  # std of T over T: in a record short against T, only K/T is left
 CLEAR_CORRELATION = 0.2
 
 
@@ -48,7 +49,8 @@ def _integrating(
     layout: Layout, at: Point, parameters: dict[str, Estimate], derived: dict[str, Estimate]
 ) -> Iterator[Finding]:
     at_limit = at.T >= 0.99 * LONGEST_T * layout.duration
-    if at_limit or (parameters["T"].ci95[1] is None and at.T > 0.5 * layout.duration):
+    std = parameters["T"].std
+    if at_limit or (at.T > 0.5 * layout.duration and (std is None or std > POORLY_KNOWN * at.T)):
         ratio = derived["K/T"]
         yield Finding(
             "integrating",

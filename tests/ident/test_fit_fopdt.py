@@ -132,7 +132,8 @@ def test_an_integrating_plant_is_known_by_its_ratio() -> None:
     assert ratio.ci95[0] is not None
     assert ratio.ci95[1] is not None
     assert ratio.ci95[0] < 3.0 < ratio.ci95[1]
-    assert fit.parameters["T"].ci95[1] is None
+    T = fit.parameters["T"]
+    assert T.std is None or T.std > 0.25 * T.value
     assert "integrating" in {f.code for f in fit.findings}
 
 
