@@ -87,6 +87,17 @@ function missing(path) {
     h("h1", {}, "There is nothing at this address"), h("p", {}, path), h("p", {}, h("a", { href: "#/" }, "Bring a log"))));
 }
 
+// Places within a view are reached without touching its address.
+addEventListener("click", (event) => {
+  const link = event.target.closest?.('a[href^="#"]:not([href^="#/"])');
+  const place = link && document.getElementById(link.hash.slice(1));
+  if (!place) return;
+  event.preventDefault();
+  place.tabIndex = -1;
+  place.focus({ preventScroll: true });
+  place.scrollIntoView();
+});
+
 const routes = router([["/", () => home()], ["/report", run], ["/sample/{name}", fromSample]], missing);
 document.getElementById("nav").append(h("a", { href: "#/" }, "Bring a log"));
 routes.go();

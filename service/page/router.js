@@ -7,9 +7,8 @@ export function router(routes, otherwise) {
   ]);
 
   function go() {
-    // "#main" is the skip link's, not a view.
-    if (location.hash && !location.hash.startsWith("#/")) return;
-    const [path, query = ""] = (location.hash.slice(1) || "/").split("?");
+    const address = location.hash.startsWith("#/") ? location.hash.slice(1) : "/";
+    const [path, query = ""] = address.split("?");
     for (const [pattern, view] of compiled) {
       const match = pattern.exec(path);
       if (match) {

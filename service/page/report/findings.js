@@ -45,5 +45,6 @@ export function findings(report) {
 
 export function cautions(report) {
   if (!report.cautions.length) return null;
-  return section("cautions", "Before you type them in", null, h("ul", { class: "cautions" }, report.cautions.map((text) => h("li", {}, text))));
+  const title = report.recommended === null ? "Before the next test" : "Before you type them in";
+  return section("cautions", title, null, h("ul", { class: "cautions" }, report.cautions.map((text) => h("li", {}, text))));
 }

@@ -72,7 +72,7 @@ function settings(report) {
       margin("Phase margin", withUnit(fixed(margins.phase_margin_deg, 1), "°"), "phase"),
       margin("Delay margin", withUnit(significant(margins.delay_margin_s, 3), "s"), "delay")),
     report.recommended_because && h("p", { class: "note", "data-testid": "because" }, report.recommended_because),
-    copyButton(plain(set, gainUnit)));
+    h("p", { class: "after" }, copyButton(plain(set, gainUnit)), report.cautions.length > 0 && h("a", { href: "#cautions" }, "Read the cautions first")));
 }
 
 function nothing(report) {

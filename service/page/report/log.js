@@ -19,7 +19,7 @@ export function log(report, name) {
     ["Duration", duration(read.duration_s)],
     ["Sample time", read.sample_time_s === null ? "uneven" : withUnit(exact(read.sample_time_s), "s")],
     ["Operation", word(OPERATIONS, record.operation)],
-    ["Movement", record.excitation.reason],
+    record.excitation.sufficient && ["Movement", record.excitation.reason],
     ["Columns", h("ul", { class: "plain" }, Object.entries(read.columns).map(([role, header]) => h("li", {}, `${word(ROLES, role)}: “${header}”`)))],
     ["Units", `speed ${read.speed_unit || "not stated"}, command ${read.command_unit || "not stated"}`],
     record.segments.length > 1 && ["Segments", spans(record.segments)],

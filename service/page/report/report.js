@@ -28,7 +28,7 @@ export function report(data, { name, onAgain, options }) {
     h("header", { class: "report-head" },
       h("div", {}, h("p", { class: "eyebrow" }, "Report on one log"), h("h1", {}, name), data.log.start && h("p", { class: "note" }, instant(data.log.start))),
       h("div", { class: "actions" }, download(data, name), h("button", { type: "button", class: "button quiet", onclick: () => print() }, "Print"))),
-    headline(data), findings(data), cautions(data), trend(data), predicted(data), robustness(data), tunings(data),
+    headline(data), findings(data), trend(data), predicted(data), robustness(data), tunings(data), cautions(data),
     parameters(data), profile(data), statistics(data), residuals(data), log(data, name),
     againForm(options, onAgain, { "data-testid": "again-fold" }));
 }

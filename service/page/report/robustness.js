@@ -13,6 +13,13 @@ function closest({ w, real, imag, sensitivity }) {
   return { w: w[i], real: real[i], imag: imag[i], Ms: sensitivity[i] };
 }
 
+/** Up to the frequency beyond which the loop only spirals into 0, too small to see. */
+function visible({ real, imag }) {
+  let last = real.length;
+  while (last > 1 && Math.hypot(real[last - 1], imag[last - 1]) < 0.03) last -= 1;
+  return { real: real.slice(0, last), imag: imag.slice(0, last) };
+}
+
 export function robustness(report) {
   const order = (i) => (i === report.recommended ? -1 : i);
   const loci = report.curves.loci
@@ -24,7 +31,7 @@ export function robustness(report) {
   return section("robustness", "Robustness", "The loop transfer function from low frequencies (far out) to high (towards 0). A loop that keeps outside the shaded circle around −1 keeps the target.",
     legend([...loci, { name: "closest to −1", mark: "dot" }, target && { name: `target, Ms = ${exact(target)}`, mark: "forbidden" }].filter(Boolean)),
     h("p", { class: "note" }, said),
-    responsive((width) => nyquist(width, loci, target, said)),
+    responsive((width) => nyquist(width, loci.map((one) => ({ ...one, ...visible(one) })), target, said)),
     loci.map(({ name, w, real, imag, sensitivity }) =>
       dataTable(`Loop transfer function: ${name}`, [["Frequency, rad/s", w], ["Real part", real], ["Imaginary part", imag], ["Sensitivity", sensitivity]], name)));
 }
