@@ -112,12 +112,17 @@ def _require_known(at: Point, colour: Colour, known: Uncertainty) -> None:
 
 def _estimates(record: LoopRecord, at: Point, known: Uncertainty) -> tuple[dict[str, Estimate], dict[str, Estimate]]:
     c = known.log_covariance
-    gain_unit = f"({record.speed_unit or 'speed'})/({record.command_unit or 'command'})"
+    y, u = _bare(record.speed_unit or "speed"), _bare(record.command_unit or "command")
     parameters = {
-        "K": log_estimate(at.K, math.sqrt(max(c[0, 0], 0.0)), gain_unit),
+        "K": log_estimate(at.K, math.sqrt(max(c[0, 0], 0.0)), f"{y}/{u}"),
         "T": log_estimate(at.T, math.sqrt(max(c[1, 1], 0.0)), "s"),
     }
-    return parameters, {"K/T": log_estimate(at.K / at.T, known.std_log_ratio(), f"{gain_unit}/s")}
+    return parameters, {"K/T": log_estimate(at.K / at.T, known.std_log_ratio(), f"{y}/({u}·s)")}
+
+
+def _bare(unit: str) -> str:
+    """A unit that may stand beside a solidus: compound ones go into brackets."""
+    return f"({unit})" if any(sign in unit for sign in "/ ·*") else unit
 
 
 def _on_record(record: LoopRecord, layout: Layout, at: Point) -> Floats:
