@@ -13,6 +13,8 @@ import numpy as np
 import pytest
 from scipy.integrate import solve_ivp
 
+from service.api.samples import ABOUT
+
 ROOT = Path(__file__).resolve().parents[1]
 FOLDER = ROOT / "sample_logs"
 NAMES = ["nothing_to_learn.csv", "oscillating.csv", "setpoint_change.csv", "step_test.csv"]
@@ -40,6 +42,7 @@ def test_the_script_makes_the_committed_files(make: ModuleType, tmp_path: Path) 
 def test_the_packaged_sample_is_the_same_file() -> None:
     packaged = sorted((ROOT / "service" / "page" / "samples").glob("*.csv"))
     assert [path.name for path in packaged] == ["step_test.csv"]
+    assert set(ABOUT) == {"step_test.csv"}
     assert packaged[0].read_bytes() == (FOLDER / "step_test.csv").read_bytes()
 
 

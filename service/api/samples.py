@@ -17,12 +17,22 @@ router = APIRouter(prefix="/v1/samples", tags=["samples"])
 
 FOLDER = Path(__file__).resolve().parents[1] / "page" / "samples"
 
+# {name: (title, description)}
+ABOUT = {
+    "step_test.csv": (
+        "Step test of an almond pan",
+        "Manual operation: the drum's motor answers nine moves of the command, up and down; rpm and %.",
+    ),
+}
+
 
 @dataclass(frozen=True, slots=True)
 class Sample:
-    """One sample log: what it is called, how large it is, where it is."""
+    """One sample log: what it is called, what is in it, how large it is, where it is."""
 
     name: str
+    title: str
+    description: str
     size_bytes: int
     href: str
 
@@ -34,7 +44,7 @@ def packaged() -> dict[str, Path]:
 
 @router.get("", summary="The sample logs", responses=documented(500))
 async def list_samples() -> list[Sample]:
-    return [Sample(name, path.stat().st_size, f"/v1/samples/{name}") for name, path in packaged().items()]
+    return [Sample(name, *ABOUT[name], path.stat().st_size, f"/v1/samples/{name}") for name, path in packaged().items()]
 
 
 @router.get(

@@ -19,8 +19,8 @@ export function start({ samples, notice, onLog, onSample }) {
     h("p", { class: "drop-or" }, input, h("label", { class: "button", for: "file" }, "Choose a file"),
       samples.map((sample) => h("button", {
         class: "button quiet", type: "button", title: sample.description, "data-testid": "sample", onclick: () => onSample(sample.name, options(form)),
-      }, samples.length === 1 ? "Use the sample log" : sample.title ?? sample.name))),
-    samples.length === 1 && h("p", { class: "hint" }, [samples[0].title ?? samples[0].name, samples[0].description].filter(Boolean).join(": ")));
+      }, samples.length === 1 ? "Use the sample log" : sample.title))),
+    samples.length === 1 && h("p", { class: "hint" }, `${samples[0].title}. ${samples[0].description}`));
   const lit = (on) => (event) => { event.preventDefault(); zone.classList.toggle("lit", on); };
   zone.addEventListener("dragenter", lit(true));
   zone.addEventListener("dragover", lit(true));
