@@ -37,6 +37,9 @@ class Settings(BaseSettings):
     max_upload_bytes: int = Field(
         default=200 * 2**20, gt=0, description="Largest log accepted, in bytes, both as sent and unpacked."
     )
+    upload_time_limit_s: float = Field(
+        default=300.0, gt=0, allow_inf_nan=False, description="Longest time one upload may take, in seconds."
+    )
     workers: int = Field(
         default_factory=one_per_core, ge=1, le=64, description="Processes that analyse logs, one log each."
     )

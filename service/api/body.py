@@ -5,6 +5,7 @@ request.stream() -> limited (as sent) -> gunzip -> limited (unpacked) -> raw byt
 
 from __future__ import annotations
 
+import asyncio
 import io
 from collections.abc import AsyncGenerator, AsyncIterator
 
@@ -18,12 +19,28 @@ from service.errors import ProblemError
 FIELD = "file"
 
 
-async def read_log(request: Request, limit: int) -> bytes:
+async def read_log(request: Request, limit: int, time_limit_s: float) -> bytes:
     """The log's bytes, decoded.
 
-    Raises ProblemError: too-large, unsupported-encoding, broken-gzip, broken-multipart, unexpected-field,
-    no-file-field.
+    limit         bytes, as sent and unpacked
+    time_limit_s  for all of it: a stalled upload must not hold its place for ever
+
+    Raises ProblemError: too-large, too-slow, unsupported-encoding, broken-gzip, broken-multipart,
+    unexpected-field, no-file-field.
     """
+    try:
+        async with asyncio.timeout(time_limit_s):
+            return await _read(request, limit)
+    except TimeoutError:
+        raise ProblemError(
+            "too-slow",
+            f"The log was not complete after {time_limit_s:g} s. Send it gzipped, or let the operator raise "
+            "GAINWRIGHT_UPLOAD_TIME_LIMIT_S.",
+            {"time_limit_s": time_limit_s},
+        ) from None
+
+
+async def _read(request: Request, limit: int) -> bytes:
     announced = request.headers.get("content-length", "")
     if announced.isdecimal() and int(announced) > limit:
         raise too_large(limit)

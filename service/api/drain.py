@@ -10,7 +10,8 @@ import asyncio
 
 from starlette.types import ASGIApp, Message, Receive, Scope, Send
 
-PATIENCE_S = 30.0
+PATIENCE_S = 30.0  # for all of it
+PAUSE_S = 2.0  # between two pieces: a stalled client gets its answer soon
 
 
 class Drain:
@@ -41,7 +42,7 @@ class Drain:
                 try:
                     async with asyncio.timeout(PATIENCE_S):
                         while pending:
-                            await receiving()
+                            await asyncio.wait_for(receiving(), PAUSE_S)
                 except TimeoutError:
                     pass  # answered all the same; the connection closes
             await send(message)

@@ -31,6 +31,7 @@ STATUS = {
     "not-found": 404,
     "no-such-sample": 404,
     "method-not-allowed": 405,
+    "too-slow": 408,
     "too-large": 413,
     "unsupported-encoding": 415,
     "broken-gzip": 400,

@@ -38,7 +38,7 @@ UPLOAD: dict[str, Any] = {
     "/reports",
     summary="Analyse a log",
     response_model=ident.Report,
-    responses=documented(400, 413, 415, 422, 500, 503),
+    responses=documented(400, 408, 413, 415, 422, 500, 503),
     openapi_extra=UPLOAD,
 )
 async def post_report(request: Request, options: Annotated[Options, Query()]) -> Response:
@@ -48,7 +48,7 @@ async def post_report(request: Request, options: Annotated[Options, Query()]) ->
     """
     service = state(request)
     with service.workers.admit():
-        source = await read_log(request, service.settings.max_upload_bytes)
+        source = await read_log(request, service.settings.max_upload_bytes, service.settings.upload_time_limit_s)
         answer = await service.workers.run(source, options)
     service.metrics.analysed(answer)
     if isinstance(answer, Problem):

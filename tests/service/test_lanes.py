@@ -62,7 +62,8 @@ def test_a_worker_that_dies_idle_costs_nothing() -> None:
     async def use(workers: Workers) -> None:
         before = workers.pids
         os.kill(before[0], signal.SIGKILL)
-        await asyncio.sleep(0.5)  # until the pool has noticed
+        assert gone(before[0])
+        await asyncio.sleep(1.0)  # until the pool has noticed
         assert await workers.run(b"a", OPTIONS) == b"A"
         assert workers.pids != before
 
@@ -80,7 +81,7 @@ def test_the_time_limit_ends_the_process() -> None:
         assert hung not in workers.pids
         assert gone(hung)
 
-    within(1, use, limit_s=1.0)
+    within(1, use, limit_s=3.0)
 
 
 def test_a_cancelled_log_frees_its_lane() -> None:

@@ -66,6 +66,22 @@ def test_a_client_that_asks_first_need_not_send(served: Served) -> None:
     connection.close()
 
 
+def test_an_upload_that_stalls_gives_its_place_up() -> None:
+    served = start_served(workers="1", upload_time_limit_s="0.5")
+    try:
+        connection = http.client.HTTPConnection(served.host, served.port, timeout=30)
+        connection.putrequest("POST", "/v1/reports")
+        connection.putheader("Content-Length", "1000")
+        connection.endheaders(b"time,command,speed")
+        response = connection.getresponse()
+        headers = {k.lower(): v for k, v in response.getheaders()}
+        expect.problem(response.status, headers, response.read(), expected=408, code="too-slow")
+        connection.close()
+    finally:
+        served.process.terminate()
+        served.process.communicate(timeout=30)
+
+
 def test_a_body_sent_to_nowhere_still_gets_its_answer(served: Served) -> None:
     connection = http.client.HTTPConnection(served.host, served.port, timeout=30)
     connection.request("POST", "/v1/nowhere", MEGABYTE * 20)
