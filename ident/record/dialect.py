@@ -6,6 +6,7 @@ import csv
 import re
 from collections import Counter
 from dataclasses import dataclass
+from itertools import pairwise
 
 from ident.errors import ReadError
 
@@ -13,7 +14,7 @@ DELIMITERS = (";", "\t", ",")
 MOST_COLUMNS = 1000
 _SAMPLE = 65536
 _LONG_SAMPLE = 2**20
-_SAMPLE_LINES = 400
+_SAMPLE_LINES = 120
 
 _NUMBER = re.compile(r"[+-]?(?=[.,]?\d)[\d.,]*(?:[eE][+-]?\d+)?")
 _STAMP = re.compile(r"\d[\d\-/.:, T]*(?: ?[AaPp]\.?[Mm]\.?| ?Z| ?[+-]\d\d:?\d\d)?")
@@ -29,6 +30,7 @@ class Dialect:
     decimal     "." or ","
     width       fields per data row
     header      texts of the rows directly above the data that may hold column names, nearest last
+    first       cells of the first data row
     offset      of the first data row in the bytes
     line        of the first data row in the file, counted from 1
     """
@@ -37,6 +39,7 @@ class Dialect:
     decimal: str
     width: int
     header: tuple[tuple[str, ...], ...]
+    first: tuple[str, ...]
     offset: int
     line: int
 
@@ -67,7 +70,7 @@ def sniff(text: bytes) -> Dialect:
         header.insert(0, (*cells, *[""] * width)[:width])
     offset = sum(len(line) + len(newline) for line in lines[:first])
     decimal = _decimal(rows[first:], width) if delimiter != "," else "."
-    return Dialect(delimiter, decimal, width, tuple(header[-4:]), offset, first + 1)
+    return Dialect(delimiter, decimal, width, tuple(header[-4:]), tuple(rows[first]), offset, first + 1)
 
 
 def _sample(text: bytes) -> tuple[bytes, list[bytes]]:
@@ -100,7 +103,8 @@ def _candidate(lines: list[bytes], delimiter: str) -> tuple[float, str, list[lis
     data = [i for i, row in enumerate(rows) if shares[i] >= 0.5 and len(row) == width]
     score = sum(shares[i] for i in data)
     # A preamble may hold one row that looks like data ("Period, from, to"); data come in pairs.
-    first = next((i for i in data if i + 1 in data), data[0])
+    pairs = (i for i, after in pairwise(data) if after == i + 1)
+    first = next(pairs, data[0])
     return score, delimiter, rows, width, first
 
 

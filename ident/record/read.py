@@ -10,16 +10,18 @@ import pandas as pd
 
 from ident.errors import ReadError
 from ident.findings import Finding
-from ident.record import axis
+from ident.record import axis, quality
 from ident.record.columns import Columns, Mapped, map_columns
-from ident.record.dialect import sniff
+from ident.record.dialect import Dialect, sniff
 from ident.record.encoding import LogSource, load
 from ident.record.numbers import Numbers, to_numbers
-from ident.record.quote import listed, printable, quoted
-from ident.record.record import LoopRecord, Source
+from ident.record.quote import printable, quoted
+from ident.record.record import LoopRecord, Source, exclusions
 from ident.record.table import Table, read_table
-from ident.record.times import DATE_ORDERS, Stamps, from_numbers, from_text
+from ident.record.times import DATE_ORDERS, Stamps, from_numbers, from_text, is_iso
 from ident.record.vocabulary import TIME_UNITS, UTC_NAMES
+
+BAD_QUALITY = "bad quality"
 
 
 def read_csv(
@@ -57,8 +59,9 @@ def read_csv(
     body = load(source)
     dialect = sniff(body.text)
     mapped = map_columns(dialect.header, dialect.width, columns)
-    table = read_table(body.text, dialect)
-    findings = [*body.findings, *table.findings, *_quality(table, mapped)]
+    table = read_table(body.text, dialect, time=_iso_column(body.text, mapped, dialect))
+    bad, judged = quality.judge(table, mapped)
+    findings = [*body.findings, *table.findings, *judged]
     rows = len(table.line)
 
     stamps = _stamps(table, mapped, dialect.decimal, place, date_order)
@@ -86,6 +89,7 @@ def read_csv(
         speed_unit=mapped.units["speed"] or mapped.units.get("setpoint", ""),
         command_unit=mapped.units["command"],
         start=stamps.start or begin,
+        excluded=exclusions(bad[kept], BAD_QUALITY),
         source=Source(body.sha256, rows, mapped.headers, tuple(findings)),
     )
 
@@ -118,6 +122,15 @@ def _start(start: datetime | str | None, zone: ZoneInfo | None) -> datetime | No
     return begin.astimezone(UTC)
 
 
+def _iso_column(text: bytes, mapped: Mapped, dialect: Dialect) -> int | None:
+    """The time column if it may be parsed as ISO 8601 on the way; pandas also takes words ("now") for stamps."""
+    time = mapped.index["time"]
+    plain = mapped.date is None and is_iso(dialect.first[time])
+    # One letter is found much faster than a word, and clean rows have none.
+    worded = text.find(b"o", dialect.offset) >= 0 and (b"now" in text or b"today" in text)
+    return time if plain and not worded else None
+
+
 def _stamps(table: Table, mapped: Mapped, decimal: str, zone: ZoneInfo | None, date_order: str | None) -> Stamps:
     name = mapped.headers["time"]
     cells = table.cells[mapped.index["time"]]
@@ -133,7 +146,7 @@ def _stamps(table: Table, mapped: Mapped, decimal: str, zone: ZoneInfo | None, d
         )
     if mapped.date is not None:
         cells = table.cells[mapped.date].astype("str").str.strip() + " " + cells.astype("str").str.strip()
-    if cells.dtype.kind in "iuf" or _mostly_numbers(cells):
+    if cells.dtype.kind in "iuf" or (cells.dtype.kind != "M" and _mostly_numbers(cells)):
         values = to_numbers(cells, name=name, decimal=decimal, line=table.line)
         lost = np.isnan(values.values)
         if lost.any():
@@ -208,25 +221,3 @@ def _unit_assumed(stamps: Stamps, mapped: Mapped) -> list[Finding]:
         'If they are milliseconds, name the column "time [ms]".'
     )
     return [Finding("time-unit-assumed", "warning", message, {"unit": "s"})]
-
-
-def _quality(table: Table, mapped: Mapped) -> list[Finding]:
-    found = []
-    for i, name in mapped.quality.items():
-        counts = table.cells[i].value_counts(dropna=False)
-        other = int(counts.sum() - counts.iloc[0])
-        shown = listed([str(v) for v in counts.index[:4]])
-        found.append(
-            Finding(
-                "status-ignored",
-                "warning" if other else "info",
-                f"Column {quoted(name)} (status or mode) was not used"
-                + (
-                    f"; {other} rows differ from its commonest entry: {shown}. Check that they are good."
-                    if other
-                    else "."
-                ),
-                {"column": name, "rows_differing": other},
-            )
-        )
-    return found

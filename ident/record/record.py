@@ -88,7 +88,7 @@ class LoopRecord:
         single = found[:, 1] - found[:, 0] < 2
         lone = np.zeros(self.rows, dtype=np.bool_)
         lone[found[single, 0]] = True
-        excluded = (*self.excluded, *_exclusions(missing, MISSING), *_exclusions(lone, LONE))
+        excluded = (*self.excluded, *exclusions(missing, MISSING), *exclusions(lone, LONE))
         object.__setattr__(self, "excluded", excluded)
         object.__setattr__(
             self,
@@ -166,5 +166,6 @@ def _check(columns: dict[str, Floats]) -> None:
         )
 
 
-def _exclusions(flags: Flags, reason: str) -> list[Exclusion]:
-    return [Exclusion(a, b, reason) for a, b in spans(flags).tolist()]
+def exclusions(flags: Flags, reason: str) -> tuple[Exclusion, ...]:
+    """The flagged rows as spans with one reason."""
+    return tuple(Exclusion(a, b, reason) for a, b in spans(flags).tolist())

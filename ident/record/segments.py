@@ -62,9 +62,10 @@ def uniform_step(time: Floats) -> float | None:
     n = len(time)
     if n < 2:
         return None
-    # A least-squares line, because the end stamps are rounded like all others.
+    # A least-squares line, because the end stamps are rounded like all others. A plain sum and no dot product,
+    # whose last digit would depend on the number of BLAS threads.
     k = np.arange(n) - (n - 1) / 2
-    step = float(k @ time / (k @ k))
+    step = float(np.sum(k * time)) / (n * (n * n - 1) / 12)
     off_grid = time - step * k
     spread = float(off_grid.max() - off_grid.min()) / 2
     return float(f"{step:.{STEP_DIGITS}g}") if spread <= UNIFORM_TOLERANCE * step else None

@@ -22,7 +22,7 @@ LEAST_ROWS = 5
 class Table:
     """Cells by column position.
 
-    cells     one column per field; numbers where a whole column is numeric, else text; NaN where blank
+    cells     one column per field: stamps, numbers where a whole column is numeric, else text; NaN where blank
     line      (n,) file line of each row, counted from 1; a quoted line break counts as none
     """
 
@@ -31,32 +31,21 @@ class Table:
     findings: tuple[Finding, ...]
 
 
-def read_table(text: bytes, dialect: Dialect) -> Table:
+def read_table(text: bytes, dialect: Dialect, *, time: int | None = None) -> Table:
     """Parse the data rows.
+
+    time    position of a column to read as ISO 8601 stamps where all its cells are such, else left as text
 
     Raises ReadError: ragged-row, unclosed-quote, unreadable-table, too-few-rows.
     """
     body = text[dialect.offset :]
     try:
-        with warnings.catch_warnings():
-            # A delimiter at the end of each data row is no flaw.
-            warnings.simplefilter("ignore", pd.errors.ParserWarning)
-            cells = pd.read_csv(
-                io.BytesIO(body),
-                sep=dialect.delimiter,
-                decimal=dialect.decimal,
-                header=None,
-                names=range(dialect.width),
-                index_col=False,
-                # Words are counted, not swallowed; blank lines are kept so that rows know their line.
-                keep_default_na=False,
-                na_values=[""],
-                skip_blank_lines=False,
-                skipinitialspace=True,
-                low_memory=False,
-            )
+        cells = _parsed(body, dialect, time)
     except pd.errors.ParserError as cause:
         raise _explained(str(cause), dialect) from cause
+    except pd.errors.ParserWarning as cause:
+        # pandas compares each row with the one before; for the first it only warns.
+        raise _ragged(dialect.line, "more", dialect.width) from cause
     line = np.arange(len(cells), dtype=np.int64) + dialect.line
     blank = cells.isna().all(axis=1).to_numpy()
     cells, line = cells[~blank], line[~blank]
@@ -94,16 +83,32 @@ def read_table(text: bytes, dialect: Dialect) -> Table:
     return Table(cells, line, tuple(findings))
 
 
+def _parsed(body: bytes, dialect: Dialect, time: int | None) -> pd.DataFrame:
+    with warnings.catch_warnings():
+        warnings.simplefilter("error", pd.errors.ParserWarning)
+        return pd.read_csv(
+            io.BytesIO(body),
+            sep=dialect.delimiter,
+            decimal=dialect.decimal,
+            header=None,
+            names=range(dialect.width),
+            index_col=False,
+            # Twice as fast as parsing the text afterwards.
+            parse_dates=[] if time is None else [time],
+            date_format="ISO8601",
+            # Words are counted, not swallowed; blank lines are kept so that rows know their line.
+            keep_default_na=False,
+            na_values=[""],
+            skip_blank_lines=False,
+            skipinitialspace=True,
+            low_memory=False,
+        )
+
+
 def _explained(message: str, dialect: Dialect) -> ReadError:
     ragged = re.search(r"Expected (\d+) fields in line (\d+), saw (\d+)", message)
     if ragged:
-        line = int(ragged[2]) + dialect.line - 1
-        return ReadError(
-            "ragged-row",
-            f"Line {line} has {ragged[3]} fields where {ragged[1]} are expected: is a decimal "
-            "comma also the delimiter? Export with semicolons or decimal points.",
-            {"line": line, "fields": int(ragged[3]), "expected": int(ragged[1])},
-        )
+        return _ragged(int(ragged[2]) + dialect.line - 1, ragged[3], int(ragged[1]))
     quote = re.search(r"EOF inside string starting at row (\d+)", message)
     if quote:
         line = int(quote[1]) + dialect.line
@@ -113,3 +118,12 @@ def _explained(message: str, dialect: Dialect) -> ReadError:
             {"line": line},
         )
     return ReadError("unreadable-table", "The log cannot be read as a table: export it again as CSV.")
+
+
+def _ragged(line: int, fields: str, expected: int) -> ReadError:
+    return ReadError(
+        "ragged-row",
+        f"Line {line} has {fields} fields where {expected} are expected: is a decimal comma also the delimiter? "
+        "Export with semicolons or decimal points.",
+        {"line": line, "fields": fields, "expected": expected},
+    )

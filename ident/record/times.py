@@ -25,8 +25,9 @@ DATE_ORDERS = ("dmy", "mdy", "ymd")
 _EPOCH = ((1.0, 6), (1e-3, 6), (1e-6, 6), (1e-9, 9))
 _FIRST, _LAST = 6.3e8, 4.11e9
 _ISO = r"\d{4}[-/]\d{1,2}[-/]\d{1,2}(?:[T ]+\d{1,2}:\d{2}(?::\d{2}(?:\.\d+)?)?)?(?: ?Z| ?[+-]\d{2}:?\d{2})?"
-_OFFSET = r"(?:Z|[+-]\d{2}:?\d{2})$"
+_OFFSET = r":\d{2}(?:\.\d+)? ?(?:Z|[+-]\d{2}:?\d{2})$"
 _DAY_FIRST = r"^(\d{1,2})[./-](\d{1,2})[./-](\d{4})"
+_DMY, _MDY = r"\3-\2-\1", r"\3-\1-\2"
 _CLOCK = r"^\d{1,2}:\d{2}(?::\d{2}(?:[.,]\d+)?)?"
 _AM_PM = r"(?i)[AP]\.?M\.?$"
 
@@ -85,6 +86,11 @@ def _shifted(values: Floats | Lines) -> Floats:
     return shifted
 
 
+def is_iso(cell: str) -> bool:
+    """Whether a cell is an ISO 8601 stamp."""
+    return bool(re.fullmatch(_ISO, cell.strip()))
+
+
 def from_text(
     cells: Texts,
     line: Lines,
@@ -95,11 +101,24 @@ def from_text(
 ) -> Stamps:
     """Stamps written as dates: ISO 8601, dd.mm.yyyy, d/m/yyyy or m/d/yyyy, or a time of day alone.
 
-    cells    text, none blank
+    cells    text, or stamps where all were found to be ISO 8601; none blank
     line     (n,) file lines
 
-    Raises ReadError: unreadable-time, ambiguous-dates, ambiguous-times, zone-needed-once.
+    Raises ReadError: unreadable-time, ambiguous-dates, ambiguous-times.
     """
+    stamps, kind = cells, "local"
+    if cells.dtype.kind != "M":
+        text, kind = _as_iso(cells, line, name, date_order)
+        stamps = _one_by_one(text, cells, line, name)
+    if stamps.dt.tz is not None:
+        return _elapsed(stamps.dt.tz_convert("UTC").dt.tz_localize(None), "absolute", line, name)
+    if kind == "clock" or zone is None:
+        return _elapsed(stamps, kind, line, name)
+    return _elapsed(_in_zone(stamps, zone, line, name), "absolute", line, name)
+
+
+def _as_iso(cells: Texts, line: Lines, name: str, date_order: str | None) -> tuple[Texts, str]:
+    """Stamps of any kind read here, written as ISO 8601; and whether they are a time of day alone."""
     text = cells.astype("str").str.strip()
     first = str(text.iloc[0])
     if re.search(_AM_PM, first):
@@ -107,42 +126,32 @@ def from_text(
         first = str(text.iloc[0])
     if "," in first:
         text = text.str.replace(",", ".", regex=False)
-    day_first = re.match(_DAY_FIRST, first)
-    clock_only = re.match(_CLOCK + "$", first) is not None
-    if clock_only:
-        text = "1970-01-01T" + text
-    elif day_first:
+    if re.match(_CLOCK + "$", first):
+        return "1970-01-01T" + text, "clock"
+    if re.match(_DAY_FIRST, first):
         text = _ordered(text, first, date_order, line, name)
-    elif date_order in ("dmy", "mdy") or not re.fullmatch(_ISO, str(text.iloc[0])):
+    elif not re.fullmatch(_ISO, str(text.iloc[0])):
         raise _unreadable(first, int(line[0]), name)
-    offset = text.str.endswith("Z").to_numpy(dtype=bool)
-    if not offset.all():
-        offset = text.str.slice(10).str.contains(_OFFSET, regex=True).to_numpy(dtype=bool)
-        if offset.any() and not offset.all():
-            row = int(np.argmax(offset != offset[0]))
-            raise ReadError(
-                "unreadable-time",
-                f"Line {line[row]}, column {quoted(name)}: {quoted(str(cells.iloc[row]))} and the "
-                "first row differ in having an offset; export all stamps with one.",
-                {"line": int(line[row])},
-            )
-    stamps = _parsed(text, cells, line, name, utc=bool(offset.all()))
-    if offset.all():
-        return _elapsed(stamps.dt.tz_convert(None), "absolute", line, name)
-    if clock_only:
-        return _elapsed(stamps, "clock", line, name)
-    if zone is None:
-        return _elapsed(stamps, "local", line, name)
-    return _elapsed(_in_zone(stamps, zone, line, name), "absolute", line, name)
+    return text, "local"
 
 
-def _parsed(text: Texts, cells: Texts, line: Lines, name: str, *, utc: bool) -> Texts:
-    stamps = pd.to_datetime(text, format="ISO8601", utc=utc, errors="coerce", cache=False)
-    lost = stamps.isna().to_numpy()
+def _one_by_one(text: Texts, cells: Texts, line: Lines, name: str) -> Texts:
+    """Parse stamps that need a closer look, and name the first that cannot be read."""
+    offset = text.str.contains(_OFFSET, regex=True).to_numpy(dtype=bool)
+    if offset.any() and not offset.all():
+        row = int(np.argmax(offset != offset[0]))
+        raise ReadError(
+            "unreadable-time",
+            f"Line {line[row]}, column {quoted(name)}: {quoted(str(cells.iloc[row]))} and the first row differ in "
+            "having an offset; export all stamps with one.",
+            {"line": int(line[row])},
+        )
+    stamps = pd.to_datetime(text, format="ISO8601", utc=True, errors="coerce", cache=False)
+    lost = stamps.isna().to_numpy() | ~text.str.fullmatch(_ISO).to_numpy(dtype=bool)
     if lost.any():
         row = int(np.argmax(lost))
         raise _unreadable(str(cells.iloc[row]), int(line[row]), name, int(lost.sum()))
-    return stamps
+    return stamps if offset.all() else stamps.dt.tz_localize(None)
 
 
 def _elapsed(stamps: Texts, kind: str, line: Lines, name: str) -> Stamps:
@@ -185,14 +194,14 @@ def _in_zone(stamps: Texts, zone: ZoneInfo, line: Lines, name: str) -> Texts:
 
 def _ordered(text: Texts, first: str, date_order: str | None, line: Lines, name: str) -> Texts:
     """Dates with the year last as ISO 8601; the order of day and month is asked for where no row tells."""
-    dmy, mdy = (text.str.replace(_DAY_FIRST, order, regex=True) for order in (r"\3-\2-\1", r"\3-\1-\2"))
-    if date_order == "dmy" or (date_order is None and re.match(r"\d+\.", first)):
-        return dmy
-    if date_order == "mdy":
-        return mdy
     if date_order == "ymd":
         raise _unreadable(first, int(line[0]), name)
-    as_dmy, as_mdy = (pd.to_datetime(t, format="ISO8601", errors="coerce") for t in (dmy, mdy))
+    if date_order == "dmy" or (date_order is None and re.match(r"\d+\.", first)):
+        return text.str.replace(_DAY_FIRST, _DMY, regex=True)
+    if date_order == "mdy":
+        return text.str.replace(_DAY_FIRST, _MDY, regex=True)
+    dmy, mdy = (text.str.replace(_DAY_FIRST, order, regex=True) for order in (_DMY, _MDY))
+    as_dmy, as_mdy = (pd.to_datetime(t, format="ISO8601", errors="coerce", utc=True) for t in (dmy, mdy))
     if as_dmy.isna().any():
         # Where neither order fits, the parser names the first bad line.
         return mdy

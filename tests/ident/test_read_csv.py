@@ -99,12 +99,36 @@ def test_04_state_words_become_missing_and_are_counted(shared: Path) -> None:
     assert (missing.evidence["count"], missing.evidence["blank"], missing.evidence["word: Bad"]) == (9, 1, 1)
 
 
-def test_06_status_column_is_not_used_and_says_so(shared: Path) -> None:
-    r = read_csv(odd(shared, "06"))
-    is_the_step(r)
+def test_06_opc_ua_severity_leaves_rows_out_by_quality_not_by_value(shared: Path) -> None:
+    # OPC UA: the top two bits of the StatusCode, 0 good, 1 uncertain, 2 bad (../shared/odd_logs/README.md).
+    path = odd(shared, "06")
+    status = [int(row.rsplit(",", 1)[1]) for row in path.read_text().splitlines()[1:]]
+    r = read_csv(path)
+    np.testing.assert_array_equal(r.speed, read_csv(odd(shared, "10")).speed)
+    out = {k for e in r.excluded if e.reason == "bad quality" for k in range(e.start, e.stop)}
+    assert out == {k for k, s in enumerate(status) if s >= 2**30 or s >> 16 == 0x96}
     assert r.source is not None
-    (status,) = r.source.findings
-    assert (status.code, status.severity, status.evidence["rows_differing"]) == ("status-ignored", "warning", 5)
+    (found,) = r.source.findings
+    assert (found.code, found.evidence["count"], found.evidence["first_line"]) == ("bad-quality", 5, 9)
+
+
+@pytest.mark.parametrize(
+    ("column", "left_out"),
+    [
+        (["192"] * 12, []),
+        (["192", "192", "0", "64", "193", "216", *["192"] * 6], [2, 3, 5]),
+        (["Good"] * 6 + ["Bad [comm]", "Uncertain"] + ["good"] * 4, [6, 7]),
+        (["0"] * 12, None),
+        (["AUTO"] * 6 + ["MAN"] * 6, None),
+    ],
+)
+def test_quality_columns(column: list[str], left_out: list[int] | None) -> None:
+    rows = [f"{k / 10:.1f},1,{k},{q}" for k, q in enumerate(column)]
+    r = read_csv(table(*rows, head="time,command,speed,Quality"))
+    out = [k for e in r.excluded if e.reason == "bad quality" for k in range(e.start, e.stop)]
+    assert out == (left_out or [])
+    assert ("status-ignored" in codes(r)) == (left_out is None)
+    assert ("bad-quality" in codes(r)) == bool(left_out)
 
 
 def test_07_local_hour_that_comes_twice(shared: Path) -> None:
