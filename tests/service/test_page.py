@@ -331,3 +331,18 @@ def test_four_significant_digits(visit: Callable[..., Visit]) -> None:
         [value for value, _ in SIGNIFICANT],
     )
     assert shown == [expected for _, expected in SIGNIFICANT]
+
+
+def test_a_question_the_log_leaves_open_can_be_answered_on_the_page(visit: Callable[..., Visit]) -> None:
+    lines = (SAMPLES / "step_test.csv").read_text().splitlines()
+    stamped = [re.sub(r"^2026-11-17T(.{12})\+01:00", r"03/02/2026 \1", line) for line in lines]
+    one = visit()
+    with one.page.expect_response(lambda r: "/v1/reports" in r.url, timeout=REPORT_MS) as answer:
+        one.bring("open.csv", "\n".join(stamped).encode())
+    assert answer.value.json()["code"] == "ambiguous-dates"
+    one.page.get_by_text("Change the options").click()
+    again = one.page.get_by_test_id("again")
+    again.get_by_label("Order of the dates").select_option("dmy")
+    again.get_by_label("Time zone").fill("Europe/Vienna")
+    again.get_by_role("button", name="Analyse again").click()
+    expect(one.page.get_by_test_id("part-log")).to_contain_text("2026-02-03 05:40:00 UTC", timeout=REPORT_MS)

@@ -2,12 +2,16 @@
 
 import { h } from "/page/dom.js";
 
+const DATE_ORDERS = [["", "as the stamps show"], ["dmy", "day, month, year"], ["mdy", "month, day, year"], ["ymd", "year, month, day"]];
 const ROLES = [["time", "Time"], ["setpoint", "Setpoint"], ["command", "Command"], ["speed", "Measured speed"]];
 
-function field(name, label, hint, input) {
+function field(name, label, hint, input, choices = null) {
+  const attributes = { id: `option-${name}`, name, ...input, ...(hint && { "aria-describedby": `hint-${name}` }) };
   return h("div", { class: "field" },
     h("label", { for: `option-${name}` }, label),
-    h("input", { id: `option-${name}`, name, autocomplete: "off", spellcheck: "false", ...input, ...(hint && { "aria-describedby": `hint-${name}` }) }),
+    choices
+      ? h("select", attributes, choices.map(([value, text]) => h("option", { value, selected: value === (input.value ?? "") }, text)))
+      : h("input", { autocomplete: "off", spellcheck: "false", ...attributes }),
     hint && h("p", { class: "hint", id: `hint-${name}` }, hint));
 }
 
@@ -20,8 +24,9 @@ export function optionFields(given = {}) {
       { type: "number", min: "0", step: "any", placeholder: "as the log", value: given.period ?? "" }),
     field("zone", "Time zone of the stamps", "Only for stamps without an offset, for example Europe/Vienna.",
       { type: "text", placeholder: "from the log", value: given.zone ?? "" }),
+    field("date_order", "Order of the dates", "Where the stamps leave it open, as 3/2/2026 does.", { value: given.date_order }, DATE_ORDERS),
     h("fieldset", {},
-      h("legend", {}, "Column names, where the header does not say"),
+      h("legend", {}, "Column names, where the header does not say; without a header, positions: 0, 1, 2"),
       h("div", { class: "roles" }, ROLES.map(([name, label]) =>
         field(name, label, null, { type: "text", placeholder: "found by itself", value: given[name] ?? "" })))));
 }

@@ -27,7 +27,7 @@ export function start({ samples, notice, onLog, onSample }) {
   zone.addEventListener("dragleave", lit(false));
   zone.addEventListener("drop", (event) => { lit(false)(event); take(event.dataTransfer.files[0]); });
   form.append(zone, h("details", { class: "fold", "data-testid": "options" },
-    h("summary", {}, "Options: target, controller period, zone, column names"), optionFields()));
+    h("summary", {}, "Options: target, controller period, zone, dates, column names"), optionFields()));
   return h("section", { class: "sheet start" },
     h("div", { class: "opening" },
       h("h1", {}, "From a speed loop’s log to settings you can defend"),
