@@ -4,7 +4,8 @@ The plant's response to what enters from outside is written down in closed form;
 linear recursion, y = y_open - P C y, run by scipy's compiled filter:
 
 - digital (period > 0): zero-order hold with fractional dead time and a controller in trapezoidal form,
-  I_k = I_(k-1) + Kp h/(2 Ti) (e_k + e_(k-1)); filter and derivative by Tustin's rule. Exact at the samples.
+  I_k = I_(k-1) + Kp h/(2 Ti) (e_k + e_(k-1)), filter and derivative by backward difference (Tustin's rings
+  where the filter is short). Exact at the samples.
 - analogue (period 0): y is continuous, so P C y with y taken as straight between close samples (first-order
   hold) and C by Tustin's rule is right to second order in the step.
 """
@@ -71,7 +72,7 @@ def setpoint_step(plant: Fopdt, settings: PidSettings, clock: Clock, *, compute_
         after = time - delayed.L
         open_speed = s.Kp * (s.b * _rise(delayed, after) + _ramp(delayed, after) / s.Ti)
     speed = _close(delayed, settings, clock, open_speed)
-    command = reference - _feedback(settings, clock.step, speed)
+    command = reference - _feedback(settings, clock, speed)
     return _between(delayed, clock, speed, command, None)
 
 
@@ -81,7 +82,7 @@ def load_step(plant: Fopdt, settings: PidSettings, clock: Clock, *, compute_dela
     # The load itself does not wait for the computer.
     open_speed = _rise(plant, clock.time - plant.L)
     speed = _close(delayed, settings, clock, open_speed)
-    command = -_feedback(settings, clock.step, speed)
+    command = -_feedback(settings, clock, speed)
     return _between(delayed, clock, speed, command, plant)
 
 
@@ -140,12 +141,20 @@ def _through_hold(plant: Fopdt, h: float, command: Floats) -> Floats:
     return speed
 
 
-def _controller(settings: PidSettings, h: float) -> tuple[Floats, Floats]:
-    """C F by Tustin's rule, in powers of z^-1; for PI this is the trapezoidal integral."""
+def _controller(settings: PidSettings, clock: Clock) -> tuple[Floats, Floats]:
+    """C F in powers of z^-1: trapezoidal integral; filter and derivative by backward difference or Tustin."""
+    h = clock.step
     Kp, Ti, Td, Tf = settings.Kp, settings.Ti, settings.Td, settings.Tf
+    if clock.digital or (Td == 0 and Tf == 0):
+        difference, total = np.array([1.0, -1.0]), np.array([1.0, 1.0]) * h / (2.0 * Ti)
+        slope = difference / h
+        filtered = np.array([1.0, 0.0, 0.0])
+        filtered[:2] += Tf * slope
+        filtered += Tf**2 / 2 * np.polymul(slope, slope)
+        lead = np.array([1.0, 0.0]) + Td * slope
+        num = Kp * (np.polymul(difference, lead) + np.append(total, 0.0))
+        return np.asarray(num, np.float64), np.asarray(np.polymul(difference, filtered), np.float64)
     minus, plus = np.array([2.0, -2.0]) / h, np.array([1.0, 1.0])
-    if Td == 0 and Tf == 0:
-        return Kp / Ti * (Ti * minus + plus), minus
     if Tf == 0:
         raise Refused(
             "derivative-without-filter", "A derivative without filter cannot be simulated: give Tf, say Td/10."
@@ -156,15 +165,15 @@ def _controller(settings: PidSettings, h: float) -> tuple[Floats, Floats]:
     return np.asarray(np.polymul(num, plus), np.float64), np.asarray(den, np.float64)
 
 
-def _feedback(settings: PidSettings, h: float, speed: Floats) -> Floats:
-    num, den = _controller(settings, h)
+def _feedback(settings: PidSettings, clock: Clock, speed: Floats) -> Floats:
+    num, den = _controller(settings, clock)
     return np.asarray(lfilter(num, den, speed), dtype=np.float64)
 
 
 def _close(plant: Fopdt, settings: PidSettings, clock: Clock, open_speed: Floats) -> Floats:
     """y = y_open - P C y."""
     delay, plant_num, plant_den = (zero_order if clock.digital else first_order)(plant, clock.step)
-    c_num, c_den = _controller(settings, clock.step)
+    c_num, c_den = _controller(settings, clock)
     num, den = np.polymul(plant_num, c_num), np.polymul(plant_den, c_den)
     if delay < FEW:
         closed = np.zeros(max(len(den), len(num) + delay))

@@ -17,7 +17,9 @@ POINTS = 400
 # rad of lag, counted from the low-frequency asymptote: a controller acts on the phase between these.
 EARLY, LATE = 0.05, 3.5
 FADED = 0.05  # of abs(P) where the lag is LATE: what lies beyond is far too small to come near -1
-UNBOUNDED_LAG = 1.6  # rad: a plant that never lags more than 90 degrees takes any gain
+# rad: a plant that never lags more than 90 degrees takes any gain of a PI, 180 degrees of a PID (the filter is
+# a share of Td and moves out of the way).
+UNBOUNDED_LAG = {"pi": 1.6, "pid": 3.2}
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -26,12 +28,14 @@ class Band:
 
     sign      of the plant's low-frequency gain
     w, plant  (n,) rad/s increasing, (n,) sign * P(jw)
+    residence average residence time -P'(0)/P(0) of the plant without the controller's delay, s; inf if integrating
     """
 
     source: HeldPlant
     sign: float
     w: Floats
     plant: Complex
+    residence: float
 
     def with_points(self, w: Floats) -> Band:
         """The same band with further frequencies in it."""
@@ -39,13 +43,13 @@ class Band:
         both = np.concatenate([self.w, w])
         order = np.argsort(both)
         plant = np.concatenate([self.plant, self.sign * self.source(w)])
-        return Band(self.source, self.sign, both[order], plant[order])
+        return Band(self.source, self.sign, both[order], plant[order], self.residence)
 
 
-def find_band(plant: HeldPlant) -> Band:
+def find_band(plant: HeldPlant, form: str) -> Band:
     """Scan all decades for the phase between EARLY and LATE, then grid it finely.
 
-    Raises Refused: unbounded (no delay and at most one pole more than zeros), plant-response-unusable.
+    Raises Refused: unbounded (no delay and too little lag), plant-without-gain, plant-response-unusable.
     """
     # One scan from nanoseconds to decades; a stated delay moves its centre, so that time scales out.
     centre = 1.0 / plant.known_delay if plant.known_delay > 0 else 1.0
@@ -59,7 +63,7 @@ def find_band(plant: HeldPlant) -> Band:
         raise Refused("plant-without-gain", "The plant has no gain at low frequency, so integral action cannot work.")
     sign = float(np.sign(asymptote))
     lag = order * np.pi / 2 - np.unwrap(np.angle(sign * response * 1j**order))
-    if plant.known_delay == 0 and np.isinf(plant.w_max) and lag[-1] < UNBOUNDED_LAG and _settled(plant, top):
+    if plant.known_delay == 0 and np.isinf(plant.w_max) and lag[-1] < UNBOUNDED_LAG[form] and _settled(plant, top):
         raise _unbounded()
     late = np.flatnonzero(lag > LATE)
     last = int(late[0]) if len(late) else int(np.argmax(lag > lag.max() - 0.02))
@@ -68,7 +72,15 @@ def find_band(plant: HeldPlant) -> Band:
     loud = np.flatnonzero(np.abs(response) > FADED * np.abs(response[last]))
     end = float(min(scan[max(last, int(loud[-1]))], scan[last] * 30.0))
     w = np.geomspace(scan[first] / 3.0, min(end * 3.0, plant.w_max), POINTS)
-    return Band(plant, sign, w, sign * plant(w))
+    return Band(plant, sign, w, sign * plant(w), _residence(plant, scan, lag, order))
+
+
+def _residence(plant: HeldPlant, w: Floats, lag: Floats, order: int) -> float:
+    if order > 0:
+        return np.inf
+    # Where the lag is well above rounding and still grows in proportion to w.
+    k = int(np.argmax(lag > 1e-3))
+    return max(float(lag[k] / w[k]) - plant.lag, 0.0)
 
 
 def _settled(plant: HeldPlant, w: float) -> bool:

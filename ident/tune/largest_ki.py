@@ -1,8 +1,8 @@
-"""The largest integral gain under a limit on abs(S) and abs(T), exactly and without derivatives.
+"""The PI with the largest integral gain under a limit on abs(S) and abs(T), exactly and without derivatives.
 
 At one frequency both limits keep L = P C out of a circle: abs(L + c) >= r, with c = 1, r = 1/M for S and
 c = M^2/(M^2 - 1), r = M/(M^2 - 1) for T. L is linear in Kp and ki, so each circle is an ellipse in the
-(Kp, ki) plane, and at a given Kp (and Td) it allows ki up to its lower edge (Astrom, Panagopoulos and Hagglund
+(Kp, ki) plane, and at a given Kp it allows ki up to its lower edge (Astrom, Panagopoulos and Hagglund
 1998, Automatica 34, 585-601). The largest ki over all frequencies is the lowest of these edges: a function of Kp
 that costs no plant evaluation at all once P is known on a grid. Frequencies where the loop still peaks above
 the limit are added to the grid until none is left (exchange method of semi-infinite programming).
@@ -23,7 +23,7 @@ from ident.tune.band import Band
 Floats = NDArray[np.float64]
 
 GAINS = 100  # grid over Kp
-ZOOM, ZOOM_ROUNDS = 33, 6
+ZOOM, LOOKS = 33, 6  # points of each closer look, between the neighbours of the best
 EXCHANGES = 25
 EXCESS = 1e-7  # relative, left above the limit
 
@@ -34,7 +34,9 @@ def largest_ki(band: Band, M: float) -> PidSettings:
     Raises Refused: unbounded, no-settings-found.
     """
     for _ in range(EXCHANGES):
-        Kp, ki = best_pi(band, M)
+        Kp, ki = best_on_grid(band, M)
+        if not (Kp > 0 and 0 < ki < np.inf):
+            break
         settings = PidSettings(band.sign * Kp, Kp / ki)
         run = sweep(OpenLoop(band.source, settings))
         if not is_stable(run):
@@ -46,48 +48,49 @@ def largest_ki(band: Band, M: float) -> PidSettings:
         if len(above) == 0:
             break
         band = band.with_points(above)
-    raise Refused(
+    raise not_found(M)
+
+
+def not_found(M: float) -> Refused:
+    return Refused(
         "no-settings-found",
-        f"No PI settings that keep Ms and Mt at or below {M:g} were found for this plant; try another target.",
+        f"No settings that keep Ms and Mt at or below {M:g} were found for this plant; try another target.",
     )
 
 
-def best_pi(band: Band, M: float) -> tuple[float, float]:
+def circles(M: float) -> tuple[tuple[float, float], tuple[float, float]]:
+    """(c, r) of abs(L + c) >= r for abs(S) <= M and for abs(T) <= M."""
+    return (1.0, 1.0 / M), (M * M / (M * M - 1.0), M / (M * M - 1.0))
+
+
+def best_on_grid(band: Band, M: float) -> tuple[float, float]:
     """(Kp, ki) with the largest ki over the band's own frequencies; Kp > 0, the plant's sign taken out."""
     inverse = 1.0 / band.plant
-    circles = [(1.0, 1.0 / M), (M * M / (M * M - 1.0), M / (M * M - 1.0))]
-    top = min(_largest_gain(inverse, c, r) for c, r in circles)
+    top = min(largest_gain(inverse, c, r) for c, r in circles(M))
     if not np.isfinite(top):
         raise Refused(
             "unbounded",
             "No gain brings this plant to the target, so no largest gain exists: give the controller's period "
             "or a model with dead time.",
         )
-
-    def ki(Kp: Floats) -> Floats:
-        edges = [_lower_edge(band.w, inverse, Kp, c, r) for c, r in circles]
-        return np.minimum(edges[0], edges[1])
-
     Kp = np.linspace(0.0, top, GAINS + 1)[1:]
-    best = 0
-    value = np.empty(0)
-    for points in [GAINS] + [ZOOM] * ZOOM_ROUNDS:
-        if points == ZOOM:
-            Kp = np.linspace(Kp[max(best - 1, 0)], Kp[min(best + 1, len(Kp) - 1)], ZOOM)
-        value = ki(Kp)
-        best = int(np.argmax(value))
-    return float(Kp[best]), float(value[best])
+    for _ in range(LOOKS + 1):
+        ki = np.minimum(*(_lower_edge(band.w, inverse, Kp, c, r) for c, r in circles(M)))
+        k = int(np.argmax(ki))
+        found = float(Kp[k]), float(ki[k])
+        Kp = np.linspace(Kp[max(k - 1, 0)], Kp[min(k + 1, len(Kp) - 1)], ZOOM)
+    return found
 
 
-def _largest_gain(inverse: NDArray[np.complex128], c: float, r: float) -> float:
-    """The least Kp > 0 that some circle forbids to a proportional controller."""
+def largest_gain(inverse: NDArray[np.complex128], c: float, r: float) -> float:
+    """The least Kp > 0 that some circle forbids without integral action."""
     half = (r * np.abs(inverse)) ** 2 - (c * inverse.imag) ** 2
     low = -c * inverse.real - np.sqrt(np.maximum(half, 0.0))
     return float(np.min(low, initial=np.inf, where=(half > 0) & (low > 0)))
 
 
 def _lower_edge(w: Floats, inverse: NDArray[np.complex128], Kp: Floats, c: float, r: float) -> Floats:
-    """Per Kp the lowest ki at which some circle begins."""
+    """Per Kp the lowest ki at which some circle begins: abs(Kp - j ki/w + c/P) = r/abs(P)."""
     half = (r * np.abs(inverse)) ** 2 - (Kp[:, None] + c * inverse.real) ** 2
     root = np.sqrt(np.maximum(half, 0.0))
     middle = c * inverse.imag

@@ -17,6 +17,7 @@ FINE = 100.0  # steps per shortest time of an analogue loop: error about 1e-5 of
 SAMPLES = 200_000
 SUBSTEPS = 20  # points per time constant between the samples of a digital controller
 DOUBLINGS = 12
+DIVERGED = 100.0  # errors; a loop within any sensible target never comes near this
 SETTLED = 1e-4  # of the largest error: so little is left of the IAE after that
 
 
@@ -26,7 +27,7 @@ def predict(plant: Any, settings: PidSettings, *, period: float = 0.0, compute_d
     plant          Fopdt, or a fit of one;  period  s, 0: analogue;  compute_delay  s
     Digital: exact at the samples and between them, trapezoidal integral. Analogue: about 1e-5 of the step.
     The load enters at a sample, the least favourable moment. IAE counts up to where both have settled.
-    Raises Refused: not-simulated, loop-unstable, derivative-without-filter.
+    Raises Refused: not-simulated, loop-unstable, sampled-loop-unstable, derivative-without-filter.
     """
     model = first_order(plant)
     if model is None:
@@ -34,6 +35,7 @@ def predict(plant: Any, settings: PidSettings, *, period: float = 0.0, compute_d
     if not margins(model, settings, period=period, compute_delay=compute_delay).stable:
         raise Refused("loop-unstable", "This loop is unstable: there is no settled response to predict.")
     rehearsal = Rehearsal(model, settings, period, compute_delay)
+    rehearsal.check()
     return Predicted(read_setpoint_step(rehearsal.setpoint()), read_load_step(rehearsal.load()))
 
 
@@ -48,6 +50,7 @@ class Rehearsal:
 
     def __init__(self, plant: Fopdt, settings: PidSettings, period: float, compute_delay: float) -> None:
         self.plant, self.settings, self.compute_delay = plant, settings, compute_delay
+        self.settles = True
         delay = plant.L + compute_delay + period
         fastest = (1.0 + abs(plant.K * settings.Kp)) / plant.T + 1.0 / settings.Ti
         if settings.Tf > 0:
@@ -60,11 +63,19 @@ class Rehearsal:
         coarsest = max(0.1 / fastest, delay / 2000.0)
         for _ in range(DOUBLINGS):
             self.clock = self._clock(period, duration, fastest)
-            if self._settled():
+            if self._settled() or not self.settles:
                 break
             duration *= 2.0
             if self.clock.samples * self.clock.substeps >= SAMPLES and (period > 0 or self.clock.step > coarsest):
                 break
+
+    def check(self) -> None:
+        """Refuse a sampled loop that does not settle although its continuous approximation would."""
+        if not self.settles:
+            raise Refused(
+                "sampled-loop-unstable",
+                "At this period the sampled loop does not settle: use a shorter period or a calmer target.",
+            )
 
     def setpoint(self, b: float | None = None) -> Trace:
         settings = self.settings if b is None else replace(self.settings, b=b)
@@ -84,6 +95,9 @@ class Rehearsal:
     def _settled(self) -> bool:
         for trace, end in ((self.setpoint(), 1.0), (self.load(), 0.0)):
             error = np.abs(trace.speed - end)
+            self.settles = bool(error.max() < DIVERGED * (1.0 + abs(self.plant.K)))
+            if not self.settles:
+                return False
             if float(error[-len(error) // 4 :].max()) > SETTLED * float(error.max()):
                 return False
         return True

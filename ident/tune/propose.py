@@ -8,10 +8,9 @@ from typing import Any
 from ident.findings import Finding
 from ident.loop import Margins, margins
 from ident.plants import Fopdt
-from ident.tune.predict import first_order, predict
-from ident.tune.setpoint_weight import choose_setpoint_weight
+from ident.tune.predict import first_order
 from ident.tune.simc import simc
-from ident.tune.tuning import Tuning, tune
+from ident.tune.tuning import Tuning, rehearse, tune
 
 TOLERANCE = 0.005  # above the target, in Ms or Mt
 
@@ -57,19 +56,19 @@ def _simc(model: Fopdt, Ms: float, period: float, compute_delay: float) -> Tunin
     timing = {"period": period, "compute_delay": compute_delay}
     settings = simc(model.K, model.T, model.L + period / 2.0 + compute_delay)
     found = margins(model, settings, **timing)
-    findings: list[Finding] = []
+    findings: tuple[Finding, ...] = ()
+    predicted = None
     if found.stable:
-        settings, advice = choose_setpoint_weight(model, settings, **timing)
-        findings += [advice] if advice else []
+        settings, predicted, findings = rehearse(model, settings, period, compute_delay)
     if not meets(found, Ms):
-        findings.append(_missed(found, Ms))
+        findings = (*findings, _missed(found, Ms))
     return Tuning(
         "simc",
         "pi",
         settings,
         found,
-        predict(model, settings, **timing) if found.stable else None,
-        tuple(findings),
+        predicted,
+        findings,
         "The SIMC rule with the closed-loop time constant equal to the dead time in the loop (Skogestad 2003).",
     )
 

@@ -33,6 +33,7 @@ def choose_setpoint_weight(
     ramp times that does not.
     """
     rehearsal = Rehearsal(plant, replace(settings, b=0.0), period, compute_delay)
+    rehearsal.check()
     without, full = rehearsal.setpoint(0.0), rehearsal.setpoint(1.0)
     # The loop is linear: the response for any b lies on the line through these two.
     for b in WEIGHTS:

@@ -13,6 +13,7 @@ from ident.loop import Margins, PidSettings, margins
 from ident.loop.held_plant import held_plant
 from ident.tune.band import find_band
 from ident.tune.largest_ki import largest_ki
+from ident.tune.largest_ki_pid import largest_ki_pid
 from ident.tune.predict import first_order, predict
 from ident.tune.predicted import Predicted
 from ident.tune.setpoint_weight import choose_setpoint_weight
@@ -61,22 +62,36 @@ def tune(
     """
     check_request(Ms, form, goal)
     held = held_plant(plant, period, compute_delay)
-    settings = largest_ki(find_band(held), Ms)
+    best = largest_ki if form == "pi" else largest_ki_pid
+    settings = best(find_band(held, form), Ms)
     timing = {"period": period, "compute_delay": compute_delay}
     found = margins(held.plant, settings, **timing)
-    model, advice, predicted = first_order(plant), None, None
-    if model is not None:
-        settings, advice = choose_setpoint_weight(model, settings, **timing)
-        predicted = predict(model, settings, **timing)
+    settings, predicted, findings = rehearse(plant, settings, period, compute_delay)
     return Tuning(
         "largest-ki",
         form,
         settings,
         found,
         predicted,
-        () if advice is None else (advice,),
+        findings,
         f"The largest integral gain, {settings.ki:.4g}, with Ms and Mt at most {Ms:g}.",
     )
+
+
+def rehearse(
+    plant: Any, settings: PidSettings, period: float, compute_delay: float
+) -> tuple[PidSettings, Predicted | None, tuple[Finding, ...]]:
+    """Setpoint weight and predicted steps of a stable loop; none for a plant that is not simulated."""
+    model = first_order(plant)
+    if model is None:
+        return settings, None, ()
+    timing = {"period": period, "compute_delay": compute_delay}
+    try:
+        settings, advice = choose_setpoint_weight(model, settings, **timing)
+        predicted = predict(model, settings, **timing)
+    except Refused as error:
+        return settings, None, (Finding(error.code, "warning", error.message),)
+    return settings, predicted, (advice,) if advice else ()
 
 
 def check_request(Ms: float, form: str, goal: str) -> None:
@@ -90,7 +105,5 @@ def check_request(Ms: float, form: str, goal: str) -> None:
         raise Refused(
             "not-offered", f"form is one of {', '.join(FORMS)}; goal one of {', '.join(GOALS)}; got {form}, {goal}."
         )
-    if form == "pid":
-        raise Refused("not-offered", 'PID settings are not offered yet: use form="pi".')
     if goal != "integral":
         raise Refused("not-offered", f'The goal "{goal}" is not offered yet: use goal="integral".')

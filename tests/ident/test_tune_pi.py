@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 import csv
-from dataclasses import dataclass, field
+from dataclasses import dataclass
 from pathlib import Path
 from typing import Any
 
@@ -12,6 +12,7 @@ import pytest
 from hypothesis import given, settings
 from hypothesis import strategies as st
 from numpy.typing import ArrayLike, NDArray
+from tuning_plants import Counting, reference_plant
 
 from ident.errors import Refused
 from ident.loop import PidSettings, margins
@@ -19,34 +20,6 @@ from ident.plants import Fopdt
 from ident.tune import simc, tune
 
 Complex = NDArray[np.complex128]
-
-
-@dataclass(frozen=True)
-class FourLags:
-    """1/(s + 1)^4, as a caller would write it."""
-
-    def frequency_response(self, w: ArrayLike) -> Complex:
-        return np.asarray(1.0 / (1.0 + 1j * np.asarray(w)) ** 4)
-
-
-@dataclass
-class Counting:
-    """A plant that counts how many points it is asked for."""
-
-    plant: Any
-    points: int = field(default=0)
-
-    @property
-    def dead_time(self) -> float:
-        return float(getattr(self.plant, "dead_time", 0.0))
-
-    def frequency_response(self, w: ArrayLike) -> Complex:
-        self.points += np.size(w)
-        return np.asarray(self.plant.frequency_response(w))
-
-
-def _plant(name: str) -> Any:
-    return FourLags() if name == "lag4_equal" else Fopdt(1.0, 1.0, float(name.removeprefix("FOPDT_L")))
 
 
 def _pi_rows(shared: Path) -> list[dict[str, str]]:
@@ -60,7 +33,7 @@ def test_reference_table(shared: Path) -> None:
     assert len(rows) == 25
     for row in rows:
         target = float(row["Ms_limit"])
-        found = tune(_plant(row["plant"]), Ms=target)
+        found = tune(reference_plant(row["plant"]), Ms=target)
         assert found.settings.ki == pytest.approx(float(row["ki"]), rel=1e-5), row
         assert found.settings.Kp == pytest.approx(float(row["Kp"]), rel=5e-3), row
         m = found.margins
@@ -87,7 +60,7 @@ def test_cost_in_evaluations_of_a_400_point_response(shared: Path) -> None:
     # Bar of the issue on tuning: at most 300.
     worst = 0.0
     for row in _pi_rows(shared):
-        plant = Counting(_plant(row["plant"]))
+        plant = Counting(reference_plant(row["plant"]))
         tune(plant, Ms=float(row["Ms_limit"]))
         worst = max(worst, plant.points / 400)
     assert worst <= 300
