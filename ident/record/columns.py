@@ -24,6 +24,7 @@ class Mapped:
     headers   {role: header}, as the report shows it
     units     {role: unit}, "" where none is named
     quality   {position: header} of status and mode columns
+    unread    lines between the header or its units and the data
     """
 
     index: dict[str, int]
@@ -31,6 +32,7 @@ class Mapped:
     headers: dict[str, str]
     units: dict[str, str]
     quality: dict[int, str]
+    unread: int
 
 
 def map_columns(above: tuple[tuple[str, ...], ...], width: int, columns: Columns | None) -> Mapped:
@@ -41,7 +43,7 @@ def map_columns(above: tuple[tuple[str, ...], ...], width: int, columns: Columns
 
     Raises ReadError: unknown-role, missing-column, ambiguous-columns.
     """
-    names, unit_row = _header(above, width)
+    names, unit_row, unread = _header(above, width)
     asked = dict(columns or {})
     unknown = [role for role in asked if role not in ROLES]
     if unknown:
@@ -81,20 +83,22 @@ def map_columns(above: tuple[tuple[str, ...], ...], width: int, columns: Columns
     }
     if date is not None and names:
         shown["time"] = f"{printable(names[date])} + {shown['time']}"
-    return Mapped(index, date, shown, units, {i: printable((names or [])[i]) for i in kinds.get("quality", [])})
+    quality = {i: printable((names or [])[i]) for i in kinds.get("quality", [])}
+    return Mapped(index, date, shown, units, quality, unread)
 
 
-def _header(above: tuple[tuple[str, ...], ...], width: int) -> tuple[list[str] | None, tuple[str, ...] | None]:
-    """The row with the most known words, and the units row under it."""
+def _header(above: tuple[tuple[str, ...], ...], width: int) -> tuple[list[str] | None, tuple[str, ...] | None, int]:
+    """The row with the most known words, the units row under it, and how many more rows stand below."""
     known = [sum(meaning(understand(cell)) is not None for cell in row if cell) for row in above]
     wide = [i for i, row in enumerate(above) if sum(bool(c) for c in row) >= min(2, width)]
     named = [i for i in wide if not all(is_unit(cell) for cell in above[i])] or wide
     if not named:
-        return None, None
+        return None, None, 0
     best = max(named, key=lambda i: (known[i], i))
-    below = above[best + 1] if best + 1 < len(above) else None
-    is_units = below is not None and all(is_unit(cell) for cell in below)
-    return list(above[best]), tuple(c.strip("[]() ") for c in below) if below and is_units else None
+    below = above[best + 1 :]
+    if below and all(is_unit(cell) for cell in below[0]):
+        return list(above[best]), tuple(cell.strip("[]() ") for cell in below[0]), len(below) - 1
+    return list(above[best]), None, len(below)
 
 
 def _find(role: str, want: str | int, names: list[str] | None, width: int) -> int:

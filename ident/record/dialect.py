@@ -15,6 +15,8 @@ MOST_COLUMNS = 1000
 _SAMPLE = 65536
 _LONG_SAMPLE = 2**20
 _SAMPLE_LINES = 120
+# A row of data may hold words ("No Data") in all but the time column.
+_LEAST_SHARE = 0.25
 
 _NUMBER = re.compile(r"[+-]?(?=[.,]?\d)[\d.,]*(?:[eE][+-]?\d+)?")
 _STAMP = re.compile(r"\d[\d\-/.:, T]*(?: ?[AaPp]\.?[Mm]\.?| ?Z| ?[+-]\d\d:?\d\d)?")
@@ -65,6 +67,8 @@ def sniff(text: bytes) -> Dialect:
     header: list[tuple[str, ...]] = []
     for row in reversed(rows[:first]):
         cells = tuple(cell.strip() for cell in row)
+        if not any(cells) and not header:
+            continue  # a blank line between header and data
         if not any(cells) or len(_trimmed(cells)) > width:
             break
         header.insert(0, (*cells, *[""] * width)[:width])
@@ -96,11 +100,11 @@ def _candidate(lines: list[bytes], delimiter: str) -> tuple[float, str, list[lis
     """Score, delimiter, rows, width and first data row: how much of the sample this delimiter explains."""
     rows = [_cells(line, delimiter) for line in lines]
     shares = [_share(row) for row in rows]
-    widths = Counter(len(row) for row, share in zip(rows, shares, strict=True) if share >= 0.5)
+    widths = Counter(len(row) for row, share in zip(rows, shares, strict=True) if share >= _LEAST_SHARE)
     if not widths:
         return 0.0, delimiter, rows, 0, 0
     width = max(widths, key=lambda w: (widths[w], w))
-    data = [i for i, row in enumerate(rows) if shares[i] >= 0.5 and len(row) == width]
+    data = [i for i, row in enumerate(rows) if shares[i] >= _LEAST_SHARE and len(row) == width]
     score = sum(shares[i] for i in data)
     # A preamble may hold one row that looks like data ("Period, from, to"); data come in pairs.
     pairs = (i for i, after in pairwise(data) if after == i + 1)

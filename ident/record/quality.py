@@ -14,7 +14,10 @@ from ident.record.table import Table
 
 _GOOD = frozenset(["good", "gut", "ok", "bon", "bonne", "bueno", "buena", "buono", "buona", "valid"])
 _BAD = frozenset(
-    ["bad", "uncertain", "invalid", "schlecht", "unsicher", "mauvais", "mauvaise", "incertain", "malo", "mala", "incierto", "cattivo", "incerto"]
+    (
+        *("bad", "uncertain", "invalid", "schlecht", "unsicher", "mauvais", "mauvaise", "incertain"),
+        *("malo", "mala", "incierto", "cattivo", "incerto"),
+    )
 )
 # OPC DA: the top two bits of a byte, 192 is good; 216 is a forced value, good to act on but not to fit.
 _DA_QUALITY, _DA_GOOD, _DA_STATUS, _DA_FORCED = 0xC0, 0xC0, 0xFC, 0xD8
@@ -41,35 +44,34 @@ def judge(table: Table, mapped: Mapped) -> tuple[Flags, list[Finding]]:
 
 def _bad_rows(cells: pd.Series) -> Flags | None:
     """Rows that are not good; None where the column speaks no known language."""
+    if cells.isna().all():
+        return None
     if cells.dtype.kind not in "iuf":
         words = cells.astype("str").str.strip().str.casefold().str.extract(r"^([^\W_]+)")[0]
         known = words.isin(_GOOD | _BAD)
         return ~words.isin(_GOOD).to_numpy(dtype=np.bool_) if known[cells.notna()].all() else None
     lost = cells.isna().to_numpy()
     values = cells.fillna(0).to_numpy(dtype=np.float64)
-    if lost.all() or values.min() < 0 or values.max() >= 2**32 or (values != np.floor(values)).any():
+    if values.min() < 0 or values.max() >= 2**32 or (values != np.floor(values)).any():
         return None
     code: NDArray[np.int64] = values.astype(np.int64)
     if code.max() > 0xFFFF:
-        not_good: Flags = lost | (code >> _UA_SEVERITY != 0) | (code >> 16 == _UA_FORCED)
-        return not_good
-    good = code & _DA_QUALITY == _DA_GOOD
-    if code.max() <= 0xFF and good.mean() > 0.5:
-        not_good = lost | ~good | (code & _DA_STATUS == _DA_FORCED)
-        return not_good
-    return None  # only zeros: bad in OPC DA, good in OPC UA
+        good: Flags = (code >> _UA_SEVERITY == 0) & (code >> 16 != _UA_FORCED)
+    elif code.max() <= 0xFF and (code & _DA_QUALITY == _DA_GOOD).mean() > 0.5:
+        good = (code & _DA_QUALITY == _DA_GOOD) & (code & _DA_STATUS != _DA_FORCED)
+    else:
+        return None  # only zeros, for one: bad in OPC DA, good in OPC UA
+    return ~good | lost
 
 
 def _ignored(cells: pd.Series, name: str) -> Finding:
     counts = cells.value_counts(dropna=False)
     other = int(counts.sum() - counts.iloc[0])
     shown = listed([str(v) for v in counts.index[:4]])
-    differ = f"; it holds {shown}, and {other} rows differ from the first of these: check that they are good" * bool(
-        other
-    )
+    differ = f"; it holds {shown}, and {other} rows differ from the first of these" if other else ""
     return Finding(
         "status-ignored",
         "warning" if other else "info",
-        f"Column {quoted(name)} (status or mode) was not understood and not used{differ}.",
+        f"Column {quoted(name)} (status or mode) was not used{differ}.",
         {"column": name, "rows_differing": other},
     )

@@ -61,14 +61,14 @@ def read_csv(
     mapped = map_columns(dialect.header, dialect.width, columns)
     table = read_table(body.text, dialect, time=_iso_column(body.text, mapped, dialect))
     bad, judged = quality.judge(table, mapped)
-    findings = [*body.findings, *table.findings, *judged]
+    findings = [*body.findings, *_unread(mapped, dialect), *table.findings, *judged]
     rows = len(table.line)
 
     stamps = _stamps(table, mapped, dialect.decimal, place, date_order)
     numbers = {
         role: to_numbers(table.cells[i], name=mapped.headers[role], decimal=dialect.decimal, line=table.line)
         for role, i in mapped.index.items()
-        if role != "time"
+        if role != "time" and not (role == "setpoint" and table.cells[i].isna().all())
     }
     kept, dropped = axis.without_duplicates(stamps.time, [n.values for n in numbers.values()], table.line)
     findings += [
@@ -175,6 +175,9 @@ def _mostly_numbers(cells: pd.Series) -> bool:
 
 def _missing(numbers: dict[str, Numbers], mapped: Mapped, rows: int) -> list[Finding]:
     found = []
+    if "setpoint" in mapped.index and "setpoint" not in numbers:
+        message = f"The setpoint column ({quoted(mapped.headers['setpoint'])}) is empty and was not used."
+        found.append(Finding("missing-values", "warning", message, {"role": "setpoint", "count": rows}))
     for role, column in numbers.items():
         lost = column.blank + column.unread
         if not lost:
@@ -210,6 +213,15 @@ def _dated(stamps: Stamps, begin: datetime | None) -> list[Finding]:
         message = "The stamps carry no offset and no zone was given: elapsed times hold, but the start is unknown."
         return [Finding("zone-unknown", "warning", f'{message} Pass zone, for example "Europe/Berlin".')]
     return [Finding("date-unknown", "info", "The log has no date: pass start to place it in time.")]
+
+
+def _unread(mapped: Mapped, dialect: Dialect) -> list[Finding]:
+    if mapped.unread == 0:
+        return []
+    message = (
+        f"{mapped.unread} lines between the header and the first row of numbers (line {dialect.line}) were not read."
+    )
+    return [Finding("unread-lines", "info", message, {"count": mapped.unread, "first_row_line": dialect.line})]
 
 
 def _unit_assumed(stamps: Stamps, mapped: Mapped) -> list[Finding]:

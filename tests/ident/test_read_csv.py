@@ -119,6 +119,7 @@ def test_06_opc_ua_severity_leaves_rows_out_by_quality_not_by_value(shared: Path
         (["192", "192", "0", "64", "193", "216", *["192"] * 6], [2, 3, 5]),
         (["Good"] * 6 + ["Bad [comm]", "Uncertain"] + ["good"] * 4, [6, 7]),
         (["0"] * 12, None),
+        ([""] * 12, None),
         (["AUTO"] * 6 + ["MAN"] * 6, None),
     ],
 )
@@ -231,6 +232,24 @@ def test_line_ends_and_blank_lines(newline: str) -> None:
 def test_a_cut_last_line_is_dropped() -> None:
     r = read_csv(table(*ROWS, "1.0,2"))
     assert (r.rows, codes(r)) == (10, ["truncated-tail", "date-unknown"])
+
+
+def test_an_empty_setpoint_column_is_no_setpoint() -> None:
+    r = read_csv(table(*[f"{k / 10:.1f},,1,{k}" for k in range(10)], head="time,setpoint,command,speed"))
+    assert r.setpoint is None
+    assert codes(r) == ["missing-values", "date-unknown"]
+
+
+def test_words_in_the_first_rows_are_rows() -> None:
+    rows = [f"{k / 10:.1f},No Data,{'Bad' if k < 6 else k}" if k < 8 else f"{k / 10:.1f},1,{k}" for k in range(20)]
+    r = read_csv(table(*rows))
+    assert (r.rows, r.excluded[0].stop, r.segments[0].start) == (20, 8, 8)
+
+
+def test_a_blank_line_below_the_header_and_an_unknown_units_row() -> None:
+    assert read_csv(table("", *ROWS)).rows == 10
+    r = read_csv(table("[x],[furlongs],[per week]", *ROWS))
+    assert (r.rows, codes(r)) == (10, ["unread-lines", "date-unknown"])
 
 
 def test_exact_repetitions_are_dropped() -> None:
