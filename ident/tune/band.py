@@ -16,6 +16,7 @@ PER_DECADE_SCAN = 20
 POINTS = 400
 # rad of lag, counted from the low-frequency asymptote: a controller acts on the phase between these.
 EARLY, LATE = 0.05, 3.5
+TURN, FOLLOWED = 0.5, 12  # rad between neighbours of the scan; rounds of bisection
 FADED = 0.05  # of abs(P) where the lag is LATE: what lies beyond is far too small to come near -1
 # rad: a plant that never lags more than 90 degrees takes any gain of a PI, 180 degrees of a PID (the filter is
 # a share of Td and moves out of the way).
@@ -62,17 +63,38 @@ def find_band(plant: HeldPlant, form: str) -> Band:
     if order < 0 or asymptote == 0:
         raise Refused("plant-without-gain", "The plant has no gain at low frequency, so integral action cannot work.")
     sign = float(np.sign(asymptote))
-    lag = order * np.pi / 2 - np.unwrap(np.angle(sign * response * 1j**order))
+    scan, response = _follow(plant, scan, response)
+    lag = _lag(sign * response, order)
     if plant.known_delay == 0 and np.isinf(plant.w_max) and lag[-1] < UNBOUNDED_LAG[form] and _settled(plant, top):
         raise _unbounded()
     late = np.flatnonzero(lag > LATE)
     last = int(late[0]) if len(late) else int(np.argmax(lag > lag.max() - 0.02))
-    early = np.flatnonzero(lag[: last + 1] < max(EARLY, lag[0] + EARLY))
-    first = int(early[-1]) if len(early) else 0
+    first = max(int(np.argmax(np.abs(lag - lag[0]) > EARLY)) - 1, 0)
     loud = np.flatnonzero(np.abs(response) > FADED * np.abs(response[last]))
     end = float(min(scan[max(last, int(loud[-1]))], scan[last] * 30.0))
     w = np.geomspace(scan[first] / 3.0, min(end * 3.0, plant.w_max), POINTS)
+    w = np.union1d(w, scan[first : last + 1])
     return Band(plant, sign, w, sign * plant(w), _residence(plant, scan, lag, order))
+
+
+def _lag(response: Complex, order: int) -> Floats:
+    return np.asarray(order * np.pi / 2 - np.unwrap(np.angle(response * 1j**order)))
+
+
+def _follow(plant: HeldPlant, w: Floats, response: Complex) -> tuple[Floats, Complex]:
+    """Bisect a scan where the phase turns fast (a resonance), up to where it has turned LATE for good."""
+    for _ in range(FOLLOWED):
+        turn = np.abs(np.angle(response[1:] / response[:-1]))
+        late = np.flatnonzero(np.cumsum(turn) > 3.0 * LATE)
+        rough = turn > TURN
+        rough[int(late[0]) + 1 if len(late) else len(rough) :] = False
+        if not rough.any():
+            break
+        middle = np.sqrt(w[1:][rough] * w[:-1][rough])
+        w = np.concatenate([w, middle])
+        order = np.argsort(w)
+        w, response = w[order], np.concatenate([response, plant(middle)])[order]
+    return w, response
 
 
 def _residence(plant: HeldPlant, w: Floats, lag: Floats, order: int) -> float:

@@ -40,14 +40,15 @@ def largest_ki(band: Band, M: float) -> PidSettings:
         settings = PidSettings(band.sign * Kp, Kp / ki)
         run = sweep(OpenLoop(band.source, settings))
         if not is_stable(run):
-            break
+            # The grid missed a resonance altogether: learn it from the sweep, which follows every turn.
+            band = band.with_points(run.w[(np.abs(run.loop) > 0.2) & (np.abs(run.loop) < 20.0)][::2])
+            continue
         peaks = [sensitivity(run), complementary(run)]
         if max(p.supremum for p in peaks) <= M * (1.0 + EXCESS):
             return settings
-        above = np.concatenate([p.w[p.height > M] for p in peaks])
-        if len(above) == 0:
-            break
-        band = band.with_points(above)
+        # With each peak its flanks: a sharp one moves along them as the settings change.
+        flanks = run.w[np.abs(1.0 + run.loop) < 1.0 / M]
+        band = band.with_points(np.concatenate([flanks, *(p.w[p.height > M] for p in peaks)]))
     raise not_found(M)
 
 
