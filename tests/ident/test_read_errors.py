@@ -81,7 +81,7 @@ PNG = (
         (log(*[f"31/31/2026 10:0{k},1,{k}" for k in range(9)]), "unreadable-time", "Line 2"),
         (log(*[f"3/{k + 1}/2026 10:00{'+01:00' * (k == 4)},1,{k}" for k in range(9)]), "ambiguous-dates", "Line 2"),
         (log(*[f"2026-03-02 08:1{'-' * (k == 4)}5:0{k},1,{k}" for k in range(9)]), "unreadable-time", "Line 6"),
-        (log(*[f"{'now' if k == 4 else f'2026-03-02 08:15:0{k}'},1,{k}" for k in range(9)]), "unreadable-time", "Line 6"),
+        (log(*[f"{'now' if k == 4 else f'2026-03-02 08:1{k}'},1,{k}" for k in range(9)]), "unreadable-time", "Line 6"),
         (log(*[f"0000-01-01T00:00:0{k}Z,1,{k}" for k in range(9)]), "unreadable-time", "Line 2"),
         (log(*[f"9999-12-31T00:00:0{k}Z,1,{k}" for k in range(9)]), "unreadable-time", "Line 2"),
         (log(*[f"2026-02-30T00:00:0{k}Z,1,{k}" for k in range(9)]), "unreadable-time", "Line 2"),
