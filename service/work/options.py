@@ -43,6 +43,7 @@ class Options(BaseModel):
     period: float | None = Field(
         default=None,
         ge=0.0,
+        le=86_400.0,
         allow_inf_nan=False,
         description="Period of the controller in seconds, 0 if analogue; unset: the log's sample time.",
     )

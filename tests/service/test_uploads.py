@@ -41,7 +41,14 @@ def test_options_change_the_report(client: TestClient, step_test: bytes) -> None
 
 @pytest.mark.parametrize(
     ("query", "named"),
-    [("ms=1.4", "ms"), ("Ms=one", "Ms"), ("Ms=0.9", "Ms"), ("Ms=nan", "Ms"), ("model=best", "model")],
+    [
+        ("ms=1.4", "ms"),
+        ("Ms=one", "Ms"),
+        ("Ms=0.9", "Ms"),
+        ("Ms=nan", "Ms"),
+        ("model=best", "model"),
+        ("period=1e300", "period"),
+    ],
 )
 def test_an_option_that_is_wrong_is_named(client: TestClient, query: str, named: str) -> None:
     told = expect.answer(client.post(f"/v1/reports?{query}", content=b"a"), expected=422, code="invalid-option")
