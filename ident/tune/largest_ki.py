@@ -19,12 +19,16 @@ from ident.loop.nyquist import is_stable
 from ident.loop.settings import PidSettings
 from ident.loop.sweep import OpenLoop, sweep
 from ident.tune.band import Band
+from ident.tune.climb import climb
+from ident.tune.ellipses import circles, largest_gain, not_found
+from ident.tune.gaps import best_in_gaps
 
 Floats = NDArray[np.float64]
 
 GAINS = 100  # grid over Kp
 ZOOM, LOOKS = 33, 6  # points of each closer look, between the neighbours of the best
 EXCHANGES = 25
+WORTH = 1.002
 EXCESS = 1e-7  # relative, left above the limit
 
 
@@ -33,6 +37,17 @@ def largest_ki(band: Band, M: float) -> PidSettings:
 
     Raises Refused: unbounded, no-settings-found.
     """
+    found = _exchange(band, M)
+    # On a resonating plant a better answer may lie in a gap above some ellipse.
+    start = best_in_gaps(band, M, 0.0)
+    if start and (found is None or start.ki > found.ki * WORTH):
+        found = max(filter(None, [climb(band, M, start), found]), key=lambda s: s.ki, default=None)
+    if found is None:
+        raise not_found(M)
+    return found
+
+
+def _exchange(band: Band, M: float) -> PidSettings | None:
     for _ in range(EXCHANGES):
         Kp, ki = best_on_grid(band, M)
         if not (Kp > 0 and 0 < ki < np.inf):
@@ -49,19 +64,7 @@ def largest_ki(band: Band, M: float) -> PidSettings:
         # With each peak its flanks: a sharp one moves along them as the settings change.
         flanks = run.w[np.abs(1.0 + run.loop) < 1.0 / M]
         band = band.with_points(np.concatenate([flanks, *(p.w[p.height > M] for p in peaks)]))
-    raise not_found(M)
-
-
-def not_found(M: float) -> Refused:
-    return Refused(
-        "no-settings-found",
-        f"No settings that keep Ms and Mt at or below {M:g} were found for this plant; try another target.",
-    )
-
-
-def circles(M: float) -> tuple[tuple[float, float], tuple[float, float]]:
-    """(c, r) of abs(L + c) >= r for abs(S) <= M and for abs(T) <= M."""
-    return (1.0, 1.0 / M), (M * M / (M * M - 1.0), M / (M * M - 1.0))
+    return None
 
 
 def best_on_grid(band: Band, M: float) -> tuple[float, float]:
@@ -74,20 +77,14 @@ def best_on_grid(band: Band, M: float) -> tuple[float, float]:
             "No gain brings this plant to the target, so no largest gain exists: give the controller's period "
             "or a model with dead time.",
         )
-    Kp = np.linspace(0.0, top, GAINS + 1)[1:]
+    # The foot of the range closely: on a resonating plant nearly all action is integral.
+    Kp = top * np.concatenate([np.geomspace(1e-6, 0.5 / GAINS, 15), np.linspace(1.0 / GAINS, 1.0, GAINS)])
     for _ in range(LOOKS + 1):
         ki = np.minimum(*(_lower_edge(band.w, inverse, Kp, c, r) for c, r in circles(M)))
         k = int(np.argmax(ki))
         found = float(Kp[k]), float(ki[k])
         Kp = np.linspace(Kp[max(k - 1, 0)], Kp[min(k + 1, len(Kp) - 1)], ZOOM)
     return found
-
-
-def largest_gain(inverse: NDArray[np.complex128], c: float, r: float) -> float:
-    """The least Kp > 0 that some circle forbids without integral action."""
-    half = (r * np.abs(inverse)) ** 2 - (c * inverse.imag) ** 2
-    low = -c * inverse.real - np.sqrt(np.maximum(half, 0.0))
-    return float(np.min(low, initial=np.inf, where=(half > 0) & (low > 0)))
 
 
 def _lower_edge(w: Floats, inverse: NDArray[np.complex128], Kp: Floats, c: float, r: float) -> Floats:

@@ -1,33 +1,24 @@
 """The PID with the largest integral gain under a limit on abs(S) and abs(T), with Tf = Td/10.
 
-From a few starts the settings climb: log ki is maximised by sequential quadratic programming (scipy's SLSQP,
-analytic gradients) with one constraint abs(L + c) >= r per frequency and circle, in steps small enough not to
-jump over a circle; frequencies where the loop still peaks above the limit join the grid until none is left.
-This is the unrestricted maximum with Td at most the average residence time (Panagopoulos, Astrom and Hagglund
-2002, IEE Proc. CTA 149, 32-40, discuss why one may want less derivative action than that).
+A coarse search over Td and Kp finds the hills, `climb` their tops. This is the unrestricted maximum with Td at
+most the average residence time (Panagopoulos, Astrom and Hagglund 2002, IEE Proc. CTA 149, 32-40, discuss why
+one may want less derivative action than that).
 """
 
 from __future__ import annotations
 
 import numpy as np
-from numpy.typing import NDArray
-from scipy.optimize import Bounds, minimize
 
 from ident.errors import Refused
-from ident.loop.margins import complementary, sensitivity
-from ident.loop.nyquist import is_stable
 from ident.loop.settings import PidSettings
-from ident.loop.sweep import OpenLoop, sweep
 from ident.tune.band import Band
-from ident.tune.largest_ki import circles, not_found
-from ident.tune.pid_start import FILTER, pid_starts
+from ident.tune.climb import climb
+from ident.tune.ellipses import not_found
+from ident.tune.gaps import best_in_gaps
 
-Floats = NDArray[np.float64]
-
-CLIMBS = 40
-REACH = 0.3  # log: how far one climb may move each setting
-NEAR = 1.6  # constraints further than this times the radius cannot become active within one climb
-EXCESS, GAIN = 1e-7, 1e-7  # relative: left above the limit, and of ki per climb, where the climb ends
+DERIVATIVES = 24  # grid over Td
+SHORTEST = 0.03  # of 1/w where the plant has turned 180 degrees
+STARTS = 3
 
 
 def largest_ki_pid(band: Band, M: float) -> PidSettings:
@@ -37,87 +28,19 @@ def largest_ki_pid(band: Band, M: float) -> PidSettings:
     """
     if not np.isfinite(band.residence) or band.residence <= 0:
         raise Refused("not-offered", 'PID settings need a plant that settles: use form="pi" for this one.')
-    climbed = [c for c in (_climb(band, M, start) for start in pid_starts(band, M)) if c]
+    climbed = [c for c in (climb(band, M, start) for start in _starts(band, M)) if c]
     if not climbed:
         raise not_found(M)
     return max(climbed, key=lambda c: c.ki)
 
 
-def _climb(band: Band, M: float, start: PidSettings) -> PidSettings | None:
-    x = np.log([start.Kp, start.ki, start.Td])
-    reach = REACH
-    best: PidSettings | None = None
-    for _ in range(CLIMBS):
-        tried = _step(band, M, x, reach)
-        settings = _settings(band, tried)
-        run = sweep(OpenLoop(band.source, settings))
-        if not is_stable(run):
-            reach /= 3.0
-            if reach < 1e-4:
-                break
-            continue
-        moved = float(np.max(np.abs(tried - x)))
-        x = tried
-        peaks = [sensitivity(run), complementary(run)]
-        if max(p.supremum for p in peaks) <= M * (1.0 + EXCESS):
-            if best is not None and settings.ki < best.ki * (1.0 + GAIN):
-                return max(best, settings, key=lambda s: s.ki)
-            best = settings
-            if moved < 1e-9:
-                return best
-        else:
-            band = band.with_points(np.concatenate([p.w[p.height > M] for p in peaks]))
-    return best
-
-
-def _settings(band: Band, x: Floats) -> PidSettings:
-    Kp, ki, Td = (float(v) for v in np.exp(x))
-    return PidSettings(band.sign * Kp, Kp / ki, Td, Td / FILTER)
-
-
-def _step(band: Band, M: float, x: Floats, reach: float) -> Floats:
-    """One climb of at most `reach` from x = log (Kp, ki, Td)."""
-    distances, _ = _constraints(band.w, band.plant, M, x)
-    near = (distances < NEAR - 1.0).any(axis=0)
-    w, plant = band.w[near], band.plant[near]
-    limit = np.array([np.inf, np.inf, np.log(band.residence)])
-    x = np.minimum(x, limit)
-    found = minimize(  # type: ignore[call-overload]  # the stubs do not know the keys of a constraint
-        _objective,
-        x,
-        jac=True,
-        method="SLSQP",
-        bounds=Bounds(x - reach, np.minimum(x + reach, limit)),
-        constraints={
-            "type": "ineq",
-            "fun": lambda z: _constraints(w, plant, M, z)[0].ravel(),
-            "jac": lambda z: _constraints(w, plant, M, z)[1].reshape(-1, 3),
-        },
-        options={"maxiter": 60, "ftol": 1e-13},
-    )
-    return np.asarray(found.x, dtype=np.float64)
-
-
-def _objective(x: Floats) -> tuple[float, Floats]:
-    return -float(x[1]), np.array([0.0, -1.0, 0.0])
-
-
-def _constraints(w: Floats, plant: NDArray[np.complex128], M: float, x: Floats) -> tuple[Floats, Floats]:
-    """abs(L + c)/r - 1 per circle and frequency, (2, n), and its gradient in x, (2, n, 3)."""
-    Kp, ki, Td = np.exp(x)
-    s = 1j * w
-    Tf = Td / FILTER
-    slow = 1.0 / (1.0 + s * Tf + (s * Tf) ** 2 / 2.0)
-    filtered = plant * slow
-    integral, derivative = filtered * ki / s, filtered * Kp * s * Td
-    proportional = filtered * Kp
-    loop = proportional + integral + derivative
-    # d log F/d log Td = -(s Tf + (s Tf)^2) F
-    by = np.stack([proportional + derivative, integral, derivative - loop * (s * Tf + (s * Tf) ** 2) * slow], -1)
-    values, slopes = [], []
-    for c, r in circles(M):
-        away = loop + c
-        size = np.abs(away)
-        values.append(size / r - 1.0)
-        slopes.append((np.conj(away)[:, None] * by).real / (size * r)[:, None])
-    return np.stack(values), np.stack(slopes)
+def _starts(band: Band, M: float) -> list[PidSettings]:
+    """The best few hills of ki over Td, best first."""
+    lag = -np.unwrap(np.angle(band.plant))
+    turning = float(band.w[np.argmax(lag > min(np.pi, lag.max() * 0.999))])
+    derivatives = np.geomspace(min(SHORTEST / turning, band.residence / 2), band.residence, DERIVATIVES)
+    found = [best_in_gaps(band, M, float(Td)) for Td in derivatives]
+    ki = np.array([0.0, *(f.ki if f else 0.0 for f in found), 0.0])
+    hills = np.flatnonzero((ki[1:-1] >= ki[:-2]) & (ki[1:-1] >= ki[2:]) & (ki[1:-1] > 0))
+    best = sorted(hills, key=lambda k: -ki[k + 1])[:STARTS]
+    return [f for f in (found[k] for k in best) if f]

@@ -98,8 +98,8 @@ def test_first_order_plants_scale_and_meet_the_target(
 def _random_plant(rng: np.random.Generator) -> tuple[NDArray[np.float64], NDArray[np.float64], float]:
     order = int(rng.integers(2, 5))
     poles = list(-(10 ** rng.uniform(-1, 0.5, order)))
-    if order > 2 and rng.random() < 0.4:
-        zeta = rng.uniform(0.3, 0.9)
+    if order > 2 and rng.random() < 0.6:
+        zeta = rng.uniform(0.03, 0.9)
         pole = 10 ** rng.uniform(-0.5, 0.5) * complex(-zeta, np.sqrt(1 - zeta**2))
         poles[:2] = [pole, pole.conjugate()]
     den = np.poly(poles).real

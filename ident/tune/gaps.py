@@ -1,8 +1,8 @@
-"""Where to start a PID: a coarse search over Td and Kp that knows every gap between the forbidden ellipses.
+"""Where to start: a coarse search over Kp that knows every gap between the forbidden ellipses.
 
-With derivative action the allowed ki at given Kp and Td need not start at 0: each frequency forbids an interval
-of ki (see largest_ki), and what remains are the gaps between them. The best ki is the top of the highest gap in
-which the loop is stable, which a turn count on the grid tells.
+With derivative action, or on a plant that resonates, the allowed ki at a given Kp need not start at 0: each
+frequency forbids an interval of ki (see largest_ki), and what remains are the gaps between them. The best ki is
+the top of the highest gap in which the loop is stable, which a turn count on the grid tells.
 """
 
 from __future__ import annotations
@@ -12,31 +12,18 @@ from numpy.typing import NDArray
 
 from ident.loop.settings import PidSettings
 from ident.tune.band import Band
-from ident.tune.largest_ki import circles, largest_gain
+from ident.tune.ellipses import FILTER, circles, largest_gain
 
 Floats = NDArray[np.float64]
 
-FILTER = 10.0  # Td/Tf
 EVERY = 3  # of the band's frequencies: a start need not be exact
-DERIVATIVES, GAINS = 24, 40
+GAINS, LOWEST, HIGHEST = 40, 0.01, 5.0  # grid over Kp, in terms of the gain that a circle allows without ki
 DEEPEST = 6  # gaps looked into from the top
-STARTS = 3
 
 
-def pid_starts(band: Band, M: float) -> list[PidSettings]:
-    """A few stable PID settings near the target, best ki first, one per hill over Td; signs of a plant > 0."""
+def best_in_gaps(band: Band, M: float, Td: float) -> PidSettings | None:
+    """Stable settings near the best ki at a given Td (Tf = Td/10), sign of the plant taken out; None: no gap."""
     w, plant = band.w[::EVERY], band.plant[::EVERY]
-    lag = -np.unwrap(np.angle(plant))
-    turning = float(w[np.argmax(lag > min(np.pi, lag.max() * 0.999))])
-    derivatives = np.geomspace(min(0.03 / turning, band.residence / 2), band.residence, DERIVATIVES)
-    found = [_best_at(w, plant, M, float(Td)) for Td in derivatives]
-    ki = np.array([0.0, *(f.ki if f else 0.0 for f in found), 0.0])
-    hills = np.flatnonzero((ki[1:-1] >= ki[:-2]) & (ki[1:-1] >= ki[2:]) & (ki[1:-1] > 0))
-    best = sorted(hills, key=lambda k: -ki[k + 1])[:STARTS]
-    return [f for f in (found[k] for k in best) if f]
-
-
-def _best_at(w: Floats, plant: NDArray[np.complex128], M: float, Td: float) -> PidSettings | None:
     s = 1j * w
     Tf = Td / FILTER
     filtered = plant / (1.0 + s * Tf + (s * Tf) ** 2 / 2.0)
@@ -44,7 +31,7 @@ def _best_at(w: Floats, plant: NDArray[np.complex128], M: float, Td: float) -> P
     top = min(largest_gain(inverse / (1.0 + s * Td), c, r) for c, r in circles(M))
     if not np.isfinite(top):
         return None
-    Kp = top * np.geomspace(0.05, 5.0, GAINS)
+    Kp = top * np.geomspace(LOWEST, HIGHEST, GAINS)
     low, high = _forbidden(w, inverse, Kp, Td, M)
     order = np.argsort(low, axis=1)
     low, high = np.take_along_axis(low, order, 1), np.take_along_axis(high, order, 1)

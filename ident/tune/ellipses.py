@@ -1,0 +1,29 @@
+"""Ellipses: what the limits on abs(S) and abs(T) forbid at one frequency, and the answer when all is forbidden."""
+
+from __future__ import annotations
+
+import numpy as np
+from numpy.typing import NDArray
+
+from ident.errors import Refused
+
+FILTER = 10.0  # Td/Tf
+
+
+def not_found(M: float) -> Refused:
+    return Refused(
+        "no-settings-found",
+        f"No settings that keep Ms and Mt at or below {M:g} were found for this plant; try another target.",
+    )
+
+
+def circles(M: float) -> tuple[tuple[float, float], tuple[float, float]]:
+    """(c, r) of abs(L + c) >= r for abs(S) <= M and for abs(T) <= M."""
+    return (1.0, 1.0 / M), (M * M / (M * M - 1.0), M / (M * M - 1.0))
+
+
+def largest_gain(inverse: NDArray[np.complex128], c: float, r: float) -> float:
+    """The least Kp > 0 that some circle forbids without integral action."""
+    half = (r * np.abs(inverse)) ** 2 - (c * inverse.imag) ** 2
+    low = -c * inverse.real - np.sqrt(np.maximum(half, 0.0))
+    return float(np.min(low, initial=np.inf, where=(half > 0) & (low > 0)))
