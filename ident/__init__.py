@@ -8,21 +8,29 @@ from ident.plants import Fopdt
 from ident.record import LoopRecord, read_csv
 from ident.report import Report, analyse, summary
 from ident.tune import Tuning, tune
+from ident.watch import Drift, MarginDrift, Night, ParameterDrift, PracticalSize, drift, drift_history
 
 __all__ = [
+    "Drift",
     "Finding",
     "Fit",
     "Fopdt",
     "IdentError",
     "LoopRecord",
+    "MarginDrift",
     "Margins",
+    "Night",
     "NotIdentifiable",
+    "ParameterDrift",
     "PidSettings",
+    "PracticalSize",
     "ReadError",
     "Refused",
     "Report",
     "Tuning",
     "analyse",
+    "drift",
+    "drift_history",
     "fit",
     "margins",
     "read_csv",

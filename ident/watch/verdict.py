@@ -1,0 +1,127 @@
+"""Verdict: what one night says against a baseline, with the figures behind it.
+
+moved       jointly significant, and at least one of K, T, L, K/T significant itself and changed by its practical size
+no-news     otherwise, where such a change of neither K nor K/T would have shown: a night that cannot see must not calm
+not-moved   otherwise
+
+A parameter is "moved" only on a night that has moved: the joint test alone sets the rate of false alarms, and the
+parameters say what it was (Fisher's protected comparisons). It is "no-news" where a move of just its practical size
+would have met neither threshold on average; so a night that shows K may say nothing of T.
+"""
+
+from __future__ import annotations
+
+import math
+from dataclasses import dataclass
+from datetime import datetime
+from typing import Literal
+
+from ident.errors import Refused
+from ident.findings import Finding
+from ident.watch.baseline import Baseline
+from ident.watch.compare import Distance, along, joint
+from ident.watch.coordinates import Reading, place, readings
+from ident.watch.margin import MarginDrift
+from ident.watch.night import Night
+
+Verdict = Literal["moved", "not-moved", "no-news"]
+
+
+@dataclass(frozen=True, slots=True)
+class ParameterDrift:
+    """One parameter against the baseline; baseline, tonight, change and practical in `unit`.
+
+    statistic, threshold   squared change over its variance, and what it is held to; None without a night
+    practical              the least change that counts
+    visible                the least change that this night would have shown as often as not; None without a night
+    since                  as in Drift
+    """
+
+    verdict: Verdict
+    statistic: float | None
+    threshold: float | None
+    baseline: float
+    tonight: float | None
+    change: float | None
+    practical: float
+    visible: float | None
+    unit: str
+    since: datetime | str | None = None
+
+
+@dataclass(frozen=True, slots=True)
+class Drift:
+    """A night's verdict.
+
+    statistic, threshold, p   of the joint test; None without a night
+    since                     key of the first night of the current run of "moved", where a history was given
+    """
+
+    verdict: Verdict
+    statistic: float | None
+    threshold: float | None
+    p: float | None
+    parameters: dict[str, ParameterDrift]
+    margin: MarginDrift | None
+    findings: tuple[Finding, ...]
+    since: datetime | str | None = None
+
+
+def verdict(level: Baseline, night: Night | None, significance: float) -> Drift:
+    """The night's verdict, margin left out.
+
+    Raises Refused: significance-out-of-range, gain-units-differ.
+    """
+    if not 0.0 < significance < 0.5:
+        raise Refused("significance-out-of-range", "A significance is a probability of false alarm, such as 0.0027.")
+    before = readings(level.level.z)
+    if night is None:
+        unseen = {name: _unseen(level, name, reading) for name, reading in before.items()}
+        return Drift("no-news", None, None, None, unseen, None, level.findings)
+    if night.gain_unit != level.gain_unit:
+        raise Refused(
+            "gain-units-differ",
+            f'The night gives K in "{night.gain_unit}", the baseline in "{level.gain_unit}": bring both to one.',
+        )
+    z = place(night)
+    whole = joint(z, level.known(night), level.level, significance)
+    parameters = {
+        name: _parameter(level, night, name, reading, whole, significance) for name, reading in before.items()
+    }
+    seen = {p.verdict for p in parameters.values()}
+    if "moved" in seen:
+        said: Verdict = "moved"
+    elif {parameters["K"].verdict, parameters["K/T"].verdict} == {"no-news"}:
+        said = "no-news"
+    else:
+        said = "not-moved"
+    return Drift(said, whole.statistic, whole.threshold, whole.p, parameters, None, level.findings)
+
+
+def _parameter(
+    level: Baseline, night: Night, name: str, before: Reading, whole: Distance, significance: float
+) -> ParameterDrift:
+    known, now = level.level, readings(place(night))[name]
+    at_level, at_night = before.gradient, now.gradient
+    variance = float(
+        at_night @ level.known(night) @ at_night + at_level @ (known.scatter + known.covariance) @ at_level
+    )
+    estimated = (1.0 + known.share) * float(at_level @ known.scatter @ at_level)
+    change, practical = now.value - before.value, level.sizes[name]
+    own = along(change, variance, estimated, known.degrees, significance)
+    visible = math.sqrt(max(own.threshold, whole.threshold) * variance)
+    if whole.significant and own.significant and abs(change) >= practical:
+        said: Verdict = "moved"
+    else:
+        said = "no-news" if visible > practical else "not-moved"
+    return ParameterDrift(
+        said, own.statistic, own.threshold, before.value, now.value, change, practical, visible, _unit(level, name)
+    )
+
+
+def _unseen(level: Baseline, name: str, before: Reading) -> ParameterDrift:
+    return ParameterDrift("no-news", None, None, before.value, None, None, level.sizes[name], None, _unit(level, name))
+
+
+def _unit(level: Baseline, name: str) -> str:
+    return {"K": level.gain_unit, "K/T": f"({level.gain_unit})/s" if level.gain_unit else "1/s"}.get(name, "s")
