@@ -17,6 +17,7 @@ from dataclasses import dataclass
 
 import numpy as np
 from numpy.typing import NDArray
+from scipy.signal import lfilter
 
 from ident.estimate.layout import Layout, Stretch
 from ident.evidence.normal import RIDGE, solve_normal
@@ -85,30 +86,43 @@ class Cells:
 
 
 def cells(layout: Layout, T: float, first: int, count: int) -> Cells:
-    """Normal equations of cells first..first+count-1 at T; the layout's stretches are uniform."""
+    """Normal equations of cells first..first+count-1 at T; the layout's stretches are uniform.
+
+    Whitened by the layout's colour where it has one; the first rows, as many as its order, are then left out.
+    """
     freed = layout.freed
+    taps = layout.colour.taps
+    level = float(taps.sum())  # what is left of a constant
     gram = np.zeros((count, 3, 3))
     against = np.zeros((count, 3))
     nuisance = np.zeros((count, 3, 1 + len(freed)))
     nuisance_gram = np.zeros((1 + len(freed),) * 2)
     nuisance_against = np.zeros(1 + len(freed))
+    total = 0.0
     column = 0
+    shifts = first + 1 + np.arange(count)
     for stretch in layout.stretches:
-        speed = stretch.speed[stretch.skip :]
-        nuisance_gram[0, 0] += len(speed)
-        nuisance_against[0] += speed.sum()
+        skip = stretch.skip + layout.colour.order
+        if skip >= stretch.rows:
+            column += stretch.start != "settled"
+            continue
+        speed = _filtered(taps, stretch.speed[stretch.skip :])
+        total += float(speed @ speed)
+        nuisance_gram[0, 0] += level**2 * len(speed)
+        nuisance_against[0] += level * float(speed.sum())
         weights = [speed]
         if stretch.start != "settled":
             column += 1
             time = stretch.time[stretch.skip :] - stretch.time[stretch.skip]
-            decay = np.exp(-time[: int(np.searchsorted(time, FORGOTTEN * T))] / T)
+            few = max(int(np.searchsorted(time, FORGOTTEN * T)), len(taps))
+            decay = _filtered(taps, np.exp(-time[:few] / T))
             weights.append(decay)
-            nuisance_gram[0, column] = nuisance_gram[column, 0] = decay.sum()
+            nuisance_gram[0, column] = nuisance_gram[column, 0] = level * float(decay.sum())
             nuisance_gram[column, column] = decay @ decay
             nuisance_against[column] = decay @ speed[: len(decay)]
-        own, sums, crossed = _stretch_products(stretch, T, first, count, weights)
+        own, sums, crossed = _stretch_products(stretch, T, shifts, skip, taps, weights)
         gram += own
-        nuisance[:, :, 0] += sums
+        nuisance[:, :, 0] += level * sums
         against += crossed[0]
         if len(weights) > 1:
             nuisance[:, :, column] = crossed[1]
@@ -118,7 +132,6 @@ def cells(layout: Layout, T: float, first: int, count: int) -> Cells:
         np.concatenate([nuisance.reshape(count * 3, -1), nuisance_against[None]]).T,
     ).T
     onto, speed_onto = solve[:-1].reshape(count, 3, -1), solve[-1]
-    total = float(sum(s.speed[s.skip :] @ s.speed[s.skip :] for s in layout.stretches))
     return Cells(
         first,
         layout.step,
@@ -129,15 +142,22 @@ def cells(layout: Layout, T: float, first: int, count: int) -> Cells:
     )
 
 
+def _filtered(taps: Floats, values: Floats) -> Floats:
+    """Values passed through the taps, from the first row that has all of them."""
+    return values if len(taps) == 1 else np.asarray(lfilter(taps, [1.0], values)[len(taps) - 1 :])
+
+
 def _stretch_products(
-    stretch: Stretch, T: float, first: int, count: int, weights: list[Floats]
+    stretch: Stretch, T: float, shift: Ints, skip: int, taps: Floats, weights: list[Floats]
 ) -> tuple[Floats, Floats, list[Floats]]:
     """Gram (count, 3, 3), sums (count, 3) and products with each weight (count, 3) of the shifted columns."""
-    n, skip = stretch.rows, stretch.skip
+    n, count = stretch.rows, len(shift)
     gap = lag_gap(stretch.command, stretch.intervals, T)
     series = np.stack([stretch.command, gap, lag_gap_slope(gap, stretch.intervals, T)])
     history = np.array([stretch.command[0], 0.0, 0.0])  # before the first row: held and settled
-    shift = first + 1 + np.arange(count)
+    if len(taps) > 1:
+        series = lfilter(taps, [1.0], series - history[:, None], axis=1) + float(taps.sum()) * history[:, None]
+        history = float(taps.sum()) * history
     before = np.minimum(np.maximum(shift - skip, 0), n - skip)
     low, high = np.maximum(skip - shift, 0), np.maximum(n - shift, 0)
     high = np.maximum(high, low)

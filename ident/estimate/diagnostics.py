@@ -5,10 +5,9 @@ from __future__ import annotations
 import math
 
 import numpy as np
-from scipy.signal import lfilter
 
 from ident.estimate.layout import Layout
-from ident.estimate.refine import Point
+from ident.estimate.point import Point
 from ident.evidence.colour import Colour
 from ident.evidence.criteria import aicc, bic, fit_percent
 from ident.evidence.residuals import autocorrelation, left_in, ljung_box
@@ -21,39 +20,48 @@ COMMAND_LAGS = 8  # past commands tried against the residual
 
 
 def statistics(layout: Layout, at: Point, colour: Colour, validation: float | None) -> Statistics:
-    """Statistics of the residuals at the used rows; tests that need more rows than there are give None."""
-    n, p = layout.rows, at.jacobian.shape[0]
-    exact = at.rss <= 1e-20 * float(layout.speed @ layout.speed)
-    r = autocorrelation(at.residual, min(LAGS, n // 4))
+    """Statistics at the used rows, `colour` the noise's; tests that need more rows than there are give None.
+
+    Fit and rms are of the simulated response; criteria and tests of what the noise model leaves unexplained.
+    """
+    n, p = layout.rows, at.jacobian.shape[0] + colour.order
+    white = layout.whitened(colour)
+    left = white.whiten(at.raw)
+    power = float(at.raw @ at.raw)
+    exact = power <= 1e-20 * float(layout.speed @ layout.speed)
+    r = autocorrelation(left, min(LAGS, n // 4))
     tested = r[: min(TESTED_LAGS, n // 5)]
     largest = int(np.argmax(np.abs(r))) if len(r) else None
+    # A fit without residuals has no likelihood to speak of.
+    rss = float(left @ left)
     return Statistics(
-        fit_percent=fit_percent(layout.speed, layout.speed - at.residual),
-        rms_residual=math.sqrt(at.rss / n),
-        # A fit without residuals has no likelihood to speak of.
-        aicc=None if exact else aicc(at.rss, n, p),
-        bic=None if exact else bic(at.rss, n, p),
-        whiteness_p=None if exact or len(tested) == 0 else ljung_box(tested, n)[1],
+        fit_percent=fit_percent(layout.speed, layout.speed - at.raw),
+        rms_residual=math.sqrt(power / n),
+        aicc=None if exact else aicc(rss, n, p),
+        bic=None if exact else bic(rss, n, p),
+        whiteness_p=None if exact or len(tested) == 0 else ljung_box(tested, n, colour.order)[1],
         max_autocorrelation=None if exact or largest is None else float(r[largest]),
         max_autocorrelation_lag=None if exact or largest is None else largest + 1,
-        input_correlation_p=None if exact else input_correlation(layout, at, colour),
+        input_correlation_p=None if exact else _input_correlation(layout, white, at, left),
         validation_fit_percent=validation,
         rows_used=n,
+        noise_order=colour.order,
     )
 
 
-def input_correlation(layout: Layout, at: Point, colour: Colour) -> float:
-    """p that past commands explain nothing of the residual beyond the model, residuals whitened first."""
-    reach = max(int((at.L + 3.0 * at.T) / layout.step), COMMAND_LAGS)
+def _input_correlation(layout: Layout, white: Layout, at: Point, left: Floats) -> float:
+    """p that past commands explain nothing of the whitened residual beyond the model."""
+    reach = max(int((at.L + 3.0 * at.shape.lags) / layout.step), COMMAND_LAGS)
     longest = max(s.rows for s in layout.stretches)
     lags = np.unique(np.linspace(1, min(reach, longest // 2), COMMAND_LAGS).astype(int))
     own = at.jacobian.shape[0]
     rows = np.empty((1 + own + len(lags), layout.rows))
-    rows[0] = at.residual
-    rows[1 : 1 + own] = at.jacobian
+    rows[0] = left
+    rows[1 : 1 + own] = at.jacobian if not layout.colour.white else white.whiten(at.jacobian)
     for row, lag in zip(rows[1 + own :], lags, strict=True):
         _past_command(layout, int(lag), row)
-    return left_in(_whiten(rows, colour), own)
+    rows[1 + own :] = white.whiten(rows[1 + own :])
+    return left_in(rows, own)
 
 
 def _past_command(layout: Layout, lag: int, into: Floats) -> None:
@@ -65,9 +73,3 @@ def _past_command(layout: Layout, lag: int, into: Floats) -> None:
         into[at : at + early] = s.command[0]
         into[at + early : at + n] = s.command[s.skip + early - lag : s.rows - lag] if early < n else 0.0
         at += n
-
-
-def _whiten(rows: Floats, colour: Colour) -> Floats:
-    if colour.white:
-        return rows
-    return np.asarray(lfilter(np.concatenate(([1.0], colour.a)), [1.0], rows, axis=1)[:, len(colour.a) :])

@@ -7,11 +7,12 @@ import math
 import numpy as np
 
 from ident.errors import NotIdentifiable
+from ident.estimate.coloured import coloured
 from ident.estimate.diagnostics import statistics
 from ident.estimate.fit import Fit
 from ident.estimate.layout import Layout, lay_out
 from ident.estimate.noticed import findings
-from ident.estimate.refine import Point
+from ident.estimate.point import Point
 from ident.estimate.search import search, settle
 from ident.estimate.uncertainty import (
     Uncertainty,
@@ -22,8 +23,9 @@ from ident.estimate.uncertainty import (
     uncertainty,
 )
 from ident.estimate.validation import validation_fit
-from ident.evidence.colour import Colour, autoregression, coloured_covariance
+from ident.evidence.colour import WHITE, Colour, coloured_covariance, noise_colour
 from ident.evidence.estimates import Estimate
+from ident.evidence.feedback import feedback
 from ident.plants import Fopdt
 from ident.record import LoopRecord
 from ident.record.segments import Floats
@@ -49,16 +51,19 @@ def fit_fopdt(record: LoopRecord) -> Fit:
     at = search(layout)
     if any(s.start == "joined" for s in layout.stretches):
         layout, at = _leave_out_unknown_past(layout, at)
-    colour = autoregression(at.residual)
-    known = uncertainty(at, colour)
-    _require_known(at, colour, known)
+    colour = noise_colour(layout.parts(at.raw))
+    if not colour.white and feedback([s.command for s in layout.stretches], [s.speed for s in layout.stretches]):
+        layout, at = coloured(layout, at)
+        colour = layout.colour
+    known = uncertainty(layout, at, colour)
+    _require_known(layout, at, colour, known)
     profile = dead_time_profile(layout, at, known)
     figures = statistics(layout, at, colour, validation_fit(layout, at))
     parameters, derived = _estimates(record, at, known)
     parameters["L"] = dead_time_estimate(at.L, math.sqrt(known.log_covariance[2, 2]), profile)
     return Fit(
         name="fopdt",
-        model=Fopdt(at.K, at.T, at.L),
+        model=Fopdt(at.K, at.shape.lags, at.L),
         parameters=parameters,
         derived=derived,
         covariance=parameter_covariance(at, known),
@@ -90,17 +95,18 @@ def _leave_out_unknown_past(layout: Layout, at: Point) -> tuple[Layout, Point]:
     margin = 2.0 * layout.step
     for _ in range(4):
         shorter = layout.skipping(at.L + margin)
-        at = settle(shorter, at.T, at.L)
+        at = settle(shorter, at.shape.lags, at.L)
         if at.L <= shorter.stretches[-1].time[shorter.stretches[-1].skip] or shorter.stretches[-1].start != "joined":
             break
     return shorter, at
 
 
-def _require_known(at: Point, colour: Colour, known: Uncertainty) -> None:
+def _require_known(layout: Layout, at: Point, colour: Colour, known: Uncertainty) -> None:
     gain, ratio = math.sqrt(max(known.log_covariance[0, 0], 0.0)), known.std_log_ratio()
-    clear = abs(at.K) / math.sqrt(
-        max(coloured_covariance(np.delete(at.jacobian, (1, 2), axis=0), colour)[0, 0], 1e-300)
-    )
+    # Whitened slopes leave white noise of the colour's variance.
+    left = colour if layout.colour.white else Colour(WHITE.predictors, colour.variances[-1:])
+    shape_given = coloured_covariance(np.delete(at.jacobian, (1, 2), axis=0), left)
+    clear = abs(at.K) / math.sqrt(max(float(shape_given[0, 0]), 1e-300))
     if at.K == 0.0 or clear < CLEAR or not (gain <= KNOWN or ratio <= KNOWN):
         raise NotIdentifiable(
             "not-identifiable",
@@ -115,9 +121,9 @@ def _estimates(record: LoopRecord, at: Point, known: Uncertainty) -> tuple[dict[
     y, u = _bare(record.speed_unit or "speed"), _bare(record.command_unit or "command")
     parameters = {
         "K": log_estimate(at.K, math.sqrt(max(c[0, 0], 0.0)), f"{y}/{u}"),
-        "T": log_estimate(at.T, math.sqrt(max(c[1, 1], 0.0)), "s"),
+        "T": log_estimate(at.shape.lags, math.sqrt(max(c[1, 1], 0.0)), "s"),
     }
-    return parameters, {"K/T": log_estimate(at.K / at.T, known.std_log_ratio(), f"{y}/({u}·s)")}
+    return parameters, {"K/T": log_estimate(at.K / at.shape.lags, known.std_log_ratio(), f"{y}/({u}·s)")}
 
 
 def _bare(unit: str) -> str:
@@ -131,7 +137,7 @@ def _on_record(record: LoopRecord, layout: Layout, at: Point) -> Floats:
     for s in layout.stretches:
         n = s.rows - s.skip
         part = slice(s.row0 + s.skip, s.row0 + s.rows)
-        simulated[part] = s.speed[s.skip :] - at.residual[row : row + n] + layout.speed_level
+        simulated[part] = s.speed[s.skip :] - at.raw[row : row + n] + layout.speed_level
         row += n
     simulated.flags.writeable = False
     return simulated

@@ -19,6 +19,7 @@ from typing import Literal
 import numpy as np
 
 from ident.errors import NotIdentifiable
+from ident.evidence.colour import WHITE, Colour
 from ident.record import LoopRecord, Segment
 from ident.record.segments import Floats
 
@@ -64,6 +65,7 @@ class Layout:
     """All stretches of a record, with the levels taken off them.
 
     speed       (rows,), of the rows that enter the residuals, stretch after stretch
+    target      the same, whitened by `colour`: what the sum of squares is taken of
     step        s, typical sample time: the median interval;  duration  s, of all stretches together
     """
 
@@ -73,6 +75,8 @@ class Layout:
     speed: Floats
     step: float
     duration: float
+    colour: Colour
+    target: Floats
 
     @property
     def rows(self) -> int:
@@ -89,8 +93,23 @@ class Layout:
         """Whether every stretch has its rows on one grid."""
         return all(s.step is not None for s in self.stretches)
 
+    def whitened(self, colour: Colour) -> Layout:
+        """The same rows, their residuals to be whitened by a colour."""
+        plain = replace(self, colour=colour, target=self.speed)
+        return replace(plain, target=plain.whiten(self.speed))
+
+    def whiten(self, rows: Floats) -> Floats:
+        """Rows (..., rows) whitened, each stretch by itself."""
+        if self.colour.white:
+            return rows
+        return np.concatenate([self.colour.whiten(part) for part in self.parts(rows)], axis=-1)
+
+    def parts(self, rows: Floats) -> list[Floats]:
+        """Rows (..., rows) cut into the stretches."""
+        return np.split(rows, np.cumsum([s.rows - s.skip for s in self.stretches])[:-1], axis=-1)
+
     def skipping(self, dead_time: float) -> Layout:
-        """The same stretches, each joined one without the rows within `dead_time` of its start."""
+        """The same stretches, not whitened, each joined one without the rows within `dead_time` of its start."""
         return levelled(
             tuple(
                 replace(
@@ -203,4 +222,6 @@ def levelled(stretches: tuple[Stretch, ...], command_level: float, speed_level: 
         speed,
         float(np.median(steps)) if steps is not None else 0.0,
         float(sum(s.time[-1] for s in used)),
+        WHITE,
+        speed,
     )

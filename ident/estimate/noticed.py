@@ -4,8 +4,9 @@ from __future__ import annotations
 
 from collections.abc import Iterator
 
+from ident.estimate.first_order import LONGEST_T
 from ident.estimate.layout import Layout
-from ident.estimate.refine import LONGEST_T, Point
+from ident.estimate.point import Point
 from ident.evidence.estimates import Estimate
 from ident.evidence.statistics import Statistics
 from ident.findings import Finding
@@ -48,16 +49,16 @@ def _start(layout: Layout) -> Iterator[Finding]:
 def _integrating(
     layout: Layout, at: Point, parameters: dict[str, Estimate], derived: dict[str, Estimate]
 ) -> Iterator[Finding]:
-    at_limit = at.T >= 0.99 * LONGEST_T * layout.duration
+    at_limit = at.shape.lags >= 0.99 * LONGEST_T * layout.duration
     std = parameters["T"].std
-    if at_limit or (at.T > 0.5 * layout.duration and (std is None or std > POORLY_KNOWN * at.T)):
+    if at_limit or (at.shape.lags > 0.5 * layout.duration and (std is None or std > POORLY_KNOWN * at.shape.lags)):
         ratio = derived["K/T"]
         yield Finding(
             "integrating",
             "warning",
             "The speed goes on changing for as long as the command stands off: within this log the plant "
             f"integrates. K and T are poorly known, their ratio K/T = {ratio.value:.4g} {ratio.unit} is what counts.",
-            {"duration_s": layout.duration, "T_s": at.T, "K_per_T": ratio.value, "K_per_T_std": ratio.std},
+            {"duration_s": layout.duration, "T_s": at.shape.lags, "K_per_T": ratio.value, "K_per_T_std": ratio.std},
         )
 
 

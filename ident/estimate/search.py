@@ -12,8 +12,10 @@ import math
 import numpy as np
 
 from ident.estimate.cells import Cells, cells
+from ident.estimate.first_order import FirstOrder
 from ident.estimate.layout import Layout
-from ident.estimate.refine import Point, refine
+from ident.estimate.point import Point
+from ident.estimate.refine import refine
 from ident.estimate.start import starts, thinning
 
 FINER = 8  # block means shrink by this factor from level to level
@@ -34,23 +36,26 @@ def search(layout: Layout) -> Point:
 
 def settle(layout: Layout, T: float, L: float) -> Point:
     """Refine from (T, L), then look at the neighbouring cells from the refined T and keep the least."""
+    shape = FirstOrder(T)
     if not layout.uniform:
         h = layout.step
-        return min((refine(layout, T, max(L + s * h, 0.0)) for s in (-0.5, 0.0, 0.5)), key=lambda p: p.rss)
-    best = refine(layout, T, L)
-    rss, T_there, L_there = around(layout, best).minima()
+        return min((refine(layout, shape, L + s * h) for s in (-0.5, 0.0, 0.5)), key=lambda p: p.rss)
+    best = refine(layout, shape, L)
+    at = FirstOrder(best.shape.lags)
+    rss, T_there, L_there = around(layout, at.T, best.L).minima()
+    here = rss[int(best.L / layout.step) - max(int(best.L / layout.step) - NEIGHBOURS, 0)]
     i = int(np.argmin(rss))
-    if rss[i] < best.rss * (1.0 - 1e-9) and abs(L_there[i] - best.L) > 0.5 * layout.step:
-        nearby = float(np.clip(np.nan_to_num(T_there[i], nan=best.T), 0.5 * best.T, 2.0 * best.T))
-        best = min(best, refine(layout, nearby, float(L_there[i])), key=lambda p: p.rss)
+    if rss[i] < here - 1e-9 * best.rss and abs(L_there[i] - best.L) > 0.5 * layout.step:
+        nearby = float(np.clip(np.nan_to_num(T_there[i], nan=at.T), 0.5 * at.T, 2.0 * at.T))
+        best = min(best, refine(layout, FirstOrder(nearby), float(L_there[i])), key=lambda p: p.rss)
     return best
 
 
-def around(layout: Layout, at: Point, neighbours: int = NEIGHBOURS) -> Cells:
-    """The cells within `neighbours` of a point, at its T."""
-    cell = int(at.L / layout.step)
+def around(layout: Layout, T: float, L: float, neighbours: int = NEIGHBOURS) -> Cells:
+    """The cells within `neighbours` of a dead time."""
+    cell = int(L / layout.step)
     first = max(cell - neighbours, 0)
-    return cells(layout, at.T, first, cell - first + neighbours + 1)
+    return cells(layout, T, first, cell - first + neighbours + 1)
 
 
 def _follow(layout: Layout, T: float, L: float, blocks: int) -> tuple[float, float, float]:

@@ -1,7 +1,7 @@
-"""Uncertainty of a FOPDT: covariance under the residuals' colour, intervals, the dead time's profile.
+"""Uncertainty: covariance of a fitted point, intervals, the dead time's profile.
 
-The slopes are taken in log|K/T|, log T and L. Where a record is short against T only the ratio K/T is known, and
-in these coordinates that is one good and one poor direction instead of a singular matrix.
+The slopes are taken in log|K/T|, log T and L. Where a record is short against T only the ratio K/T is known, and in
+these coordinates that is one good and one poor direction instead of a singular matrix.
 """
 
 from __future__ import annotations
@@ -11,11 +11,12 @@ from dataclasses import dataclass
 
 import numpy as np
 
+from ident.estimate.coloured import noise_slopes
 from ident.estimate.fit import DeadTimeProfile
 from ident.estimate.layout import Layout
-from ident.estimate.refine import Point
+from ident.estimate.point import Point
 from ident.estimate.search import around
-from ident.evidence.colour import Colour, coloured_covariance
+from ident.evidence.colour import WHITE, Colour, coloured_covariance
 from ident.evidence.estimates import NORMAL_95, Covariance, Estimate
 from ident.record.segments import Floats
 
@@ -27,7 +28,11 @@ PROFILE_POINTS = 121
 
 @dataclass(frozen=True, slots=True, eq=False)
 class Uncertainty:
-    """log_covariance: (3, 3) of log|K|, log T and L (s);  inflation: variance of L over that under white noise."""
+    """Of a first-order point.
+
+    log_covariance   (3, 3) of log|K|, log T and L (s)
+    inflation        variance of L over the one that the residuals' sum of squares alone would give
+    """
 
     log_covariance: Floats
     inflation: float
@@ -38,17 +43,27 @@ class Uncertainty:
         return math.sqrt(max(c[0, 0] + c[1, 1] - 2.0 * c[0, 1], 0.0))
 
 
-def uncertainty(at: Point, colour: Colour) -> Uncertainty:
-    """First-order covariance at the least-squares point."""
+def uncertainty(layout: Layout, at: Point, colour: Colour) -> Uncertainty:
+    """First-order covariance at a least-squares point.
+
+    Whitened residuals: plant and noise terms are known together, as under feedback they are correlated. Plain ones:
+    `colour` is theirs, and widens the covariance.
+    """
     slopes = at.jacobian.copy()
     slopes[0] *= at.K  # log|K/T| at fixed T
     slopes[1] += slopes[0]  # log T at fixed K/T
-    coloured = coloured_covariance(slopes, colour)[:3, :3]
-    degrees = at.jacobian.shape[1] / max(at.jacobian.shape[1] - at.jacobian.shape[0], 1)
-    white = coloured_covariance(slopes, Colour(np.zeros(0), at.rss / at.jacobian.shape[1]))[:3, :3]
+    rows = slopes.shape[1]
+    plain = Colour(WHITE.predictors, np.array([at.rss / rows]))
+    white = coloured_covariance(slopes, plain)[:3, :3]
+    if not layout.colour.white:
+        slopes = np.vstack((slopes, noise_slopes(layout, at)))
+        true = coloured_covariance(slopes, plain)[:3, :3]
+    else:
+        true = coloured_covariance(slopes, colour)[:3, :3]
+    true = true * rows / max(rows - len(slopes), 1)
     to_logs = np.array([[1.0, 1.0, 0.0], [0.0, 1.0, 0.0], [0.0, 0.0, 1.0]])
-    inflation = float(coloured[2, 2] / white[2, 2]) if white[2, 2] > 0 else 1.0
-    return Uncertainty(degrees * to_logs @ coloured @ to_logs.T, inflation)
+    inflation = float(true[2, 2] / white[2, 2]) if white[2, 2] > 0 else 1.0
+    return Uncertainty(to_logs @ true @ to_logs.T, inflation)
 
 
 def log_estimate(value: float, std_log: float, unit: str) -> Estimate:
@@ -65,16 +80,16 @@ def log_estimate(value: float, std_log: float, unit: str) -> Estimate:
 def dead_time_profile(layout: Layout, at: Point, known: Uncertainty) -> DeadTimeProfile | None:
     """The profile over the cells around the minimum; None where rows are not on one grid or fit exactly."""
     std = math.sqrt(known.log_covariance[2, 2])
-    if not layout.uniform or at.rss <= 1e-20 * float(layout.speed @ layout.speed) or std == 0.0:
+    if not layout.uniform or at.rss <= 1e-20 * float(layout.target @ layout.target) or std == 0.0:
         return None
     h = layout.step
     reach = max(1, min(math.ceil(4.5 * std / h), PROFILE_CELLS))
-    window = around(layout, at, reach)
+    window = around(layout, at.shape.lags, at.L, reach)
     low = max(at.L - 4.5 * std, window.first * h)
     high = min(at.L + 4.5 * std, (window.first + len(window.gram)) * h)
     L = np.unique(np.concatenate((np.linspace(low, high, PROFILE_POINTS), [at.L])))
     rss, _ = window.profile(L)
-    ratio = np.maximum(rss / at.rss, 1.0)
+    ratio = np.maximum(rss / float(rss.min()), 1.0)
     return DeadTimeProfile(L, ratio, math.exp(CHI2_95 * known.inflation / layout.rows))
 
 
@@ -90,7 +105,7 @@ def dead_time_estimate(L: float, std: float, profile: DeadTimeProfile | None) ->
                 low = 0.0
             if allowed[-1] < len(profile.L) - 1:
                 high = _crossing(profile, int(allowed[-1]), 1)
-    return Estimate(L, std, (low, high), "s")
+    return Estimate(L, std, (min(low, L), max(high, L)), "s")
 
 
 def _crossing(profile: DeadTimeProfile, inside: int, step: int) -> float:
@@ -102,7 +117,6 @@ def _crossing(profile: DeadTimeProfile, inside: int, step: int) -> float:
 
 def parameter_covariance(at: Point, known: Uncertainty) -> Covariance:
     """Covariance of K, T, L in their own units, to first order."""
-    scale = np.diag([abs(at.K), at.T, 1.0])
-    sign = np.diag([math.copysign(1.0, at.K), 1.0, 1.0])
-    matrix = sign @ scale @ known.log_covariance @ scale @ sign
+    scale = np.diag([at.K, at.shape.lags, 1.0])
+    matrix = scale @ known.log_covariance @ scale
     return Covariance(("K", "T", "L"), tuple(tuple(float(v) for v in row) for row in matrix))

@@ -7,8 +7,10 @@ from dataclasses import replace
 import numpy as np
 
 from ident.errors import NotIdentifiable
+from ident.estimate.columns import columns
 from ident.estimate.layout import SHORTEST, Layout, Stretch, levelled
-from ident.estimate.refine import Point, point, refine
+from ident.estimate.point import Point
+from ident.estimate.refine import refine
 from ident.evidence.criteria import fit_percent
 
 TRAINED = 0.7  # share of the rows that the model is fitted on
@@ -25,12 +27,12 @@ def validation_fit(layout: Layout, at: Point) -> float | None:
     if train is None or not _moves(layout, row):
         return None
     try:
-        trained = refine(train, at.T, at.L, ROUGHLY)
+        trained = refine(train.whitened(layout.colour), at.shape, at.L, ROUGHLY)
     except (NotIdentifiable, np.linalg.LinAlgError):
         return None
     # The same (T, L) on the whole record; gain, offset and known transients are the trained ones.
-    whole = point(layout, trained.T, trained.L)
-    response, offset_and_transients = whole.jacobian[0], whole.jacobian[3:]
+    whole = columns(layout, trained.shape, trained.L)
+    response, offset_and_transients = whole.response, whole.nuisance
     known = len(trained.nuisance)
     base = trained.K * response + trained.nuisance @ offset_and_transients[:known]
     # A stretch that begins later has an initial state of its own: taken from that stretch.

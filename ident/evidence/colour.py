@@ -1,12 +1,14 @@
-"""Colour: an autoregressive model of the residuals, and what it does to a least-squares covariance.
+"""Colour: an autoregressive model of noise, whitening by it, and what it does to a least-squares covariance.
 
-With residuals of covariance R the estimate (J'J)^-1 J'e has covariance (J'J)^-1 J'RJ (J'J)^-1, wider (or narrower)
-than white noise of the same power would give. R follows from an AR(p) model whose order the data choose.
+The reflection coefficients are Burg's, which stay below 1 and, unlike those of the sample autocorrelation, are nearly
+unbiased for slow noise (Burg 1975, thesis, Stanford; Kay, Modern Spectral Estimation, 1988). Levinson's recursion gives
+the predictor of every lower order on the way, so the first rows of a record are whitened exactly too.
 """
 
 from __future__ import annotations
 
 import math
+from collections.abc import Sequence
 from dataclasses import dataclass
 
 import numpy as np
@@ -17,48 +19,95 @@ from ident.evidence.normal import lengths
 
 Floats = NDArray[np.float64]
 
+MOST = 60  # highest order looked at
+ROWS_PER_ORDER = 20
+# A short model passes the criterion and still makes slow noise look faster than it is, and intervals too narrow:
+# coloured noise gets half as many terms again as the criterion asks for, and at least so many.
+AT_LEAST, MORE = 20, 1.5
+
 
 @dataclass(frozen=True, slots=True, eq=False)
 class Colour:
-    """e[k] + a[0] e[k-1] + ... = w[k], w white of variance `variance`; a of length 0 is white noise."""
+    """e[k] + a[0] e[k-1] + ... + a[p-1] e[k-p] = w[k], w white.
 
-    a: Floats
-    variance: float
+    predictors  a of the orders 0..p;  variances  of w for each: variances[-1] is the model's
+    """
+
+    predictors: tuple[Floats, ...]
+    variances: Floats
+
+    @property
+    def order(self) -> int:
+        return len(self.predictors) - 1
 
     @property
     def white(self) -> bool:
-        return len(self.a) == 0
+        return self.order == 0
+
+    @property
+    def variance(self) -> float:
+        return float(self.variances[-1])
+
+    @property
+    def taps(self) -> Floats:
+        """1, a[0], ..., a[p-1]."""
+        return np.concatenate(([1.0], self.predictors[-1]))
+
+    def whiten(self, rows: Floats) -> Floats:
+        """Rows (..., n) of one unbroken run, whitened; the first p with the lower orders, at equal variance."""
+        if self.white:
+            return rows
+        out = np.asarray(lfilter(self.taps, [1.0], rows, axis=-1))
+        for k in range(min(self.order, rows.shape[-1])):
+            ahead = rows[..., k] + rows[..., :k][..., ::-1] @ self.predictors[k]
+            out[..., k] = ahead * math.sqrt(self.variances[-1] / self.variances[k])
+        return out
 
 
-def autoregression(residual: Floats, most: int = 20) -> Colour:
-    """AR model of a residual (n,), mean removed: order 0..most with the least AICc, by Levinson's recursion.
+WHITE = Colour((np.zeros(0),), np.ones(1))
 
-    (Yule and Walker's equations; Durbin 1960, Rev. Int. Stat. Inst. 28, 233-244.)
-    """
-    n = len(residual)
-    most = max(min(most, n // 10), 0)
-    e = residual - residual.mean()
-    c = np.array([e @ e, *(e[k:] @ e[:-k] for k in range(1, most + 1))]) / n
-    if c[0] == 0.0:
-        return Colour(np.zeros(0), 0.0)
-    a, variance = np.zeros(0), float(c[0])
-    best, least = Colour(a, variance), n * math.log(variance)
-    for p in range(1, most + 1):
-        reflection = -(float(c[p]) + float(a @ c[p - 1 : 0 : -1])) / variance
-        a = np.append(a + reflection * a[::-1], reflection)
-        variance *= 1.0 - reflection**2
-        if variance <= 0.0:
+
+def noise_colour(parts: Sequence[Floats]) -> Colour:
+    """The colour of noise seen in unbroken runs, each (n,), zero-mean: white where BIC finds no more in it."""
+    n = sum(len(part) for part in parts)
+    most = max(min(MOST, n // ROWS_PER_ORDER, min(len(part) for part in parts) // 4), 0)
+    power = sum(float(part @ part) for part in parts) / n
+    if power == 0.0 or most == 0:
+        return Colour((np.zeros(0),), np.array([power]))
+    full = _burg(parts, most, power)
+    order = np.arange(full.order + 1)
+    likelihood = n * np.log(np.maximum(full.variances, 1e-300))
+    if int(np.argmin(likelihood + order * math.log(n))) == 0:
+        return Colour(full.predictors[:1], full.variances[:1])
+    aicc = likelihood + 2.0 * order + 2.0 * order * (order + 1) / (n - order - 1)
+    chosen = min(max(math.ceil(MORE * int(np.argmin(aicc))), AT_LEAST), full.order)
+    return Colour(full.predictors[: chosen + 1], full.variances[: chosen + 1])
+
+
+def _burg(parts: Sequence[Floats], most: int, power: float) -> Colour:
+    forward, backward = [p.copy() for p in parts], [p.copy() for p in parts]
+    a = np.zeros(0)
+    predictors, variances = [a], [power]
+    for _ in range(most):
+        ahead, behind = [f[1:] for f in forward], [b[:-1] for b in backward]
+        across = sum(float(f @ b) for f, b in zip(ahead, behind, strict=True))
+        both = sum(float(f @ f) + float(b @ b) for f, b in zip(ahead, behind, strict=True))
+        reflection = -2.0 * across / both if both > 0.0 else 0.0
+        if abs(reflection) >= 1.0:
             break
-        criterion = n * math.log(variance) + 2.0 * p + 2.0 * p * (p + 1) / (n - p - 1)
-        if criterion < least:
-            best, least = Colour(a, variance), criterion
-    return best
+        forward = [f + reflection * b for f, b in zip(ahead, behind, strict=True)]
+        backward = [b + reflection * f for f, b in zip(ahead, behind, strict=True)]
+        a = np.append(a + reflection * a[::-1], reflection)
+        predictors.append(a)
+        variances.append(variances[-1] * (1.0 - reflection**2))
+    return Colour(tuple(predictors), np.array(variances))
 
 
 def coloured_covariance(jacobian: Floats, colour: Colour) -> Floats:
     """Covariance (k, k) of a least-squares estimate with slopes (k, n) and residuals of this colour.
 
-    J'RJ = variance * |J passed backwards through 1/A|^2, as R = variance (A'A)^-1 for a filter matrix A.
+    With residuals of covariance R it is (JJ')^-1 JRJ' (JJ')^-1, and JRJ' = variance |J passed backwards through
+    1/A|^2, as R = variance (A'A)^-1 for a filter matrix A.
     """
     gram = jacobian @ jacobian.T
     scale = lengths(gram)
@@ -66,6 +115,6 @@ def coloured_covariance(jacobian: Floats, colour: Colour) -> Floats:
     inverse /= scale[:, None] * scale
     if colour.white:
         return np.asarray(colour.variance * inverse)
-    passed = lfilter([1.0], np.concatenate(([1.0], colour.a)), jacobian[:, ::-1], axis=1)
+    passed = lfilter([1.0], colour.taps, jacobian[:, ::-1], axis=1)
     middle = colour.variance * (passed @ passed.T)
     return np.asarray(inverse @ middle @ inverse)

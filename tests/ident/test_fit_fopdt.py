@@ -10,6 +10,7 @@ import pytest
 
 import ident
 from ident.estimate.columns import columns
+from ident.estimate.first_order import FirstOrder
 from ident.estimate.layout import lay_out
 from ident.plants.hold import lag_gap, lag_gap_slope
 from tests.reference.held_fopdt import coefficients, respond
@@ -53,7 +54,7 @@ def test_reference_equation_has_the_published_coefficients(
 def test_response_at_samples_equals_the_published_equation(L: float) -> None:
     u = random_binary(400)
     layout = lay_out(ident.LoopRecord(H * np.arange(400), u, respond(u, H, 1.0, 0.5, L)))
-    response = columns(layout, 0.5, L).response + u[0]
+    response = columns(layout, FirstOrder(0.5), L).response + u[0]
     assert response == pytest.approx(respond(u, H, 1.0, 0.5, L), abs=1e-12)
 
 
@@ -68,11 +69,17 @@ def test_irregular_axis_gives_the_same_response_as_the_uniform_one() -> None:
 def test_slopes_are_the_derivatives() -> None:
     u = random_binary(400)
     layout = lay_out(ident.LoopRecord(H * np.arange(400), u, respond(u, H, 1.0, 0.5, 0.1)))
-    at = columns(layout, 0.5, 0.1053)
+    at = columns(layout, FirstOrder(0.5), 0.1053)
     eps = 1e-6
-    slope_T = (columns(layout, 0.5 + eps, 0.1053).response - columns(layout, 0.5 - eps, 0.1053).response) / (2 * eps)
-    slope_L = (columns(layout, 0.5, 0.1053 + eps).response - columns(layout, 0.5, 0.1053 - eps).response) / (2 * eps)
-    assert at.slope_T == pytest.approx(slope_T, abs=1e-8)
+    slope_T = (
+        columns(layout, FirstOrder(0.5 + eps), 0.1053).response
+        - columns(layout, FirstOrder(0.5 - eps), 0.1053).response
+    ) / (2 * eps)
+    slope_L = (
+        columns(layout, FirstOrder(0.5), 0.1053 + eps).response
+        - columns(layout, FirstOrder(0.5), 0.1053 - eps).response
+    ) / (2 * eps)
+    assert at.slopes[0] / 0.5 == pytest.approx(slope_T, abs=1e-8)
     assert at.slope_L == pytest.approx(slope_L, abs=1e-8)
 
 
@@ -166,8 +173,8 @@ def test_errors_reach_the_cramer_rao_bound_and_intervals_cover() -> None:
     K, T, L, sigma = 2.0, 0.5, 0.105, 0.05
     u = np.where(np.arange(500) < 50, 0.0, 1.0)
     clean = respond(u, H, K, T, L)
-    at = columns(lay_out(record_of(u, clean)), T, L)
-    slopes = np.vstack((at.response, K * at.slope_T, K * at.slope_L, at.nuisance))
+    at = columns(lay_out(record_of(u, clean)), FirstOrder(T), L)
+    slopes = np.vstack((at.response, K * at.slopes[0] / T, K * at.slope_L, at.nuisance))
     bound = sigma * np.sqrt(np.diag(np.linalg.inv(slopes @ slopes.T)))[:3]
     rng = np.random.default_rng(11)
     errors, inside = [], []

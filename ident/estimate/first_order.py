@@ -1,0 +1,46 @@
+"""FirstOrder: the shape of a FOPDT's answer, 1/(T s + 1)."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+
+import numpy as np
+
+from ident.estimate.layout import Layout, Stretch
+from ident.estimate.shape import delayed
+from ident.plants.hold import lag_gap, lag_gap_slope
+from ident.record.segments import Floats
+
+LONGEST_T = 100.0  # durations of the record; beyond it the plant integrates as far as the log can tell
+SHORTEST_T = 0.02  # steps
+
+
+@dataclass(frozen=True, slots=True)
+class FirstOrder:
+    """1/(T s + 1), T in s."""
+
+    T: float
+
+    @property
+    def lags(self) -> float:
+        """Sum of the time constants, s."""
+        return self.T
+
+    def moved(self, log_steps: Floats, layout: Layout) -> FirstOrder:
+        """T after a step of log T, within what the layout can tell."""
+        T = self.T * float(np.exp(np.clip(log_steps[0], -1.5, 1.5)))
+        return FirstOrder(float(np.clip(T, SHORTEST_T * layout.step, LONGEST_T * layout.duration)))
+
+    def answer(self, stretch: Stretch, L: float) -> tuple[Floats, Floats, Floats]:
+        """At the used rows: the answer to the delayed command (n,), its slope in log T (1, n), its slope in L (n,)."""
+        T = self.T
+        gap = lag_gap(stretch.command, stretch.intervals, T)
+        at = delayed(stretch, L, (stretch.command, gap, lag_gap_slope(gap, stretch.intervals, T)))
+        decay = np.exp(-at.since / T)
+        held, q, q_T = at.series
+        return held + decay * q, (decay * (T * q_T + at.since / T * q))[None], decay * q / T
+
+    def transients(self, time: Floats) -> tuple[Floats, Floats]:
+        """Free motions from t = 0: exp(-t/T) (1, n), and its slope in log T (1, 1, n)."""
+        decay = np.exp(-time / self.T)
+        return decay[None], (decay * time / self.T)[None, None]

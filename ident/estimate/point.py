@@ -1,0 +1,76 @@
+"""Point: a shape and dead time with their best gain, offset and transients, and the slopes of the whole model."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+
+import numpy as np
+
+from ident.estimate.columns import Columns, columns
+from ident.estimate.layout import Layout
+from ident.estimate.shape import Shape
+from ident.evidence.normal import solve_normal
+from ident.record.segments import Floats
+
+NEARLY_EXACT = 1e-10  # of the speed's sum of squares
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class Point:
+    """A model at (shape, L) with its best linear part, k the number of the shape's time constants.
+
+    K, nuisance   gain; offset and transient amplitudes
+    raw           (rows,), speed less the model
+    residual      (rows,), the same whitened;  rss  its sum of squares
+    jacobian      (2 + k + nuisance, rows), whitened: slopes of the model in K, the shape's logarithms, L, and the
+                  nuisance parameters
+    """
+
+    shape: Shape
+    L: float
+    K: float
+    nuisance: Floats
+    raw: Floats
+    residual: Floats
+    rss: float
+    jacobian: Floats
+
+    @property
+    def log_count(self) -> int:
+        """k."""
+        return len(self.jacobian) - 2 - len(self.nuisance)
+
+
+def point(layout: Layout, shape: Shape, L: float, side: int = 1) -> Point:
+    """The best model at a given shape and L; `side` -1 takes the slope in L below a kink."""
+    at = columns(layout, shape, L)
+    slope_L = at.slope_L if side > 0 else _slope_below(layout, shape, L)
+    linear = np.vstack((at.response, at.nuisance))
+    weighed = layout.whiten(linear)
+    solution = solve(weighed, layout.target)
+    residual = layout.target - solution @ weighed
+    if float(residual @ residual) < NEARLY_EXACT * float(layout.target @ layout.target):
+        # Normal equations lose half the digits; without noise they are wanted back.
+        solution = solution + solve(weighed, residual)
+        residual = layout.target - solution @ weighed
+    K, nuisance = float(solution[0]), solution[1:]
+    moving = np.vstack((_log_slopes(at, K, nuisance), K * slope_L))
+    raw = residual if layout.colour.white else layout.speed - solution @ linear
+    jacobian = np.vstack((weighed[:1], layout.whiten(moving), weighed[1:]))
+    return Point(shape, L, K, nuisance, raw, residual, float(residual @ residual), jacobian)
+
+
+def solve(rows: Floats, right: Floats) -> Floats:
+    """Least squares of `right` (n,) on the rows (k, n)."""
+    return solve_normal(rows @ rows.T, rows @ right)
+
+
+def _log_slopes(at: Columns, K: float, nuisance: Floats) -> Floats:
+    if len(nuisance) == 1:  # an offset does not move with the shape
+        return K * at.slopes
+    return np.asarray(K * at.slopes + np.einsum("m,kmn->kn", nuisance, at.nuisance_slopes))
+
+
+def _slope_below(layout: Layout, shape: Shape, L: float) -> Floats:
+    # One part in 10^9 of a step below: inside the lower cell, where the slope is the other one.
+    return columns(layout, shape, L - 1e-9 * layout.step).slope_L

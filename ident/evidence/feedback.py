@@ -1,0 +1,48 @@
+"""Feedback: does a command answer to the speed? A test of causality on the data alone."""
+
+from __future__ import annotations
+
+import numpy as np
+from numpy.typing import NDArray
+from scipy.stats import chi2
+
+Floats = NDArray[np.float64]
+
+SELDOM = 0.2  # share of rows with a move of the command, below which nobody closes a loop with it
+SHARE = 0.02  # of the command's moves that the speed must explain
+CLEARLY = 1e-6
+LAGS = 3
+
+
+def feedback(commands: list[Floats], speeds: list[Floats]) -> bool:
+    """Whether the command's moves follow from present and past speeds beyond its own past.
+
+    In an open loop the speed answers to earlier commands only, so given those it says nothing of the next move
+    (Granger 1969, Econometrica 37, 424-438). Runs of rows without a gap, (n,) each.
+    """
+    moves = np.concatenate([np.diff(u) for u in commands])
+    if not np.any(moves) or float(np.mean(moves != 0.0)) <= SELDOM:
+        return False
+    own, answer, target = [], [], []
+    for u, y in zip(commands, speeds, strict=True):
+        n = len(u)
+        if n <= 4 * LAGS:
+            continue
+        past = [u[LAGS - i : n - i] for i in range(1, LAGS + 1)]
+        own.append(np.stack([np.ones(n - LAGS), *past]))
+        answer.append(np.stack([y[LAGS - i : n - i] for i in range(LAGS + 1)]))
+        target.append(np.diff(u)[LAGS - 1 :])
+    if not own:
+        return False
+    X, Z, move = np.hstack(own), np.hstack(answer), np.concatenate(target)
+    alone, both = _unexplained(X, move), _unexplained(np.vstack((X, Z)), move)
+    if alone <= 0.0:
+        return False
+    share = 1.0 - both / alone
+    return share >= SHARE and float(chi2.sf(len(move) * share, len(Z))) < CLEARLY
+
+
+def _unexplained(rows: Floats, target: Floats) -> float:
+    solution = np.linalg.lstsq(rows.T, target, rcond=None)[0]
+    rest = target - solution @ rows
+    return float(rest @ rest)
