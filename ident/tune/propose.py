@@ -42,7 +42,15 @@ def propose(
     if model is None:
         return Proposals((best,), 0, best.because)
     rule = _simc(model, Ms, period, compute_delay)
-    return Proposals((best, rule), 0, _compare(best, rule, Ms))
+    if _sound(best, Ms):
+        return Proposals((best, rule), 0, _compare(best, rule, Ms))
+    if _sound(rule, Ms):
+        return Proposals((best, rule), 1, f"The sampled loop does not settle with the largest ki; {rule.because}")
+    return Proposals((best, rule), None, "Neither proposal settles at this period within the target.")
+
+
+def _sound(tuning: Tuning, Ms: float) -> bool:
+    return meets(tuning.margins, Ms) and not any(f.severity == "error" for f in tuning.findings)
 
 
 def meets(found: Margins, Ms: float) -> bool:
@@ -84,10 +92,10 @@ def _missed(found: Margins, Ms: float) -> Finding:
 
 
 def _compare(best: Tuning, rule: Tuning, Ms: float) -> str:
-    if not meets(rule.margins, Ms):
+    if not _sound(rule, Ms):
         return (
             f"It has the largest integral gain, {best.settings.ki:.4g}, with Ms and Mt at most {Ms:g}; "
-            "the SIMC rule misses that target on this plant."
+            "the SIMC rule does not on this plant."
         )
     sentence = (
         f"Both meet the target of {Ms:g}; it has the larger integral gain, "

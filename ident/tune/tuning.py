@@ -5,8 +5,6 @@ from __future__ import annotations
 from dataclasses import dataclass
 from typing import Any
 
-import numpy as np
-
 from ident.errors import Refused
 from ident.findings import Finding
 from ident.loop import Margins, PidSettings, margins
@@ -20,6 +18,7 @@ from ident.tune.setpoint_weight import choose_setpoint_weight
 
 FORMS = ("pi", "pid")
 GOALS = ("integral", "load", "setpoint")
+LOOSEST = 5.0  # beyond, a loop is so close to unstable that no target means anything
 
 
 @dataclass(frozen=True, slots=True)
@@ -54,7 +53,7 @@ def tune(
     """Settings that are best for a goal while the loop is stable and max(Ms, Mt) stays at the target.
 
     plant          a fit, a model, or anything with frequency_response(w), taken to be stable, gain of any sign
-    Ms             target, > 1; sensible 1.2 (calm) to 2 (sharp)
+    Ms             target, 1 to 5; sensible 1.2 (calm) to 2 (sharp)
     goal           integral: the largest ki
     period         controller sample time, s, 0 for analogue: half of it is dead time;  compute_delay  s
     For an Fopdt the setpoint weight is chosen and both step responses are predicted; else b is 1.
@@ -90,16 +89,16 @@ def rehearse(
         settings, advice = choose_setpoint_weight(model, settings, **timing)
         predicted = predict(model, settings, **timing)
     except Refused as error:
-        return settings, None, (Finding(error.code, "warning", error.message),)
+        return settings, None, (Finding(error.code, "error", error.message),)
     return settings, predicted, (advice,) if advice else ()
 
 
 def check_request(Ms: float, form: str, goal: str) -> None:
     """Refuse a target, form or goal that has no answer here."""
-    if not (np.isfinite(Ms) and Ms > 1.0):
+    if not 1.0 < Ms <= LOOSEST:
         raise Refused(
             "target-out-of-range",
-            f"Ms must be above 1, and 1.2 (calm) to 2 (sharp) is sensible; got {Ms:g}.",
+            f"Ms must be above 1 and at most {LOOSEST:g}; 1.2 (calm) to 2 (sharp) is sensible. Got {Ms:g}.",
         )
     if form not in FORMS or goal not in GOALS:
         raise Refused(

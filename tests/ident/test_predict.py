@@ -246,7 +246,7 @@ def test_proposal_recommends_what_meets_the_target() -> None:
     assert rule.method == "simc"
     assert [f.code for f in rule.findings] == ["target-missed"]
     assert rule.margins == margins(Fopdt(-245.0, 0.12, 0.004), rule.settings, period=0.01)
-    assert "misses" in lag.because
+    assert "SIMC rule does not" in lag.because
 
     both = propose(Fopdt(1, 1, 1))
     assert both.recommended == 0
@@ -267,3 +267,35 @@ def test_refused(plant: Any, controller: PidSettings, code: str) -> None:
     with pytest.raises(Refused) as caught:
         predict(plant, controller)
     assert caught.value.code == code
+
+
+def test_what_does_not_settle_when_sampled_is_not_recommended() -> None:
+    # Half a period of dead time flatters a PID whose derivative time is a quarter of the period: by hand, with
+    # the same backward differences, the sampled loop diverges.
+    plant, period = Fopdt(245.0, 0.11, 0.0), 0.01
+    proposal = propose(plant, period=period, form="pid", Ms=2.0)
+    best, rule = proposal.tunings
+    assert best.margins.stable
+    assert best.predicted is None
+    assert [(f.code, f.severity) for f in best.findings] == [("sampled-loop-unstable", "error")]
+    assert proposal.recommended == 1
+    assert rule.predicted is not None
+
+    s, n = best.settings, 200
+    speed, filtered, drift, integral, last, command = 0.0, np.zeros(3), 0.0, 0.0, 0.0, 0.0
+    a = np.exp(-period / plant.T)
+    history = []
+    for _ in range(n):
+        x = s.Tf / period
+        # y_f + Tf y_f' + Tf^2/2 y_f'' = y, backward differences.
+        old, older = filtered[0], filtered[1]
+        new = (speed + (x + x**2) * old - x**2 / 2 * older) / (1 + x + x**2 / 2)
+        drift = (new - old) / period
+        filtered[:] = new, old, older
+        error = 1.0 - new
+        integral += s.Kp * period / (2 * s.Ti) * (error + last)
+        last = error
+        command = s.Kp * (s.b - new - s.Td * drift) + integral
+        speed = a * speed + plant.K * (1 - a) * command
+        history.append(abs(speed))
+    assert max(history[-20:]) > 100
