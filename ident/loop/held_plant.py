@@ -37,6 +37,8 @@ class HeldPlant:
         w = np.asarray(w, dtype=np.float64)
         # Raveled: a caller's own plant need not know about shapes.
         flat = w.ravel()
+        if len(flat) == 0:
+            return np.zeros(w.shape, dtype=np.complex128)
         response = np.asarray(self.plant.frequency_response(flat), dtype=np.complex128) * np.exp(-1j * self.lag * flat)
         if response.shape != flat.shape or not np.isfinite(response).all():
             raise Refused(

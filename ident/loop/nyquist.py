@@ -17,8 +17,8 @@ def is_stable(sweep: Sweep) -> bool:
     """
     if (sweep.order > 0 and sweep.gain <= 0) or (sweep.order == 0 and sweep.gain <= -1):
         return False  # 1 + L changes sign along the positive real axis: a real unstable pole
-    if sweep.tail >= 1 and sweep.end is None:
-        return False
+    if sweep.tail >= 1 and (sweep.end is None or not sweep.open_ended):
+        return False  # turned for ever, or a crossover beyond what a sampled model knows
     from_minus_one = 1.0 + sweep.loop
     if not from_minus_one.all():
         return False

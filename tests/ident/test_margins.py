@@ -218,6 +218,8 @@ def test_sampled_plant_holds_itself() -> None:
     loop = Sampled().frequency_response(w) * settings.frequency_response(w) * np.exp(-0.02j * w)
     assert m.Ms == pytest.approx(np.max(1 / np.abs(1 + loop)), rel=1e-8)
     assert m.Ms > margins(Fopdt(1, 1, 0), settings, compute_delay=0.02).Ms  # type: ignore[operator]
+    # Still above 1 where the model ends: no crossover that it could vouch for.
+    assert not margins(Sampled(), PidSettings(40.0, 1.0, 0.1, 0.01)).stable
 
 
 def _random_loop(

@@ -169,3 +169,25 @@ def test_simc() -> None:
     with pytest.raises(Refused, match="closed-loop-time-missing"):
         simc(1, 1, 0)
     assert simc(1, 1, 0, Tc=0.5) == PidSettings(2.0, 1.0)
+
+
+def test_sampled_plant_is_tuned_within_its_band() -> None:
+    # A plant that holds itself (attribute h), response valid to pi/h. Against half a period of dead time the
+    # exact hold lags a little more near pi/h, so ki comes out lower, less so the shorter the period.
+    @dataclass(frozen=True)
+    class Sampled:
+        h: float
+        delay: int
+
+        def frequency_response(self, w: ArrayLike) -> Complex:
+            w = np.asarray(w)
+            assert np.max(w) <= np.pi / self.h * (1 + 1e-9)
+            z = np.exp(1j * w * self.h)
+            return np.asarray(-2.0 * (1 - np.exp(-self.h)) / (z - np.exp(-self.h)) * z ** (1 - self.delay))
+
+    for h, delay, share in ((0.1, 1, 0.90), (0.02, 20, 0.999)):
+        sampled = tune(Sampled(h, delay), period=h)
+        smooth = tune(Fopdt(-2.0, 1.0, (delay - 1) * h), period=h)
+        assert sampled.settings.Kp < 0
+        assert share < sampled.settings.ki / smooth.settings.ki < 1.0
+        assert sampled.margins.Ms == pytest.approx(1.6, abs=1e-6)
