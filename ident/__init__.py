@@ -1,13 +1,14 @@
 """Identification, tuning and watching of motor speed loops: arrays in, frozen values out."""
 
 from ident.errors import IdentError, NotIdentifiable, ReadError, Refused
-from ident.estimate import Fit, fit
+from ident.estimate import Fit
 from ident.findings import Finding
+from ident.judge import fit
 from ident.loop import Margins, PidSettings, margins
-from ident.plants import Fopdt
+from ident.plants import Fopdt, Sopdt, UnderdampedSopdt
 from ident.record import LoopRecord, read_csv
-from ident.report import Report, analyse, summary
-from ident.tune import Tuning, tune
+from ident.report import Report, TuningReport, analyse, summary
+from ident.tune import Proposals, Tuning, propose, tune
 from ident.watch import Drift, MarginDrift, Night, ParameterDrift, PracticalSize, drift, drift_history
 
 __all__ = [
@@ -24,15 +25,20 @@ __all__ = [
     "ParameterDrift",
     "PidSettings",
     "PracticalSize",
+    "Proposals",
     "ReadError",
     "Refused",
     "Report",
+    "Sopdt",
     "Tuning",
+    "TuningReport",
+    "UnderdampedSopdt",
     "analyse",
     "drift",
     "drift_history",
     "fit",
     "margins",
+    "propose",
     "read_csv",
     "summary",
     "tune",

@@ -1,7 +1,7 @@
 """The fits: start values, separable least squares, dead-time profile, what was noticed."""
 
-from ident.estimate.dispatch import fit
+from ident.estimate.dispatch import fit_all
 from ident.estimate.fit import DeadTimeProfile, Fit
 from ident.estimate.friction import Friction
 
-__all__ = ["DeadTimeProfile", "Fit", "Friction", "fit"]
+__all__ = ["DeadTimeProfile", "Fit", "Friction", "fit_all"]

@@ -1,22 +1,35 @@
-"""fit: one record, one model asked for by name."""
+"""fit: one record, one model asked for by name; fit_all: every model that the record carries."""
 
 from __future__ import annotations
 
-from ident.errors import Refused
+from ident.errors import NotIdentifiable, Refused
 from ident.estimate.fit import Fit
 from ident.estimate.fopdt import fit_fopdt
+from ident.estimate.ground import ground
+from ident.estimate.sopdt import fit_sopdt
 from ident.record import LoopRecord
 
+MODELS = ("fopdt", "sopdt", "arx", "auto")
 
-def fit(record: LoopRecord, model: str = "auto") -> Fit:
-    """Fit a model to a record.
 
-    model  "fopdt", or "auto" for the one that the data support
+def fit_all(record: LoopRecord, model: str = "auto") -> tuple[Fit, ...]:
+    """Fits of a record, the simplest first.
+
+    model  "fopdt" or "sopdt" for that one alone; "auto" for both, the second where the record carries it
 
     Raises NotIdentifiable where the record has too little in it; Refused (not-offered, unknown-model).
     """
-    if model in ("fopdt", "auto"):
-        return fit_fopdt(record)
-    if model in ("sopdt", "arx"):
-        raise Refused("not-offered", f"The model {model} is not fitted yet: ask for fopdt or auto.", {"model": model})
-    raise Refused("unknown-model", "Models are fopdt, sopdt, arx and auto.", {"model": model})
+    if model not in MODELS:
+        raise Refused("unknown-model", f"Models are {', '.join(MODELS)}.", {"model": model})
+    if model == "arx":
+        raise Refused("not-offered", "The model arx is not fitted yet: ask for fopdt, sopdt or auto.", {"model": model})
+    base = ground(record)
+    if model == "sopdt":
+        return (fit_sopdt(base),)
+    first = fit_fopdt(base)
+    if model == "fopdt":
+        return (first,)
+    try:
+        return first, fit_sopdt(base)
+    except NotIdentifiable:
+        return (first,)  # two time constants are more than this record carries

@@ -7,7 +7,7 @@ from dataclasses import dataclass
 from ident.estimate.friction import Friction
 from ident.evidence import Covariance, Estimate, Statistics
 from ident.findings import Finding
-from ident.plants import Fopdt
+from ident.plants import Arx, Fopdt, Sopdt, UnderdampedSopdt
 from ident.record.segments import Floats
 
 
@@ -34,7 +34,7 @@ class Fit:
     """
 
     name: str
-    model: Fopdt
+    model: Fopdt | Sopdt | UnderdampedSopdt | Arx
     parameters: dict[str, Estimate]
     derived: dict[str, Estimate]
     covariance: Covariance

@@ -5,6 +5,7 @@ from __future__ import annotations
 from collections.abc import Iterator
 
 from ident.estimate.first_order import LONGEST_T
+from ident.estimate.ground import Found
 from ident.estimate.layout import Layout
 from ident.estimate.point import Point
 from ident.evidence.estimates import Estimate
@@ -19,16 +20,17 @@ CLEAR_CORRELATION = 0.2
 
 
 def findings(
-    layout: Layout,
-    at: Point,
+    found: Found,
     parameters: dict[str, Estimate],
     derived: dict[str, Estimate],
     figures: Statistics,
 ) -> tuple[Finding, ...]:
     """All findings of one fit, in the order of the steps that raised them."""
+    layout, at = found.layout, found.at
     return (
         *_start(layout),
         *_integrating(layout, at, parameters, derived),
+        *_set_aside(found),
         *_widths(parameters),
         *_residuals(figures),
         *_dead_time(layout, at),
@@ -50,6 +52,8 @@ def _integrating(
     layout: Layout, at: Point, parameters: dict[str, Estimate], derived: dict[str, Estimate]
 ) -> Iterator[Finding]:
     at_limit = at.shape.lags >= 0.99 * LONGEST_T * layout.duration
+    if "T" not in parameters:
+        return
     std = parameters["T"].std
     if at_limit or (at.shape.lags > 0.5 * layout.duration and (std is None or std > POORLY_KNOWN * at.shape.lags)):
         ratio = derived["K/T"]
@@ -62,8 +66,20 @@ def _integrating(
         )
 
 
+def _set_aside(found: Found) -> Iterator[Finding]:
+    if found.set_aside:
+        yield Finding(
+            "dynamics-left-out",
+            "warning",
+            "Under feedback a model of the noise keeps the parameters unbiased, but here what this model leaves is "
+            "not noise: it lacks some of the plant's dynamics. The plain fit is reported; a richer model says more.",
+        )
+
+
 def _widths(parameters: dict[str, Estimate]) -> Iterator[Finding]:
     for name in ("K", "T"):
+        if name not in parameters:
+            continue
         estimate = parameters[name]
         if estimate.std is None or 1.96 * estimate.std > WIDE * abs(estimate.value):
             yield Finding(

@@ -28,9 +28,9 @@ PROFILE_POINTS = 121
 
 @dataclass(frozen=True, slots=True, eq=False)
 class Uncertainty:
-    """Of a first-order point.
+    """Of a point with k time constants.
 
-    log_covariance   (3, 3) of log|K|, log T and L (s)
+    log_covariance   (k + 2, k + 2) of log|K|, the shape's logarithms and L (s)
     inflation        variance of L over the one that the residuals' sum of squares alone would give
     """
 
@@ -38,7 +38,7 @@ class Uncertainty:
     inflation: float
 
     def std_log_ratio(self) -> float:
-        """Std of log|K/T|."""
+        """Std of log|K/T|, T the first of the shape's times."""
         c = self.log_covariance
         return math.sqrt(max(c[0, 0] + c[1, 1] - 2.0 * c[0, 1], 0.0))
 
@@ -49,20 +49,22 @@ def uncertainty(layout: Layout, at: Point, colour: Colour) -> Uncertainty:
     Whitened residuals: plant and noise terms are known together, as under feedback they are correlated. Plain ones:
     `colour` is theirs, and widens the covariance.
     """
+    k = at.log_count
     slopes = at.jacobian.copy()
     slopes[0] *= at.K  # log|K/T| at fixed T
     slopes[1] += slopes[0]  # log T at fixed K/T
     rows = slopes.shape[1]
     plain = Colour(WHITE.predictors, np.array([at.rss / rows]))
-    white = coloured_covariance(slopes, plain)[:3, :3]
+    white = coloured_covariance(slopes, plain)[: k + 2, : k + 2]
     if not layout.colour.white:
         slopes = np.vstack((slopes, noise_slopes(layout, at)))
-        true = coloured_covariance(slopes, plain)[:3, :3]
+        true = coloured_covariance(slopes, plain)[: k + 2, : k + 2]
     else:
-        true = coloured_covariance(slopes, colour)[:3, :3]
+        true = coloured_covariance(slopes, colour)[: k + 2, : k + 2]
     true = true * rows / max(rows - len(slopes), 1)
-    to_logs = np.array([[1.0, 1.0, 0.0], [0.0, 1.0, 0.0], [0.0, 0.0, 1.0]])
-    inflation = float(true[2, 2] / white[2, 2]) if white[2, 2] > 0 else 1.0
+    to_logs = np.eye(k + 2)
+    to_logs[0, 1] = 1.0  # log|K| = log|K/T| + log T
+    inflation = float(true[-1, -1] / white[-1, -1]) if white[-1, -1] > 0 else 1.0
     return Uncertainty(to_logs @ true @ to_logs.T, inflation)
 
 
@@ -79,7 +81,7 @@ def log_estimate(value: float, std_log: float, unit: str) -> Estimate:
 
 def dead_time_profile(layout: Layout, at: Point, known: Uncertainty) -> DeadTimeProfile | None:
     """The profile over the cells around the minimum; None where rows are not on one grid or fit exactly."""
-    std = math.sqrt(known.log_covariance[2, 2])
+    std = math.sqrt(known.log_covariance[-1, -1])
     if not layout.uniform or at.rss <= 1e-20 * float(layout.target @ layout.target) or std == 0.0:
         return None
     h = layout.step
@@ -115,8 +117,7 @@ def _crossing(profile: DeadTimeProfile, inside: int, step: int) -> float:
     return float(profile.L[inside] + share * (profile.L[inside + step] - profile.L[inside]))
 
 
-def parameter_covariance(at: Point, known: Uncertainty) -> Covariance:
-    """Covariance of K, T, L in their own units, to first order."""
-    scale = np.diag([at.K, at.shape.lags, 1.0])
-    matrix = scale @ known.log_covariance @ scale
-    return Covariance(("K", "T", "L"), tuple(tuple(float(v) for v in row) for row in matrix))
+def covariance_of(names: tuple[str, ...], slopes: Floats, known: Uncertainty) -> Covariance:
+    """Covariance of named parameters to first order, `slopes` (names, k + 2) theirs in the logarithms and L."""
+    matrix = slopes @ known.log_covariance @ slopes.T
+    return Covariance(names, tuple(tuple(float(v) for v in row) for row in matrix))

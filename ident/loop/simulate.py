@@ -1,4 +1,4 @@
-"""Closed-loop response of a first-order plant with dead time, digital or analogue, in difference equations.
+"""Closed-loop response of a plant of one or two lags with dead time, digital or analogue, in difference equations.
 
 The plant's response to what enters from outside is written down in closed form; what the feedback adds is a
 linear recursion, y = y_open - P C y, run by scipy's compiled filter:
@@ -12,7 +12,7 @@ linear recursion, y = y_open - P C y, run by scipy's compiled filter:
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 import numpy as np
 from numpy.typing import NDArray
@@ -20,7 +20,7 @@ from scipy.signal import lfilter
 
 from ident.errors import Refused
 from ident.loop.settings import PidSettings
-from ident.plants import Fopdt
+from ident.plants.steps import Lagged, ramp_answer, sampled_poles, step_answer
 
 Floats = NDArray[np.float64]
 
@@ -56,12 +56,12 @@ class Clock:
         return np.asarray(self.step * np.arange(self.samples), dtype=np.float64)
 
 
-def setpoint_step(plant: Fopdt, settings: PidSettings, clock: Clock, *, compute_delay: float = 0.0) -> Trace:
+def setpoint_step(plant: Lagged, settings: PidSettings, clock: Clock, *, compute_delay: float = 0.0) -> Trace:
     """Answer to a setpoint step of 1 at time 0; compute_delay, s, from sample to command.
 
     Raises Refused derivative-without-filter.
     """
-    delayed = Fopdt(plant.K, plant.T, plant.L + compute_delay)
+    delayed = replace(plant, L=plant.L + compute_delay)
     s, time = settings, clock.time
     if clock.digital:
         # Trapezoid of the reference's part of the error, which is zero before the step.
@@ -70,23 +70,23 @@ def setpoint_step(plant: Fopdt, settings: PidSettings, clock: Clock, *, compute_
     else:
         reference = s.Kp * (s.b + time / s.Ti)
         after = time - delayed.L
-        open_speed = s.Kp * (s.b * _rise(delayed, after) + _ramp(delayed, after) / s.Ti)
+        open_speed = s.Kp * (s.b * step_answer(delayed, after) + ramp_answer(delayed, after) / s.Ti)
     speed = _close(delayed, settings, clock, open_speed)
     command = reference - _feedback(settings, clock, speed)
     return _between(delayed, clock, speed, command, None)
 
 
-def load_step(plant: Fopdt, settings: PidSettings, clock: Clock, *, compute_delay: float = 0.0) -> Trace:
+def load_step(plant: Lagged, settings: PidSettings, clock: Clock, *, compute_delay: float = 0.0) -> Trace:
     """Answer to a step of 1 at time 0 at the plant input; arguments as for `setpoint_step`."""
-    delayed = Fopdt(plant.K, plant.T, plant.L + compute_delay)
+    delayed = replace(plant, L=plant.L + compute_delay)
     # The load itself does not wait for the computer.
-    open_speed = _rise(plant, clock.time - plant.L)
+    open_speed = step_answer(plant, clock.time - plant.L)
     speed = _close(delayed, settings, clock, open_speed)
     command = -_feedback(settings, clock, speed)
     return _between(delayed, clock, speed, command, plant)
 
 
-def _between(delayed: Fopdt, clock: Clock, speed: Floats, command: Floats, loaded: Fopdt | None) -> Trace:
+def _between(delayed: Lagged, clock: Clock, speed: Floats, command: Floats, loaded: Lagged | None) -> Trace:
     """Draw a digital loop's speed between samples, from the held command and the load."""
     if not clock.digital or clock.substeps == 1:
         return Trace(clock.time, speed, command)
@@ -95,46 +95,33 @@ def _between(delayed: Fopdt, clock: Clock, speed: Floats, command: Floats, loade
     time = np.asarray(step * np.arange(len(held)), dtype=np.float64)
     finer = _through_hold(delayed, step, held)
     if loaded is not None:
-        finer = finer + _rise(loaded, time - loaded.L)
+        finer = finer + step_answer(loaded, time - loaded.L)
     return Trace(time, finer, held)
 
 
-def _rise(plant: Fopdt, after: Floats) -> Floats:
-    """Response to a unit step, `after` the dead time has passed."""
-    response: Floats = -plant.K * np.expm1(-np.maximum(after, 0.0) / plant.T)
-    return response
-
-
-def _ramp(plant: Fopdt, after: Floats) -> Floats:
-    """Response to a ramp of unit slope, `after` the dead time has passed."""
-    t = np.maximum(after, 0.0)
-    response: Floats = plant.K * (t + plant.T * np.expm1(-t / plant.T))
-    return response
-
-
-def zero_order(plant: Fopdt, h: float) -> tuple[int, Floats, Floats]:
+def zero_order(plant: Lagged, h: float) -> tuple[int, Floats, Floats]:
     """(delay samples, numerator, denominator) of the plant behind a zero-order hold.
 
-    The hold makes a pulse of one sample, a difference of steps; the plant's answer to it, times 1 - a z^-1, is
-    b0, b1 of the modified z-transform (Astrom and Wittenmark, Computer-Controlled Systems).
+    The hold makes a pulse of one sample, a difference of steps; the plant's answer to it, times the denominator, is
+    the numerator of the modified z-transform (Astrom and Wittenmark, Computer-Controlled Systems).
     """
     whole = int(np.floor(plant.L / h + 1e-9))
-    at = np.asarray(h * (whole + np.arange(0, 3)) - plant.L, dtype=np.float64)
-    pulse = _rise(plant, at) - _rise(plant, at - h)
-    a = float(np.exp(-h / plant.T))
-    return whole + 1, pulse[1:] - a * pulse[:-1], np.array([1.0, -a])
+    den = sampled_poles(plant, h)
+    at = np.asarray(h * (whole + np.arange(1, len(den) + 1)) - plant.L, dtype=np.float64)
+    pulse = step_answer(plant, at) - step_answer(plant, at - h)
+    return whole + 1, np.convolve(pulse, den)[: len(den)], den
 
 
-def first_order(plant: Fopdt, h: float) -> tuple[int, Floats, Floats]:
+def first_order(plant: Lagged, h: float) -> tuple[int, Floats, Floats]:
     """The same for an input that is straight between samples: each sample makes a triangle."""
     whole = int(np.floor(plant.L / h + 1e-9))
-    at = np.asarray(h * (whole + np.arange(-1, 3)) - plant.L, dtype=np.float64)
-    pulse = (_ramp(plant, at + h) - 2 * _ramp(plant, at) + _ramp(plant, at - h)) / h
-    a = float(np.exp(-h / plant.T))
-    return whole, pulse[1:] - a * pulse[:-1], np.array([1.0, -a])
+    den = sampled_poles(plant, h)
+    at = np.asarray(h * (whole + np.arange(0, len(den) + 1)) - plant.L, dtype=np.float64)
+    pulse = (ramp_answer(plant, at + h) - 2 * ramp_answer(plant, at) + ramp_answer(plant, at - h)) / h
+    return whole, np.convolve(pulse, den)[: len(den) + 1], den
 
 
-def _through_hold(plant: Fopdt, h: float, command: Floats) -> Floats:
+def _through_hold(plant: Lagged, h: float, command: Floats) -> Floats:
     delay, num, den = zero_order(plant, h)
     speed = np.zeros(len(command))
     speed[delay:] = lfilter(num, den, command)[: max(len(command) - delay, 0)]
@@ -170,7 +157,7 @@ def _feedback(settings: PidSettings, clock: Clock, speed: Floats) -> Floats:
     return np.asarray(lfilter(num, den, speed), dtype=np.float64)
 
 
-def _close(plant: Fopdt, settings: PidSettings, clock: Clock, open_speed: Floats) -> Floats:
+def _close(plant: Lagged, settings: PidSettings, clock: Clock, open_speed: Floats) -> Floats:
     """y = y_open - P C y."""
     delay, plant_num, plant_den = (zero_order if clock.digital else first_order)(plant, clock.step)
     c_num, c_den = _controller(settings, clock)

@@ -1,7 +1,7 @@
 """The report: its shape, and the one place that knows the whole order."""
 
 from ident.report.analyse import analyse
-from ident.report.shape import Report
+from ident.report.shape import Report, TuningReport
 from ident.report.summary import summary
 
-__all__ = ["Report", "analyse", "summary"]
+__all__ = ["Report", "TuningReport", "analyse", "summary"]

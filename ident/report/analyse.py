@@ -5,9 +5,9 @@ from __future__ import annotations
 from importlib.metadata import PackageNotFoundError, version
 
 from ident.errors import NotIdentifiable, Refused
-from ident.estimate import Fit, fit
+from ident.estimate import Fit, fit_all
 from ident.findings import Finding
-from ident.judge import advice, excitation
+from ident.judge import advice, choose, excitation
 from ident.record import LoopRecord
 from ident.report.cautions import CAUTIONS
 from ident.report.curves import curves
@@ -29,7 +29,7 @@ def analyse(
 ) -> Report:
     """Everything one record says: model, proposals, margins, predicted outcome.
 
-    model          fopdt, or auto to let the data choose
+    model          fopdt, sopdt, or auto to let the data choose
     Ms             robustness target: max(Ms, Mt) of a proposal is at most this
     form, goal     pi; integral (the largest ki)
     period         s, of the controller; None: the log's sample time, with a finding; 0 for an analogue controller
@@ -49,7 +49,9 @@ def analyse(
         "seed": seed,
     }
     found: list[Finding] = []
-    fitted, refused = _fit(record, model)
+    fits, refused = _fit(record, model)
+    choice = choose(fits) if fits else None
+    fitted = fits[choice.index] if choice else None
     held, assumed = _period(record, period)
     proposal: Proposals | None = None
     if fitted is not None:
@@ -68,9 +70,9 @@ def analyse(
         engine_version=_engine(),
         log=log_info(record),
         record=record_info(record, moved, None if moved.sufficient else advice(record)),
-        fits=() if fitted is None else (_fit_report(fitted),),
-        selected=None if fitted is None else 0,
-        selected_because="" if fitted is None else "The only model fitted: first order with dead time.",
+        fits=tuple(_fit_report(f) for f in fits),
+        selected=choice.index if choice else None,
+        selected_because=choice.because if choice else "",
         installed=None,
         tunings=tunings,
         recommended=proposal.recommended if proposal else None,
@@ -82,11 +84,11 @@ def analyse(
     )
 
 
-def _fit(record: LoopRecord, model: str) -> tuple[Fit | None, NotIdentifiable | None]:
+def _fit(record: LoopRecord, model: str) -> tuple[tuple[Fit, ...], NotIdentifiable | None]:
     try:
-        return fit(record, model), None
+        return fit_all(record, model), None
     except NotIdentifiable as error:
-        return None, error
+        return (), error
 
 
 def _period(record: LoopRecord, period: float | None) -> tuple[float, list[Finding]]:

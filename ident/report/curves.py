@@ -104,8 +104,9 @@ def _profile(fit: Fit) -> Profile | None:
 def _locus(index: int, fit: Fit, tuning: TuningReport, *, period: float, compute_delay: float) -> Locus:
     """P C F with hold and delay, from well below to well above the frequency where it crosses 1."""
     loop = OpenLoop(held_plant(fit.model, period, compute_delay), tuning.settings)
-    lag = fit.model.dead_time + fit.model.T
-    centre = 1.0 / max(min(lag, 2.0 * fit.model.dead_time + period + compute_delay), 1e-3 * lag)
+    delay = fit.model.dead_time + period / 2.0 + compute_delay
+    residence = _residence(fit) + period / 2.0 + compute_delay
+    centre = 1.0 / max(min(residence, 2.0 * delay), 1e-3 * residence)
     w = np.geomspace(1e-2 * centre, 1e2 * centre, LOCUS_POINTS)
     response = loop(w)
     return Locus(
@@ -115,6 +116,13 @@ def _locus(index: int, fit: Fit, tuning: TuningReport, *, period: float, compute
         _series(response.imag),
         _series(np.abs(1.0 / (1.0 + response))),
     )
+
+
+def _residence(fit: Fit) -> float:
+    """Average residence time -P'(0)/P(0), s: dead time and lags together."""
+    w = 1e-4 / max(fit.model.dead_time, *(e.value for e in fit.parameters.values() if e.unit == "s"), 1e-9)
+    turned = np.angle(fit.model.frequency_response(np.array([w])) / fit.model.static_gain)[0]
+    return max(float(-turned / w), 1e-9)
 
 
 def _series(values: Floats, digits: int = DIGITS) -> Series:

@@ -43,7 +43,7 @@ def _lines(report: Report) -> Iterator[str]:
 
 def _model(fit: FitReport, report: Report) -> Iterator[str]:
     yield ""
-    yield "Model       K exp(-L s)/(T s + 1)"
+    yield f"Model       {_formula(fit)}"
     for name, estimate in (fit.parameters | fit.derived).items():
         yield f"  {name:<9} {quantity(estimate)}"
     s = fit.statistics
@@ -54,7 +54,19 @@ def _model(fit: FitReport, report: Report) -> Iterator[str]:
         else f"{s.validation_fit_percent:.2f} % on rows it was not fitted to"
     )
     yield f"  fit       {percent} (NRMSE of the simulated response); {held_out}"
+    if len(report.fits) > 1:
+        yield f"  chosen    {report.selected_because}"
     yield f"  residual  {s.rms_residual:.4g} {report.log.speed_unit} rms over {s.rows_used} rows"
+
+
+def _formula(fit: FitReport) -> str:
+    if "T" in fit.parameters:
+        return "K exp(-L s)/(T s + 1)"
+    if "T1" in fit.parameters:
+        return "K exp(-L s)/((T1 s + 1)(T2 s + 1))"
+    if "zeta" in fit.parameters:
+        return "K w0^2 exp(-L s)/(s^2 + 2 zeta w0 s + w0^2)"
+    return fit.model
 
 
 def _tuning(tuning: TuningReport, report: Report, *, recommended: bool) -> Iterator[str]:
@@ -81,8 +93,8 @@ def _tuning(tuning: TuningReport, report: Report, *, recommended: bool) -> Itera
 
 def _findings(report: Report) -> Iterator[str]:
     found: list[Finding] = [*report.log.findings, *report.findings]
-    for fit in report.fits:
-        found += fit.findings
+    if report.selected is not None:
+        found += report.fits[report.selected].findings
     for tuning in report.tunings:
         found += tuning.findings
     if found:

@@ -10,7 +10,7 @@ import numpy as np
 from ident.errors import Refused
 from ident.loop import PidSettings, margins
 from ident.loop.simulate import Clock, Trace, load_step, setpoint_step
-from ident.plants import Fopdt
+from ident.plants.steps import Lagged, quickest
 from ident.tune.predicted import Predicted, read_load_step, read_setpoint_step
 
 FINE = 100.0  # steps per shortest time of an analogue loop: error about 1e-5 of the step
@@ -24,14 +24,14 @@ SETTLED = 1e-4  # of the largest error: so little is left of the IAE after that
 def predict(plant: Any, settings: PidSettings, *, period: float = 0.0, compute_delay: float = 0.0) -> Predicted:
     """Closed-loop answers to a unit setpoint step and a unit load step at the plant input, from rest.
 
-    plant          Fopdt, or a fit of one;  period  s, 0: analogue;  compute_delay  s
+    plant          of one or two lags, or a fit of one;  period  s, 0: analogue;  compute_delay  s
     Digital: exact at the samples and between them, trapezoidal integral. Analogue: about 1e-5 of the step.
     The load enters at a sample, the least favourable moment. IAE counts up to where both have settled.
     Raises Refused: not-simulated, loop-unstable, sampled-loop-unstable, derivative-without-filter.
     """
-    model = first_order(plant)
+    model = lagged(plant)
     if model is None:
-        raise Refused("not-simulated", "Only first-order models with dead time (Fopdt) are simulated so far.")
+        raise Refused("not-simulated", "Only models of one or two lags with dead time are simulated so far.")
     if not margins(model, settings, period=period, compute_delay=compute_delay).stable:
         raise Refused("loop-unstable", "This loop is unstable: there is no settled response to predict.")
     rehearsal = Rehearsal(model, settings, period, compute_delay)
@@ -39,20 +39,20 @@ def predict(plant: Any, settings: PidSettings, *, period: float = 0.0, compute_d
     return Predicted(read_setpoint_step(rehearsal.setpoint()), read_load_step(rehearsal.load()))
 
 
-def first_order(plant: Any) -> Fopdt | None:
-    """The Fopdt in a plant or fit, or None."""
-    model = plant if isinstance(plant, Fopdt) else getattr(plant, "model", None)
-    return model if isinstance(model, Fopdt) else None
+def lagged(plant: Any) -> Lagged | None:
+    """The plant of one or two lags in a plant or fit, or None."""
+    model = plant if isinstance(plant, Lagged) else getattr(plant, "model", None)
+    return model if isinstance(model, Lagged) else None
 
 
 class Rehearsal:
     """One loop on one clock, long enough for setpoint and load step to settle (or as long as is affordable)."""
 
-    def __init__(self, plant: Fopdt, settings: PidSettings, period: float, compute_delay: float) -> None:
+    def __init__(self, plant: Lagged, settings: PidSettings, period: float, compute_delay: float) -> None:
         self.plant, self.settings, self.compute_delay = plant, settings, compute_delay
         self.settles = True
         delay = plant.L + compute_delay + period
-        fastest = (1.0 + abs(plant.K * settings.Kp)) / plant.T + 1.0 / settings.Ti
+        fastest = (1.0 + abs(plant.K * settings.Kp)) / quickest(plant) + 1.0 / settings.Ti
         if settings.Tf > 0:
             fastest += 1.0 / settings.Tf
         duration = 4.0 * (delay + settings.Ti + 1.0 / fastest)
@@ -89,7 +89,7 @@ class Rehearsal:
             step = max(1.0 / (FINE * fastest), duration / SAMPLES)
             return Clock(step, int(np.ceil(duration / step)) + 1, digital=False)
         samples = int(np.ceil(duration / period)) + 1
-        substeps = int(np.clip(np.ceil(SUBSTEPS * period / self.plant.T), 1, 50))
+        substeps = int(np.clip(np.ceil(SUBSTEPS * period / quickest(self.plant)), 1, 50))
         return Clock(period, samples, substeps)
 
     def _settled(self) -> bool:

@@ -7,8 +7,7 @@ from typing import Any
 
 from ident.findings import Finding
 from ident.loop import Margins, margins
-from ident.plants import Fopdt
-from ident.tune.predict import first_order
+from ident.plants import Fopdt, Sopdt
 from ident.tune.simc import simc
 from ident.tune.tuning import Tuning, rehearse, tune
 
@@ -33,15 +32,17 @@ def propose(
     period: float = 0.0,
     compute_delay: float = 0.0,
 ) -> Proposals:
-    """The settings best for the goal under the target and, for a first-order plant, SIMC with its margins.
+    """The settings best for the goal under the target and, for a plant of real lags, SIMC with its margins.
 
     Arguments and errors as for `tune`. What misses the target is shown with a finding, never recommended.
     """
     best = tune(plant, Ms=Ms, form=form, goal=goal, period=period, compute_delay=compute_delay)
-    model = first_order(plant)
-    if model is None:
-        return Proposals((best,), 0, best.because)
-    rule = _simc(model, Ms, period, compute_delay)
+    model = getattr(plant, "model", plant)
+    reduced = half_rule(model)
+    if reduced is None:
+        sound = _sound(best, Ms)
+        return Proposals((best,), 0 if sound else None, best.because if sound else "The only proposal does not settle.")
+    rule = _simc(model, reduced, Ms, period, compute_delay)
     if _sound(best, Ms):
         return Proposals((best, rule), 0, _compare(best, rule, Ms))
     if _sound(rule, Ms):
@@ -60,9 +61,21 @@ def meets(found: Margins, Ms: float) -> bool:
     return found.stable and max(found.Ms, found.Mt) <= Ms + TOLERANCE
 
 
-def _simc(model: Fopdt, Ms: float, period: float, compute_delay: float) -> Tuning:
+def half_rule(plant: Any) -> Fopdt | None:
+    """The first-order plant that SIMC is meant for: half of the smaller lag goes to each neighbour (Skogestad 2003).
+
+    None for a plant without real lags.
+    """
+    if isinstance(plant, Fopdt):
+        return plant
+    if isinstance(plant, Sopdt):
+        return Fopdt(plant.K, plant.T1 + plant.T2 / 2.0, plant.L + plant.T2 / 2.0)
+    return None
+
+
+def _simc(model: Any, reduced: Fopdt, Ms: float, period: float, compute_delay: float) -> Tuning:
     timing = {"period": period, "compute_delay": compute_delay}
-    settings = simc(model.K, model.T, model.L + period / 2.0 + compute_delay)
+    settings = simc(reduced.K, reduced.T, reduced.L + period / 2.0 + compute_delay)
     found = margins(model, settings, **timing)
     findings: tuple[Finding, ...] = ()
     predicted = None

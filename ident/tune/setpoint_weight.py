@@ -11,7 +11,7 @@ from ident.errors import Refused
 from ident.findings import Finding
 from ident.loop import PidSettings
 from ident.loop.simulate import Trace
-from ident.plants import Fopdt
+from ident.plants.steps import Lagged
 from ident.tune.predict import Rehearsal
 
 OVERSHOOT = 5.0  # %
@@ -20,7 +20,7 @@ RAMPS = (1.0, 1.5, 2.0, 3.0, 4.0, 6.0, 8.0, 12.0, 16.0, 24.0, 32.0)
 
 
 def choose_setpoint_weight(
-    plant: Fopdt,
+    plant: Lagged,
     settings: PidSettings,
     *,
     period: float = 0.0,

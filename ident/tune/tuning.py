@@ -12,7 +12,7 @@ from ident.loop.held_plant import held_plant
 from ident.tune.band import find_band
 from ident.tune.largest_ki import largest_ki
 from ident.tune.largest_ki_pid import largest_ki_pid
-from ident.tune.predict import first_order, predict
+from ident.tune.predict import lagged, predict
 from ident.tune.predicted import Predicted
 from ident.tune.setpoint_weight import choose_setpoint_weight
 
@@ -56,7 +56,7 @@ def tune(
     Ms             target, 1 to 5; sensible 1.2 (calm) to 2 (sharp)
     goal           integral: the largest ki
     period         controller sample time, s, 0 for analogue: half of it is dead time;  compute_delay  s
-    For an Fopdt the setpoint weight is chosen and both step responses are predicted; else b is 1.
+    For a plant of one or two lags the setpoint weight is chosen and both step responses are predicted; else b is 1.
     Raises Refused: target-out-of-range, unbounded, not-offered, no-settings-found and those of `margins`.
     """
     check_request(Ms, form, goal)
@@ -81,7 +81,7 @@ def rehearse(
     plant: Any, settings: PidSettings, period: float, compute_delay: float
 ) -> tuple[PidSettings, Predicted | None, tuple[Finding, ...]]:
     """Setpoint weight and predicted steps of a stable loop; none for a plant that is not simulated."""
-    model = first_order(plant)
+    model = lagged(plant)
     if model is None:
         return settings, None, ()
     timing = {"period": period, "compute_delay": compute_delay}

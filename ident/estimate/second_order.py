@@ -1,0 +1,72 @@
+"""SecondOrder: the shape of a SOPDT's answer, 1/(P s^2 + S s + 1)."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+
+import numpy as np
+
+from ident.estimate.first_order import LONGEST_T, SHORTEST_T
+from ident.estimate.layout import Layout, Stretch
+from ident.estimate.shape import delayed
+from ident.plants.second_hold import motion, pair_states
+from ident.record.segments import Floats
+
+NUDGE = 1e-6  # of a logarithm, for slopes: the answer is smooth in S and P, and slopes only steer and weigh
+
+
+@dataclass(frozen=True, slots=True)
+class SecondOrder:
+    """1/(P s^2 + S s + 1): S in s the sum, P in s^2 the product of the time constants, real or not.
+
+    equal   the two lags are held equal, P = S^2/4, and S alone moves
+    """
+
+    S: float
+    P: float
+    equal: bool = False
+
+    @property
+    def lags(self) -> float:
+        """Sum of the time constants, s."""
+        return self.S
+
+    def moved(self, log_steps: Floats, layout: Layout) -> SecondOrder:
+        """The shape after a step of (log S, log P), or of log S alone, within what the layout can tell."""
+        steps = np.exp(np.clip(log_steps, -1.0, 1.0))
+        shortest, longest = SHORTEST_T * layout.step, LONGEST_T * layout.duration
+        S = float(np.clip(self.S * steps[0], shortest, longest))
+        if self.equal:
+            return SecondOrder(S, S * S / 4.0, True)
+        # From one lag alone (P -> 0) to a damping ratio of 0.05.
+        return SecondOrder(S, float(np.clip(self.P * steps[1], 1e-6 * S * S, 100.0 * S * S)))
+
+    def response(self, stretch: Stretch, L: float) -> tuple[Floats, Floats]:
+        """The answer at the used rows and its slope in L, both (n,)."""
+        q, r = pair_states(stretch.command, stretch.intervals, self.S, self.P)
+        at = delayed(stretch, L, (stretch.command, q, r))
+        c0, c1, c2 = motion(self.S, self.P, at.since)
+        held, q, r = at.series
+        # Later instants are earlier dead times: the slope in L is minus the speed's own rate.
+        return np.asarray(held + c0 * q + c1 * r), np.asarray(c1 / self.P * q - c2 * r)
+
+    def answer(self, stretch: Stretch, L: float) -> tuple[Floats, Floats, Floats]:
+        """At the used rows: answer (n,), slopes in the logarithms (k, n), slope in L (n,)."""
+        here, slope_L = self.response(stretch, L)
+        slopes = [(near.response(stretch, L)[0] - here) / NUDGE for near in self._nearby()]
+        return here, np.stack(slopes), slope_L
+
+    def transients(self, time: Floats) -> tuple[Floats, Floats]:
+        """Free motions from t = 0, (2, n), the second in units of the lags; slopes (k, 2, n)."""
+        here = self._free(time)
+        return here, np.stack([(near._free(time) - here) / NUDGE for near in self._nearby()])
+
+    def _free(self, time: Floats) -> Floats:
+        c0, c1, _ = motion(self.S, self.P, time)
+        return np.stack((c0, c1 / self.S))
+
+    def _nearby(self) -> tuple[SecondOrder, ...]:
+        more = 1.0 + NUDGE
+        if self.equal:
+            return (SecondOrder(self.S * more, self.P * more * more, True),)
+        return (SecondOrder(self.S * more, self.P), SecondOrder(self.S, self.P * more))

@@ -1,0 +1,69 @@
+"""The exact answer of 1/(P s^2 + S s + 1) to a held command, on any time axis.
+
+S = T1 + T2 and P = T1 T2 describe two lags, equal lags and an underdamped pair alike, without a seam between them.
+With the command held, q = y - u and r = dy/dt move freely between samples:
+
+    q(e) = c0 q + c1 r,   r(e) = -(c1/P) q + c2 r
+
+with c0, c1, c2 from `motion`. The states at the samples follow by one second-order recursion each.
+(Zero-order hold of a second-order system: Åström and Wittenmark, Computer-Controlled Systems, table 2.1.)
+"""
+
+from __future__ import annotations
+
+import math
+
+import numpy as np
+from numpy.typing import NDArray
+from scipy.linalg.lapack import dtbtrs
+from scipy.signal import lfilter
+
+Floats = NDArray[np.float64]
+
+
+def motion(S: float, P: float, since: float | Floats) -> tuple[Floats, Floats, Floats]:
+    """c0, c1, c2 at times `since` >= 0 (any shape, s): the free motion of q and r; S, P > 0 in s and s^2."""
+    t = np.asarray(since, dtype=np.float64)
+    sigma = S / (2.0 * P)
+    square = sigma * sigma - 1.0 / P
+    if square > 0.0:
+        delta = math.sqrt(square)
+        fast = sigma + delta
+        slow = 1.0 / (P * fast)  # not sigma - delta, which loses its digits when the lags differ much
+        late = np.exp(-slow * t)
+        c1 = late * -np.expm1(-2.0 * delta * t) / (2.0 * delta)
+        even = 0.5 * (late + np.exp(-fast * t))
+    else:
+        omega = math.sqrt(-square)
+        decay = np.exp(-sigma * t)
+        c1 = decay * t * np.sinc(omega * t / np.pi)
+        even = decay * np.cos(omega * t)
+    return np.asarray(even + sigma * c1), np.asarray(c1), np.asarray(even - sigma * c1)
+
+
+def pair_states(command: Floats, step: float | Floats, S: float, P: float) -> tuple[Floats, Floats]:
+    """q = y - u and r = dy/dt (per s) at the samples, from a start settled at command[0].
+
+    command  (n,);  step  s, one sample time or (n-1,) intervals;  S  s;  P  s^2
+    """
+    moved = command - command[0]
+    c0, c1, c2 = motion(S, P, step)
+    gamma_y, gamma_r = 1.0 - c0, c1 / P
+    if not isinstance(step, np.ndarray):
+        trace, det = float(c0 + c2), math.exp(-S / P * step)
+        poles = [1.0, -trace, det]
+        y = lfilter([0.0, float(gamma_y), float(c1 * gamma_r - c2 * gamma_y)], poles, moved)
+        r = lfilter([0.0, float(gamma_r), float(-c1 / P * gamma_y - c0 * gamma_r)], poles, moved)
+        return np.asarray(y - moved), np.asarray(r)
+    # A banded triangular system over y[0], r[0], y[1], r[1], ...: linear cost on any axis.
+    n = len(command)
+    band = np.zeros((4, 2 * n))
+    band[0] = 1.0
+    band[2, 0 : 2 * n - 2 : 2], band[3, 0 : 2 * n - 2 : 2] = -c0, c1 / P
+    band[1, 1 : 2 * n - 2 : 2], band[2, 1 : 2 * n - 2 : 2] = -c1, -c2
+    right = np.zeros(2 * n)
+    right[2::2], right[3::2] = gamma_y * moved[:-1], gamma_r * moved[:-1]
+    state, info = dtbtrs(band, right, uplo="L")
+    assert info == 0  # the diagonal is 1
+    state = np.asarray(state, dtype=np.float64).reshape(n, 2)
+    return np.asarray(state[:, 0] - moved), np.asarray(state[:, 1])
