@@ -145,7 +145,7 @@ def test_only_judge_knows_the_cross_check() -> None:
         for package in ("ident", "service")
         for file in sources(package)
         for module, _ in imports(file)
-        if module.split(".")[0] == "sippy"
+        if module.split(".")[0] == "sippy_unipi"
     }
     assert users <= {"ident/judge"}
 
