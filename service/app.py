@@ -7,13 +7,16 @@ from contextlib import asynccontextmanager
 
 from fastapi import FastAPI
 
-from service.api import health, page, problems, reports, samples, schema
+from service.api import health, kept, logs, loops, page, problems, reports, samples, schema, watch
 from service.api.drain import Drain
 from service.api.headers import FixedHeaders
 from service.api.metrics import Measured, Metrics
+from service.api.small import SmallBodies
 from service.api.state import State
 from service.settings import Settings
+from service.store import Store
 from service.version import version
+from service.work.dispatcher import Dispatcher
 from service.work.lane import Task
 from service.work.report import report_bytes
 from service.work.workers import Workers
@@ -28,14 +31,20 @@ def create_app(settings: Settings | None = None, *, task: Task = report_bytes) -
     settings = settings or Settings()
     workers = Workers(settings.workers, settings.max_waiting, settings.time_limit_s, task)
     metrics = Metrics(workers)
+    store = Store(settings.data_dir, settings.database_url)
+    dispatcher = Dispatcher(store, workers, metrics.analysed)
 
     @asynccontextmanager
     async def running(_: FastAPI) -> AsyncIterator[None]:
+        store.open()
         try:
             await workers.start()
+            await dispatcher.start()
             yield
         finally:
+            await dispatcher.stop()
             workers.stop()
+            store.close()
 
     app = FastAPI(
         title="gainwright",
@@ -47,13 +56,14 @@ def create_app(settings: Settings | None = None, *, task: Task = report_bytes) -
         redoc_url=None,
         redirect_slashes=False,
     )
-    app.state.shared = State(settings, workers, metrics)
-    for router in (health.router, reports.router, samples.router):
-        app.include_router(router)
+    app.state.shared = State(settings, workers, metrics, store, dispatcher)
+    for room in (health, reports, kept, loops, logs, watch, samples):
+        app.include_router(room.router)
     page.install(app)
     problems.install(app)
     schema.install(app)
     # The last one added is the outermost.
+    app.add_middleware(SmallBodies)
     app.add_middleware(Drain)
     app.add_middleware(FixedHeaders)
     app.add_middleware(Measured, metrics=metrics)

@@ -34,6 +34,12 @@ class Settings(BaseSettings):
     host: str = Field(default="127.0.0.1", min_length=1, description="Address to listen on.")
     port: int = Field(default=8000, ge=0, le=65535, description="Port to listen on; 0 takes a free one.")
     data_dir: Path = Field(default_factory=user_data_dir, description="Folder for what the service keeps.")
+    database_url: str | None = Field(
+        default=None,
+        min_length=1,
+        description="Database of what is kept, such as postgresql://user@host/name (with the extra `postgres`); "
+        "unset: an SQLite file in the data folder.",
+    )
     max_upload_bytes: int = Field(
         default=200 * 2**20, gt=0, description="Largest log accepted, in bytes, both as sent and unpacked."
     )

@@ -1,7 +1,7 @@
 """The one maker of error bodies: RFC 9457 problem+json with a stable `code`, whatever went wrong.
 
 ProblemError            what the service and ident refuse     status by STATUS, 422 for the rest
-RequestValidationError  options that are wrong                422 invalid-option
+RequestValidationError  options or a body that are wrong      422 invalid-option, invalid-body
 HTTPException           no such address, method, ...          its own status
 ClientDisconnect        nobody is left to read it             400 disconnected
 Exception               a fault of the program                500 internal
@@ -9,7 +9,7 @@ Exception               a fault of the program                500 internal
 
 from __future__ import annotations
 
-from collections.abc import Mapping
+from collections.abc import Mapping, Sequence
 from dataclasses import dataclass
 from http import HTTPStatus
 from typing import Any
@@ -30,6 +30,10 @@ MEDIA_TYPE = "application/problem+json"
 STATUS = {
     "not-found": 404,
     "no-such-sample": 404,
+    "no-such-loop": 404,
+    "no-such-analysis": 404,
+    "no-such-report": 404,
+    "no-baseline": 409,
     "method-not-allowed": 405,
     "too-slow": 408,
     "too-large": 413,
@@ -92,7 +96,7 @@ def install(app: FastAPI) -> None:
 
     @app.exception_handler(RequestValidationError)
     async def invalid(_: Request, error: RequestValidationError) -> Response:
-        return respond(wrong_options(error.errors()))
+        return respond(_wrong(error.errors()))
 
     @app.exception_handler(HTTPException)
     async def routed(request: Request, error: HTTPException) -> Response:
@@ -105,6 +109,22 @@ def install(app: FastAPI) -> None:
     @app.exception_handler(Exception)
     async def failed(_: Request, __: Exception) -> Response:
         return respond(Problem("internal", "The service failed by a fault of its own; its log says where."))
+
+
+def _wrong(faults: Sequence[Any]) -> Problem:
+    if not any(fault["loc"][0] == "body" for fault in faults):
+        return wrong_options(faults)
+    evidence: dict[str, Value] = dict(map(_fault, faults))
+    told = "; ".join(f"{name}: {said}" for name, said in evidence.items())
+    return Problem("invalid-body", f"Correct the body, which is JSON, and send it again. {told}.", evidence)
+
+
+def _fault(fault: Any) -> tuple[str, str]:
+    """Which member of a body is at fault, and why."""
+    where, said = fault["loc"][1:], str(fault["msg"]).removeprefix("Value error, ")
+    if fault["type"] == "json_invalid":
+        return "body", f"no JSON from character {where[0]} on"
+    return ".".join(map(str, where)) or "body", said
 
 
 def _routing(request: Request, error: HTTPException) -> Problem:

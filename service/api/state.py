@@ -1,4 +1,4 @@
-"""What the routes share: the settings, the workers, the figures."""
+"""What the routes share: the settings, the workers, the store, the figures."""
 
 from __future__ import annotations
 
@@ -8,6 +8,8 @@ from fastapi import Request
 
 from service.api.metrics import Metrics
 from service.settings import Settings
+from service.store import Store
+from service.work.dispatcher import Dispatcher
 from service.work.workers import Workers
 
 
@@ -18,6 +20,8 @@ class State:
     settings: Settings
     workers: Workers
     metrics: Metrics
+    store: Store
+    dispatcher: Dispatcher
 
 
 def state(request: Request) -> State:

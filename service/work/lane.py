@@ -17,6 +17,7 @@ from multiprocessing.context import BaseContext
 
 from service.errors import Problem
 from service.work.options import Options
+from service.work.stages import STAGES, Stage
 from service.work.worker import prepare
 
 Answer = bytes | Problem
@@ -32,12 +33,13 @@ class Lane:
         self._context = context
         self._task = task
         self._executor: ProcessPoolExecutor | None = None
+        self._stage = Stage(context)
         self.pid: int | None = None
         self.starts = 0
 
     def open(self) -> None:
         """Start the process and wait until it answers. Blocks: call it from a thread."""
-        executor = ProcessPoolExecutor(1, mp_context=self._context, initializer=prepare)
+        executor = ProcessPoolExecutor(1, mp_context=self._context, initializer=prepare, initargs=(self._stage,))
         try:
             self.pid = executor.submit(os.getpid).result()
         except BaseException:
@@ -54,10 +56,18 @@ class Lane:
                 os.kill(pid, getattr(signal, "SIGKILL", signal.SIGTERM))
             executor.shutdown(wait=False, cancel_futures=True)
 
-    async def run(self, source: bytes, options: Options, limit_s: float) -> Answer:
-        """What the task returns, or the problem that the process died or took more than `limit_s` seconds."""
+    @property
+    def stage(self) -> str:
+        """What its process is at, of `stages.STAGES`."""
+        return self._stage.get()
+
+    async def run(self, source: bytes, options: Options, limit_s: float, task: Task | None = None) -> Answer:
+        """What the task returns, or the problem that the process died or took more than `limit_s` seconds.
+
+        task   None: the lane's own
+        """
         try:
-            future = await self._submit(source, options)
+            future = await self._submit(task or self._task, source, options)
             return await asyncio.wait_for(asyncio.wrap_future(future), limit_s)
         except BrokenExecutor:
             self.close()
@@ -75,12 +85,13 @@ class Lane:
             self.close()
             raise
 
-    async def _submit(self, source: bytes, options: Options) -> Future[Answer]:
+    async def _submit(self, task: Task, source: bytes, options: Options) -> Future[Answer]:
+        self._stage.set(STAGES[0])
         if self._executor is not None:
             try:
-                return self._executor.submit(self._task, source, options)
+                return self._executor.submit(task, source, options)
             except BrokenExecutor:
                 self.close()  # died while idle: this log is not to blame
         await asyncio.to_thread(self.open)
         assert self._executor is not None
-        return self._executor.submit(self._task, source, options)
+        return self._executor.submit(task, source, options)

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import json
 from collections.abc import Sequence
 from datetime import datetime
 from typing import Any, Literal
@@ -19,6 +20,15 @@ def _column(role: str) -> Any:
         min_length=1,
         max_length=200,
         description=f"Column of the {role}: its header, or its position counted from 0.",
+    )
+
+
+def _unit(role: str) -> Any:
+    return Field(
+        default=None,
+        min_length=1,
+        max_length=30,
+        description=f"Unit of the {role}, where its header has none.",
     )
 
 
@@ -66,6 +76,8 @@ class Options(BaseModel):
         allow_inf_nan=False,
         description="Encoder counts per revolution, where the speed column counts.",
     )
+    speed_unit: str | None = _unit("speed")
+    command_unit: str | None = _unit("command")
     time: str | None = _column("time")
     setpoint: str | None = _column("setpoint")
     command: str | None = _column("command")
@@ -76,6 +88,10 @@ class Options(BaseModel):
         """{role: header or position} of the columns that were named, None if none was."""
         named = {role: getattr(self, role) for role in ROLES if getattr(self, role) is not None}
         return {role: int(name) if name.isdecimal() else name for role, name in named.items()} or None
+
+    def text(self) -> str:
+        """JSON of what differs from the defaults: equal for equal options, and still so when options are added."""
+        return json.dumps(self.model_dump(mode="json", exclude_defaults=True), sort_keys=True)
 
 
 def wrong_options(faults: Sequence[Any] | ValidationError) -> Problem:

@@ -11,10 +11,14 @@ from pydantic import TypeAdapter
 import ident
 from service.errors import Problem
 from service.work.options import Options
+from service.work.stages import enter
+from service.work.units import with_units
 
 T = TypeVar("T")
 
 log = logging.getLogger("gainwright.work")
+
+INTERNAL = Problem("internal", "The analysis failed by a fault of the program; its log says where.")
 
 _report = TypeAdapter(ident.Report)
 
@@ -24,6 +28,7 @@ def report(source: bytes, options: Options) -> ident.Report:
 
     Raises ident.IdentError where the log cannot be read or the request has no answer.
     """
+    enter("reading")
     record = ident.read_csv(
         source,
         columns=options.columns,
@@ -32,6 +37,8 @@ def report(source: bytes, options: Options) -> ident.Report:
         start=options.start,
         counts_per_rev=options.counts_per_rev,
     )
+    record = with_units(record, options.speed_unit, options.command_unit)
+    enter("analysing")
     return ident.analyse(
         record,
         model=options.model,
@@ -53,21 +60,22 @@ def report_bytes(source: bytes, options: Options) -> bytes | Problem:
     It runs in worker processes, where an exception on its way back can break the pool, and SystemExit would
     be raised again in the service.
     """
-    return _told(source, options, to_json)
+    return told(lambda: to_json(report(source, options)))
 
 
 def report_summary(source: bytes, options: Options) -> str | Problem:
     """A log's report as text to read, or the problem that stands in its way. Never raises."""
-    return _told(source, options, ident.summary)
+    return told(lambda: ident.summary(report(source, options)))
 
 
-def _told(source: bytes, options: Options, form: Callable[[ident.Report], T]) -> T | Problem:
+def told(answer: Callable[[], T]) -> T | Problem:
+    """The answer, or the problem that stands in its way. Never raises."""
     try:
-        return form(report(source, options))
+        return answer()
     except ident.IdentError as error:
         return Problem(error.code, error.message, dict(error.evidence))
     except KeyboardInterrupt:
         raise  # only the command gets one: workers ignore the signal
     except BaseException:
         log.exception("an analysis failed")
-        return Problem("internal", "The analysis failed by a fault of the program; its log says where.")
+        return INTERNAL

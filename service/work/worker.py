@@ -10,6 +10,7 @@ import threading
 from multiprocessing.connection import wait
 from multiprocessing.context import BaseContext
 
+from service.work.stages import Stage, tell
 from service.work.threads import one_blas_thread
 
 PRELOAD = ["service.work.report"]  # brings ident, scipy and pandas with it
@@ -31,8 +32,9 @@ def context() -> BaseContext:
     return chosen
 
 
-def prepare() -> None:
-    """Initializer of every worker."""
+def prepare(stage: Stage) -> None:
+    """Initializer of every worker; `stage` is where it tells how far it is."""
+    tell(stage)
     # Ctrl-C reaches the whole process group; the service alone decides when workers stop.
     signal.signal(signal.SIGINT, signal.SIG_IGN)
     # A service killed outright leaves its workers waiting for ever unless they watch it.

@@ -3,8 +3,8 @@
 from __future__ import annotations
 
 import asyncio
-from collections.abc import Iterator
-from contextlib import contextmanager
+from collections.abc import AsyncIterator, Iterator
+from contextlib import asynccontextmanager, contextmanager
 
 from service.errors import ProblemError
 from service.work.lane import Answer, Lane, Task
@@ -21,10 +21,11 @@ class Workers:
     """
 
     def __init__(self, count: int, max_waiting: int, time_limit_s: float, task: Task = report_bytes) -> None:
+        self.count = count
         self._lanes = tuple(Lane(context(), task) for _ in range(count))
         self._idle: asyncio.Queue[Lane] = asyncio.Queue()
         self._places = count + max_waiting
-        self._time_limit_s = time_limit_s
+        self.time_limit_s = time_limit_s
         self.admitted = 0
         self.ready = False
 
@@ -67,10 +68,19 @@ class Workers:
         finally:
             self.admitted -= 1
 
-    async def run(self, source: bytes, options: Options) -> Answer:
-        """The report's JSON or a problem, once a process is free."""
+    @asynccontextmanager
+    async def lane(self) -> AsyncIterator[Lane]:
+        """One process to oneself, once one is free; first come, first served."""
         lane = await self._idle.get()
         try:
-            return await lane.run(source, options, self._time_limit_s)
+            yield lane
         finally:
             self._idle.put_nowait(lane)
+
+    async def run(self, source: bytes, options: Options, task: Task | None = None) -> Answer:
+        """The report's JSON or a problem, once a process is free.
+
+        task   something else to do there than what these workers are for
+        """
+        async with self.lane() as lane:
+            return await lane.run(source, options, self.time_limit_s, task)

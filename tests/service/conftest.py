@@ -5,9 +5,11 @@ from __future__ import annotations
 import os
 import subprocess
 import sys
+import tempfile
 from collections.abc import Iterator
 from dataclasses import dataclass
 from pathlib import Path
+from typing import Any
 
 import pytest
 from starlette.testclient import TestClient
@@ -16,6 +18,7 @@ from service.app import create_app
 from service.settings import Settings
 
 ROOT = Path(__file__).resolve().parents[2]
+SCRATCH = tempfile.TemporaryDirectory(prefix="gainwright-tests-", ignore_cleanup_errors=True)
 
 
 @dataclass(frozen=True)
@@ -27,8 +30,19 @@ class Served:
     port: int
 
 
+def own_folder() -> Path:
+    """A new folder for one service's data, removed at the end."""
+    return Path(tempfile.mkdtemp(prefix="data-", dir=SCRATCH.name))
+
+
+def apart(**settings: Any) -> Settings:
+    """Settings of a service in this process, with a folder of its own: no two services share one."""
+    return Settings(**{"workers": 1, "data_dir": own_folder(), **settings})
+
+
 def start_served(**settings: str) -> Served:
-    """`gainwright serve` on a free port; the line it prints says which."""
+    """`gainwright serve` on a free port, with a folder of its own; the line it prints says which port."""
+    settings.setdefault("data_dir", str(own_folder()))
     environment = {**os.environ, **{f"GAINWRIGHT_{k.upper()}": v for k, v in settings.items()}}
     process = subprocess.Popen(
         [sys.executable, "-m", "service.cli", "serve", "--port", "0"],
@@ -45,7 +59,7 @@ def start_served(**settings: str) -> Served:
 
 @pytest.fixture(scope="session")
 def client() -> Iterator[TestClient]:
-    with TestClient(create_app(Settings(workers=1)), raise_server_exceptions=False) as client:
+    with TestClient(create_app(apart()), raise_server_exceptions=False) as client:
         yield client
 
 

@@ -6,13 +6,13 @@ from pathlib import Path
 
 import expect
 import pytest
+from conftest import apart
 from fastapi import FastAPI
 from lane_tasks import obey
 from starlette.testclient import TestClient
 
 from service.api import problems
 from service.app import create_app
-from service.settings import Settings
 
 
 def test_health(client: TestClient) -> None:
@@ -21,7 +21,7 @@ def test_health(client: TestClient) -> None:
 
 
 def test_not_ready_before_the_workers_run() -> None:
-    idle = TestClient(create_app(Settings(workers=1)))  # not entered: its start-up has not run
+    idle = TestClient(create_app(apart()))  # not entered: its start-up has not run
     assert idle.get("/healthz").status_code == 200
     expect.answer(idle.get("/readyz"), expected=503, code="not-ready")
 
@@ -100,7 +100,7 @@ def test_a_fault_of_the_program_is_a_problem_that_tells_nothing_of_it() -> None:
 
 
 def test_a_lost_worker_is_503_and_the_service_goes_on() -> None:
-    with TestClient(create_app(Settings(workers=1), task=obey)) as service:
+    with TestClient(create_app(apart(), task=obey)) as service:
         lost = service.post("/v1/reports", content=b"die")
         expect.answer(lost, expected=503, code="worker-lost")
         assert lost.headers["retry-after"] == "1"
@@ -112,7 +112,7 @@ def test_a_lost_worker_is_503_and_the_service_goes_on() -> None:
 
 
 def test_a_full_queue_is_503_with_a_time_to_come_back() -> None:
-    app = create_app(Settings(workers=1, max_waiting=0), task=obey)
+    app = create_app(apart(max_waiting=0), task=obey)
     with TestClient(app) as service, app.state.shared.workers.admit():
         response = service.post("/v1/reports", content=b"a")
         expect.answer(response, expected=503, code="busy")

@@ -9,6 +9,7 @@ from collections.abc import AsyncIterator
 
 import expect
 import pytest
+from conftest import apart
 from hypothesis import HealthCheck, given, settings
 from hypothesis import strategies as st
 from starlette.testclient import TestClient
@@ -16,7 +17,6 @@ from starlette.testclient import TestClient
 from service.api.gzip import gunzip
 from service.app import create_app
 from service.errors import ProblemError
-from service.settings import Settings
 
 GZIP = {"Content-Encoding": "gzip"}
 
@@ -88,7 +88,7 @@ def test_a_form_must_hold_one_file(client: TestClient) -> None:
 
 
 def test_the_limit_holds_as_sent_unpacked_and_in_a_form() -> None:
-    with TestClient(create_app(Settings(workers=1, max_upload_bytes=10_000))) as small:
+    with TestClient(create_app(apart(max_upload_bytes=10_000))) as small:
         within = small.post("/v1/reports", content=b"\0" * 10_000)
         assert within.status_code == 422
         bodies = {

@@ -1,0 +1,137 @@
+"""Numbers: the part of a report that history and drift need, taken from its JSON."""
+
+from __future__ import annotations
+
+import json
+from collections.abc import Mapping
+from dataclasses import dataclass
+from datetime import datetime
+from typing import Any
+
+from pydantic import TypeAdapter
+
+import ident
+
+
+@dataclass(frozen=True, slots=True)
+class Movement:
+    """Of the command: largest less smallest value, and changes from row to row that count as moves."""
+
+    span: float
+    moves: int
+    unit: str
+
+
+@dataclass(frozen=True, slots=True)
+class Parameter:
+    value: float
+    std: float | None
+    ci95: tuple[float | None, float | None]
+    unit: str
+
+
+@dataclass(frozen=True, slots=True)
+class Plant:
+    """K, T, L of the first-order fit with their covariance, in the order of `names`."""
+
+    values: dict[str, float]
+    names: tuple[str, ...]
+    matrix: tuple[tuple[float | None, ...], ...]
+    gain_unit: str
+
+
+@dataclass(frozen=True, slots=True)
+class Numbers:
+    """Of one report; None and {} where the log carried no model.
+
+    plant     whichever model was chosen, for nights are compared by K, T and L
+    period_s  what the report's margins were reckoned with
+    """
+
+    sufficient: bool
+    reason: str
+    movement: Movement
+    duration_s: float
+    period_s: float | None
+    model: str | None
+    parameters: dict[str, Parameter]
+    derived: dict[str, Parameter]
+    fit_percent: float | None
+    rms_residual: float | None
+    speed_unit: str
+    plant: Plant | None
+    proposed: dict[str, float] | None
+
+    @property
+    def first_order(self) -> ident.Fopdt | None:
+        if self.plant is None:
+            return None
+        return ident.Fopdt(*(self.plant.values[name] for name in ("K", "T", "L")))
+
+
+_numbers = TypeAdapter(Numbers)
+
+
+def start_of(report: Mapping[str, Any]) -> datetime | None:
+    """The log's own time."""
+    start = report["log"]["start"]
+    return None if start is None else datetime.fromisoformat(start)
+
+
+def numbers_of(report: Mapping[str, Any]) -> Numbers:
+    """Of a report's JSON, parsed."""
+    log, moved = report["log"], report["record"]["excitation"]
+    fits, selected, best = report["fits"], report["selected"], report["recommended"]
+    fit = fits[selected] if selected is not None else None
+    return Numbers(
+        sufficient=moved["sufficient"],
+        reason=moved["reason"],
+        movement=Movement(moved["command_span"], moved["command_moves"], log["command_unit"]),
+        duration_s=log["duration_s"],
+        period_s=_period(report),
+        model=fit["model"] if fit else None,
+        parameters=_parameters(fit["parameters"]) if fit else {},
+        derived=_parameters(fit["derived"]) if fit else {},
+        fit_percent=fit["statistics"]["fit_percent"] if fit else None,
+        rms_residual=fit["statistics"]["rms_residual"] if fit else None,
+        speed_unit=log["speed_unit"],
+        plant=next((_plant(f) for f in fits if f["model"] == "fopdt"), None),
+        proposed=report["tunings"][best]["settings"] if best is not None else None,
+    )
+
+
+def write_numbers(numbers: Numbers) -> str:
+    return _numbers.dump_json(numbers).decode()
+
+
+def read_numbers(text: str) -> Numbers:
+    return _numbers.validate_json(text)
+
+
+def parse(report: bytes) -> dict[str, Any]:
+    parsed: dict[str, Any] = json.loads(report)
+    return parsed
+
+
+def _period(report: Mapping[str, Any]) -> float | None:
+    """What was asked for, or what was taken for it."""
+    assumed = [f["evidence"]["period_s"] for f in report["findings"] if f["code"] == "period-assumed"]
+    period: float | None = assumed[0] if assumed else report["options"]["period"]
+    return period
+
+
+def _parameters(told: Mapping[str, Any]) -> dict[str, Parameter]:
+    return {
+        name: Parameter(one["value"], one["std"], (one["ci95"][0], one["ci95"][1]), one["unit"])
+        for name, one in told.items()
+    }
+
+
+def _plant(fit: Mapping[str, Any]) -> Plant:
+    parameters, covariance = fit["parameters"], fit["covariance"]
+    return Plant(
+        {name: one["value"] for name, one in parameters.items()},
+        tuple(covariance["names"]),
+        tuple(tuple(row) for row in covariance["matrix"]),
+        parameters["K"]["unit"],
+    )
