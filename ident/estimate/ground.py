@@ -28,7 +28,12 @@ class Ground:
     record: LoopRecord
     layout: Layout
     first: Point
-    closed: bool  # the command answers to the speed
+
+    @property
+    def closed(self) -> bool:
+        """Whether the command answers to the speed."""
+        stretches = self.layout.stretches
+        return feedback([s.command for s in stretches], [s.speed for s in stretches])
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -51,8 +56,7 @@ def ground(record: LoopRecord) -> Ground:
     at = search(layout)
     if any(s.start == "joined" for s in layout.stretches):
         layout, at = _leave_out_unknown_past(layout, at)
-    closed = feedback([s.command for s in layout.stretches], [s.speed for s in layout.stretches])
-    return Ground(record, layout, at, closed)
+    return Ground(record, layout, at)
 
 
 def with_noise(base: Ground, at: Point) -> Found:

@@ -63,7 +63,10 @@ def _descend(layout: Layout, at: Point, low: float, high: float, promise: float)
         for halving in range(MOST_HALVINGS):
             share = 0.5**halving
             L = float(np.clip(at.L + share * step[1 + k], low, high))
-            trial = point(layout, at.shape.moved(share * step[1 : 1 + k], layout), L)
+            shape = at.shape.moved(share * step[1 : 1 + k], layout)
+            if shape == at.shape and L == at.L:
+                break
+            trial = point(layout, shape, L)
             if trial.rss < at.rss:
                 ahead = trial
                 break

@@ -63,7 +63,8 @@ def _follow(layout: Layout, T: float, L: float, blocks: int) -> tuple[float, flo
     spacing = layout.step * blocks
     while True:
         level = layout.thinned(blocks)
-        width = math.ceil(spacing / level.step) + MARGIN
+        # The coarser level has already placed L within its cell.
+        width = math.ceil(0.5 * spacing / level.step) + MARGIN
         rss, T, L = _settle_cells(level, T, L, width)
         if blocks == 1:
             return rss, T, L

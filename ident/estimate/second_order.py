@@ -12,6 +12,7 @@ from ident.estimate.shape import delayed
 from ident.plants.second_hold import motion, pair_states
 from ident.record.segments import Floats
 
+SHORTEST_LAG = 0.1  # steps
 NUDGE = 1e-6  # of a logarithm, for slopes: the answer is smooth in S and P, and slopes only steer and weigh
 
 
@@ -38,8 +39,9 @@ class SecondOrder:
         S = float(np.clip(self.S * steps[0], shortest, longest))
         if self.equal:
             return SecondOrder(S, S * S / 4.0, True)
-        # From one lag alone (P -> 0) to a damping ratio of 0.05.
-        return SecondOrder(S, float(np.clip(self.P * steps[1], 1e-6 * S * S, 100.0 * S * S)))
+        # From a second lag that sampling cannot show to a damping ratio of 0.05.
+        least = min(SHORTEST_LAG * layout.step * S, 0.2 * S * S)
+        return SecondOrder(S, float(np.clip(self.P * steps[1], least, 100.0 * S * S)))
 
     def response(self, stretch: Stretch, L: float) -> tuple[Floats, Floats]:
         """The answer at the used rows and its slope in L, both (n,)."""

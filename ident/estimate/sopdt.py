@@ -14,10 +14,12 @@ from ident.estimate.diagnostics import statistics
 from ident.estimate.fit import Fit
 from ident.estimate.ground import Ground, on_record, with_noise
 from ident.estimate.known import require_known
+from ident.estimate.layout import Layout
 from ident.estimate.noticed import findings
-from ident.estimate.point import Point, point
+from ident.estimate.point import Point
 from ident.estimate.refine import refine
 from ident.estimate.second_order import SecondOrder
+from ident.estimate.start import thinning
 from ident.estimate.uncertainty import (
     Uncertainty,
     covariance_of,
@@ -31,11 +33,14 @@ from ident.evidence.estimates import NORMAL_95, Estimate
 from ident.plants import Sopdt, UnderdampedSopdt
 from ident.record.segments import Floats
 
-# Shares of the first-order fit's T + L left to dead time, and P/S^2 of the rest: unlike lags, like ones, and pairs
-# that ring a little and more (damping ratios 1, 0.7, 0.35).
-STARTS = [(delay, ratio) for delay in (0.0, 0.5, 0.9) for ratio in (0.05, 0.18, 0.25, 0.5, 2.0)]
-TRIED = 2  # best starts refined on the full record
+# Shares of the first-order fit's dead time kept, and P/S^2 of the rest: unlike lags, like ones, and pairs that ring a
+# little and more (damping ratios 0.7 and 0.35).
+DELAYS = (0.0, 0.5, 0.9)
+RATIOS = (0.05, 0.2, 0.5, 2.0)
+TRIED = 2  # best starts descended
+ROUGHLY = 1e-2  # of one residual's variance: enough to choose between them
 EQUAL = 3.84  # of a residual's variance: less than this in the sum of squares does not tell lags from equal ones
+FAR = 10.0  # times EQUAL, by the slopes alone: plainly not equal
 ANGLES = 720
 
 
@@ -75,20 +80,36 @@ def fit_sopdt(base: Ground) -> Fit:
 
 
 def _search(base: Ground) -> Point:
-    """The best of a few starts around the first-order fit."""
+    """The best of a few starts around the first-order fit, descended on block means before the full record."""
     total = base.first.shape.lags + base.first.L
-    tried = []
-    for delay, ratio in STARTS:
-        L = delay * base.first.L if base.first.L > 0.0 else 0.0
-        S = total - L
-        tried.append(point(base.layout, SecondOrder(S, ratio * S * S), L))
-    tried.sort(key=lambda p: p.rss)
-    return min((refine(base.layout, p.shape, p.L) for p in tried[:TRIED]), key=lambda p: p.rss)
+    even = base.layout.evened()
+    coarse = even.thinned(thinning(even))
+    delays = sorted({delay * base.first.L for delay in DELAYS})
+    starts = [(SecondOrder(total - L, ratio * (total - L) ** 2), L) for L in delays for ratio in RATIOS]
+    starts.sort(key=lambda start: _unexplained(coarse, *start))
+    descended = [refine(coarse, shape, L, ROUGHLY) for shape, L in starts[:TRIED]]
+    best = min(descended, key=lambda p: p.rss)
+    return refine(base.layout, best.shape, best.L)
+
+
+def _unexplained(layout: Layout, shape: SecondOrder, L: float) -> float:
+    """Sum of squares that gain and offset leave of the speed."""
+    answer = np.concatenate([shape.response(s, L)[0] for s in layout.stretches])
+    answer = answer - answer.mean()
+    speed = layout.speed - layout.speed.mean()
+    size = float(answer @ answer)
+    return float(speed @ speed) - (float(answer @ speed) ** 2 / size if size > 0.0 else 0.0)
 
 
 def _equal_if_untold(base: Ground, at: Point) -> Point:
     """Equal lags in place of nearly equal or faintly ringing ones that the sum of squares does not tell from them."""
     S = at.shape.lags
+    assert isinstance(at.shape, SecondOrder)
+    # How far log P is from equal lags, in its own standard deviations.
+    apart = math.log(S * S / (4.0 * at.shape.P))
+    information = np.linalg.pinv(at.jacobian @ at.jacobian.T, hermitian=True)[2, 2]
+    if apart**2 > FAR * EQUAL * information * at.rss / base.layout.rows:
+        return at
     equal = refine(base.layout, SecondOrder(S, S * S / 4.0, True), at.L)
     return equal if equal.rss - at.rss <= EQUAL * at.rss / base.layout.rows else at
 

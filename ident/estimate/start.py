@@ -18,7 +18,7 @@ from ident.record.segments import Floats
 
 FEWEST_ROWS = 1000  # never thin below
 KEPT_VARIANCE = 0.98  # of the command, by its block means
-GRID = 10  # time constants tried
+GRID = 8  # time constants tried
 LONGEST_DEAD_TIME = 0.5  # of the longest stretch
 CANDIDATES = 3
 

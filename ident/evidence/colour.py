@@ -21,6 +21,7 @@ Floats = NDArray[np.float64]
 
 MOST = 60  # highest order looked at
 ROWS_PER_ORDER = 20
+SCREEN = 20  # orders of the quick look that finds most noise white
 # A short model passes the criterion and still makes slow noise look faster than it is, and intervals too narrow:
 # coloured noise gets half as many terms again as the criterion asks for, and at least so many.
 AT_LEAST, MORE = 20, 1.5
@@ -74,6 +75,8 @@ def noise_colour(parts: Sequence[Floats]) -> Colour:
     power = sum(float(part @ part) for part in parts) / n
     if power == 0.0 or most == 0:
         return Colour((np.zeros(0),), np.array([power]))
+    if _looks_white(parts, min(most, SCREEN), power, n):
+        return Colour((np.zeros(0),), np.array([power]))
     full = _burg(parts, most, power)
     order = np.arange(full.order + 1)
     likelihood = n * np.log(np.maximum(full.variances, 1e-300))
@@ -82,6 +85,22 @@ def noise_colour(parts: Sequence[Floats]) -> Colour:
     aicc = likelihood + 2.0 * order + 2.0 * order * (order + 1) / (n - order - 1)
     chosen = min(max(math.ceil(MORE * int(np.argmin(aicc))), AT_LEAST), full.order)
     return Colour(full.predictors[: chosen + 1], full.variances[: chosen + 1])
+
+
+def _looks_white(parts: Sequence[Floats], most: int, power: float, n: int) -> bool:
+    """Whether BIC, over the orders of a quick look (Levinson on sample autocovariances), finds no colour."""
+    c = [power * n, *(sum(float(p[k:] @ p[:-k]) for p in parts) for k in range(1, most + 1))]
+    a, variance, gained = np.zeros(0), c[0], 0.0
+    for order in range(1, most + 1):
+        reflection = -(c[order] + float(a @ c[order - 1 : 0 : -1])) / variance
+        a = np.append(a + reflection * a[::-1], reflection)
+        variance *= 1.0 - reflection**2
+        if variance <= 0.0:
+            return False
+        gained += n * math.log1p(-(reflection**2)) + math.log(n)
+        if gained < 0.0:
+            return False
+    return True
 
 
 def _burg(parts: Sequence[Floats], most: int, power: float) -> Colour:

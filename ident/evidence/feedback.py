@@ -4,7 +4,9 @@ from __future__ import annotations
 
 import numpy as np
 from numpy.typing import NDArray
-from scipy.stats import chi2
+from scipy.special import chdtrc
+
+from ident.evidence.normal import solve_normal
 
 Floats = NDArray[np.float64]
 
@@ -39,10 +41,9 @@ def feedback(commands: list[Floats], speeds: list[Floats]) -> bool:
     if alone <= 0.0:
         return False
     share = 1.0 - both / alone
-    return share >= SHARE and float(chi2.sf(len(move) * share, len(Z))) < CLEARLY
+    return share >= SHARE and float(chdtrc(len(Z), len(move) * share)) < CLEARLY
 
 
 def _unexplained(rows: Floats, target: Floats) -> float:
-    solution = np.linalg.lstsq(rows.T, target, rcond=None)[0]
-    rest = target - solution @ rows
+    rest = target - solve_normal(rows @ rows.T, rows @ target) @ rows
     return float(rest @ rest)

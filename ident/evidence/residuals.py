@@ -4,7 +4,7 @@ from __future__ import annotations
 
 import numpy as np
 from numpy.typing import NDArray
-from scipy.stats import chi2
+from scipy.special import chdtrc
 
 from ident.evidence.normal import lengths
 
@@ -27,7 +27,7 @@ def ljung_box(r: Floats, n: int, fitted: int = 0) -> tuple[float, float]:
     """
     m = len(r)
     q = n * (n + 2.0) * float(np.sum(r**2 / (n - np.arange(1, m + 1))))
-    return q, float(chi2.sf(q, max(m - fitted, 1)))
+    return q, float(chdtrc(max(m - fitted, 1), q))
 
 
 def left_in(rows: Floats, own: int) -> float:
@@ -47,7 +47,7 @@ def left_in(rows: Floats, own: int) -> float:
     both, all_directions = _explained_share(gram, len(gram))
     if all_directions <= directions:
         return 1.0
-    return float(chi2.sf(rows.shape[1] * max(both - explained, 0.0), all_directions - directions))
+    return float(chdtrc(all_directions - directions, rows.shape[1] * max(both - explained, 0.0)))
 
 
 def _explained_share(gram: Floats, rows: int, cut: float = 1e-10) -> tuple[float, int]:
