@@ -2,26 +2,30 @@
 
 from __future__ import annotations
 
-from datetime import UTC, datetime
-from zoneinfo import ZoneInfo, ZoneInfoNotFoundError
+from dataclasses import replace
+from datetime import datetime, timedelta
 
 import numpy as np
-import pandas as pd
 
 from ident.errors import ReadError
 from ident.findings import Finding
-from ident.record import axis, quality
+from ident.record import axis, character, modes, quality, rows, speed_units
 from ident.record.columns import Columns, Mapped, map_columns
+from ident.record.counts import UNIT, speed_from_counts
 from ident.record.dialect import Dialect, sniff
-from ident.record.encoding import LogSource, load
-from ident.record.numbers import Numbers, to_numbers
-from ident.record.quote import printable, quoted
-from ident.record.record import LoopRecord, Source, exclusions
-from ident.record.table import Table, read_table
-from ident.record.times import DATE_ORDERS, Stamps, from_numbers, from_text, is_iso
-from ident.record.vocabulary import TIME_UNITS, UTC_NAMES
+from ident.record.encoding import Body, LogSource, load
+from ident.record.grouping import OtherDecimal
+from ident.record.numbers import Numbers
+from ident.record.options import Options, checked
+from ident.record.quote import quoted
+from ident.record.record import LoopRecord, Source, Understood, exclusions
+from ident.record.rows import Rows
+from ident.record.stamps import told
+from ident.record.table import Wanted, read_table
+from ident.record.times import is_iso
 
 BAD_QUALITY = "bad quality"
+_LAYOUTS = {"wide": rows.wide, "long": rows.long, "paired": rows.paired}
 
 
 def read_csv(
@@ -32,187 +36,143 @@ def read_csv(
     date_order: str | None = None,
     start: datetime | str | None = None,
     counts_per_rev: float | None = None,
+    blanks: str | None = None,
 ) -> LoopRecord:
     """Read a CSV log of one speed loop.
 
-    source          path, bytes or binary file; delimiter , ; or tab, decimal point or comma
-    columns         {"time": ..., "setpoint": ..., "command": ..., "speed": ...}: header names, or positions
+    source          path, bytes or binary file; delimiter , ; or tab, decimal point or comma; one row per sample,
+                    one row per signal and report, or each signal beside its own time
+    columns         {"time": ..., "setpoint": ..., "command": ..., "speed": ...}: header names (or tags), or positions
                     from 0; what is left out is mapped by the header's words
     zone            name of the time zone of stamps without offset, such as "Europe/Berlin"
-    date_order      "dmy" or "mdy" where the dates do not tell
+    date_order      "dmy", "mdy" or "ymd" where the dates do not tell
     start           time of the first row, for logs with elapsed time only: an aware datetime or ISO 8601,
                     local where `zone` is given
-    counts_per_rev  encoder counts are not converted yet: refused
+    counts_per_rev  the speed column is an encoder position of so many counts per revolution
+    blanks          "held" or "missing": what an empty cell means, where the log does not tell
 
-    Returns a LoopRecord whose `source` holds sha256, rows, columns and findings.
+    Returns a LoopRecord whose `source` holds sha256, rows, columns, findings and how the log was understood.
     Raises ReadError, its message naming line and column where there is one.
     """
-    if counts_per_rev is not None:
-        raise ReadError(
-            "not-offered", "Encoder counts are not converted yet: convert counts to speed before the upload."
-        )
-    if date_order is not None and date_order not in DATE_ORDERS:
-        raise ReadError("bad-option", f"date_order is one of {', '.join(DATE_ORDERS)}; not {quoted(str(date_order))}.")
-    place = _zone(zone)
-    begin = _start(start, place)
-
+    options = checked(columns, zone, date_order, start, counts_per_rev, blanks)
     body = load(source)
-    dialect = sniff(body.text)
-    mapped = map_columns(dialect.header, dialect.width, columns)
-    table = read_table(body.text, dialect, time=_iso_column(body.text, mapped, dialect))
-    bad, judged = quality.judge(table, mapped)
-    findings = [*body.findings, *_unread(mapped, dialect), *table.findings, *judged]
-    rows = len(table.line)
+    dialect = sniff(body.head)
+    try:
+        return _read(body, dialect, options)
+    except OtherDecimal:
+        dialect = replace(dialect, decimal="," if dialect.decimal == "." else ".")
+    try:
+        return _read(body, dialect, options)
+    except OtherDecimal as cause:
+        raise ReadError(
+            "ambiguous-numbers", "Some columns have a decimal comma and some a decimal point: export one of them."
+        ) from cause
 
-    stamps = _stamps(table, mapped, dialect.decimal, place, date_order)
-    numbers = {
-        role: to_numbers(table.cells[i], name=mapped.headers[role], decimal=dialect.decimal, line=table.line)
-        for role, i in mapped.index.items()
-        if role != "time" and not (role == "setpoint" and table.cells[i].isna().all())
-    }
-    kept, dropped = axis.without_duplicates(stamps.time, [n.values for n in numbers.values()], table.line)
-    findings += [
-        *dropped,
-        *_missing(numbers, mapped, rows),
-        *_dated(stamps, begin),
-        *_unit_assumed(stamps, mapped),
-    ]
-    time = stamps.time[kept]
-    values = {role: n.values[kept] for role, n in numbers.items()}
-    axis.check_increasing(time, table.line[kept])
-    findings += axis.findings(time, table.line[kept])
+
+def _read(body: Body, dialect: Dialect, options: Options) -> LoopRecord:
+    mapped = map_columns(dialect.header, dialect.width, options.columns, counts=options.counts_per_rev is not None)
+    table = read_table(body, dialect, _wanted(mapped, dialect))
+    bad, judged = quality.judge({name: table.words[i] for i, name in mapped.quality.items()}, table.line)
+    got = _LAYOUTS[mapped.layout](table, mapped, options, dialect.decimal, bad)
+    findings = [*body.findings, *_unread(mapped, dialect), *table.findings, *judged, *got.findings]
+    speed_unit, command_unit = _unit("speed", mapped, got), _unit("command", mapped, got)
+    speed_unit = speed_unit or _unit("setpoint", mapped, got)
+    breaks = tuple(row for row, _ in got.breaks)
+    speed, setpoint = got.values["speed"], got.values.get("setpoint")
+    if options.counts_per_rev is not None:
+        name = got.headers["speed"]
+        speed, resolution = speed_from_counts(speed, got.time, breaks, options.counts_per_rev, name)
+        findings.append(resolution)
+        speed_unit = UNIT
+    spans, said = modes.mode_spans(got.mode, got.headers.get("mode", "mode")) if got.mode else ((), [])
+    if setpoint is not None:
+        setpoint, tracked = modes.without_tracking(setpoint, speed, spans)
+        setpoint, converted = speed_units.in_speed_unit(setpoint, _unit("setpoint", mapped, got), speed_unit)
+        said += [*tracked, *converted]
+    findings += [*said, *_missing(got, mapped, findings), *told(got.stamps, options.start, mapped)]
+    findings += axis.findings(got.time, got.line, breaks)
+    findings += speed_units.cell_units({role: n.units for role, n in got.read.items() if n.units})
+    begin = got.stamps.start or options.start
+    looks = {"speed": character.character(speed), "command": character.character(got.values["command"])}
+    units = {"speed": speed_unit, "command": command_unit}
+    step = float(np.median(np.diff(got.time))) if len(got.time) > 1 else None
+    findings += character.findings({r: c for r, c in looks.items() if c}, units, step)
+    understood = Understood(
+        mapped.layout,
+        body.encoding,
+        dialect.delimiter,
+        dialect.decimal,
+        got.why,
+        got.stamps.told(float(got.time[0])),
+        got.stamps.told(float(got.time[-1]) + sum(step for _, step in got.breaks)),
+        table.dropped | got.dropped,
+        got.breaks,
+    )
     return LoopRecord(
-        time,
-        values["command"],
-        values["speed"],
-        values.get("setpoint"),
-        speed_unit=mapped.units["speed"] or mapped.units.get("setpoint", ""),
-        command_unit=mapped.units["command"],
-        start=stamps.start or begin,
-        excluded=exclusions(bad[kept], BAD_QUALITY),
-        source=Source(body.sha256, rows, mapped.headers, tuple(findings)),
+        got.time,
+        got.values["command"],
+        speed,
+        setpoint,
+        speed_unit=speed_unit,
+        command_unit=command_unit,
+        start=begin + timedelta(seconds=float(got.time[0])) if begin else None,
+        source=Source(body.sha256, table.rows, got.headers, tuple(findings), understood),
+        excluded=exclusions(got.bad, BAD_QUALITY),
+        breaks=breaks,
+        modes=spans,
     )
 
 
-def _zone(zone: str | None) -> ZoneInfo | None:
-    if zone is None:
-        return None
-    try:
-        return ZoneInfo(zone)
-    except (ZoneInfoNotFoundError, ValueError, OSError) as cause:
-        raise ReadError(
-            "bad-option",
-            f'There is no time zone {quoted(str(zone))}: give a name such as "Europe/Berlin" or "UTC".',
-        ) from cause
+def _wanted(mapped: Mapped, dialect: Dialect) -> Wanted:
+    clocks = set(mapped.clocks.values()) - {-1} or {mapped.index["time"]}
+    iso = mapped.date is None and all(is_iso(dialect.first[i]) for i in clocks)
+    others = [mapped.mode, mapped.tag, *mapped.quality]
+    return Wanted(
+        tuple(clocks | ({mapped.date} if mapped.date is not None else set())),
+        tuple(i for role, i in mapped.index.items() if role != "time"),
+        tuple(i for i in others if i is not None),
+        iso,
+    )
 
 
-def _start(start: datetime | str | None, zone: ZoneInfo | None) -> datetime | None:
-    if start is None:
-        return None
-    try:
-        begin = datetime.fromisoformat(start) if isinstance(start, str) else start
-    except ValueError as cause:
-        raise ReadError(
-            "bad-option", f"start {quoted(str(start))} is no ISO 8601 time, such as 2026-03-02T08:15:00Z."
-        ) from cause
-    if begin.utcoffset() is None:
-        if zone is None:
-            raise ReadError("bad-option", "start needs an offset (2026-03-02T08:15:00Z), or give the zone too.")
-        begin = begin.replace(tzinfo=zone)
-    return begin.astimezone(UTC)
+def _unit(role: str, mapped: Mapped, got: Rows) -> str:
+    """The unit of a role by its header or units row, else by the cells where they agree."""
+    if role not in got.read:
+        return ""
+    cells = got.read[role].units
+    return mapped.units.get(role, "") or (next(iter(cells)) if len(cells) == 1 else "")
 
 
-def _iso_column(text: bytes, mapped: Mapped, dialect: Dialect) -> int | None:
-    """The time column if it may be parsed as ISO 8601 on the way; pandas also takes words ("now") for stamps."""
-    time = mapped.index["time"]
-    plain = mapped.date is None and is_iso(dialect.first[time])
-    # One letter is found much faster than a word, and clean rows have none.
-    worded = text.find(b"o", dialect.offset) >= 0 and (b"now" in text or b"today" in text)
-    return time if plain and not worded else None
-
-
-def _stamps(table: Table, mapped: Mapped, decimal: str, zone: ZoneInfo | None, date_order: str | None) -> Stamps:
-    name = mapped.headers["time"]
-    cells = table.cells[mapped.index["time"]]
-    blank = cells.isna().to_numpy()
-    if mapped.date is not None:
-        blank = blank | table.cells[mapped.date].isna().to_numpy()
-    if blank.any():
-        row = int(np.argmax(blank))
-        raise ReadError(
-            "unreadable-time",
-            f"Line {table.line[row]}, column {quoted(name)}: the time stamp is missing; delete that row or fill it.",
-            {"line": int(table.line[row]), "column": printable(name), "count": int(blank.sum())},
-        )
-    if mapped.date is not None:
-        cells = table.cells[mapped.date].astype("str").str.strip() + " " + cells.astype("str").str.strip()
-    if cells.dtype.kind in "iuf" or (cells.dtype.kind != "M" and _mostly_numbers(cells)):
-        values = to_numbers(cells, name=name, decimal=decimal, line=table.line)
-        lost = np.isnan(values.values)
-        if lost.any():
-            row = int(np.argmax(lost))
-            raise ReadError(
-                "unreadable-time",
-                f"Line {table.line[row]}, column {quoted(name)}: {quoted(str(cells.iloc[row]))} is "
-                "no number of seconds.",
-                {"line": int(table.line[row]), "column": printable(name), "count": int(lost.sum())},
-            )
-        exact = cells.to_numpy(dtype=np.int64) if cells.dtype.kind == "i" else values.values
-        scale = TIME_UNITS.get(mapped.units["time"].casefold())
-        return from_numbers(exact, scale=scale, name=name, line=int(table.line[0]))
-    if zone is None and mapped.units["time"].casefold() in UTC_NAMES:
-        zone = ZoneInfo("UTC")
-    return from_text(cells, table.line, name=name, zone=zone, date_order=date_order)
-
-
-def _mostly_numbers(cells: pd.Series) -> bool:
-    try:
-        float(str(cells.iloc[0]).replace(",", "."))
-    except ValueError:
-        return False
-    return True
-
-
-def _missing(numbers: dict[str, Numbers], mapped: Mapped, rows: int) -> list[Finding]:
+def _missing(got: Rows, mapped: Mapped, said: list[Finding]) -> list[Finding]:
     found = []
-    if "setpoint" in mapped.index and "setpoint" not in numbers:
+    if "setpoint" in mapped.index and "setpoint" not in got.read:
         message = f"The setpoint column ({quoted(mapped.headers['setpoint'])}) is empty and was not used."
-        found.append(Finding("missing-values", "warning", message, {"role": "setpoint", "count": rows}))
-    for role, column in numbers.items():
-        lost = column.blank + column.unread
-        if not lost:
-            continue
-        words = ", ".join(f"{word} ({count})" for word, count in column.words.items())
-        also = f"; in their place stood {words}" if words else ""
-        matter = "those rows are left out" if role != "setpoint" else "the setpoint is unknown there"
-        found.append(
-            Finding(
-                "missing-values",
-                "error" if 2 * lost > rows and role != "setpoint" else "warning",
-                f"{lost} of {rows} rows have no number for {role} "
-                f"({quoted(mapped.headers[role])}): {matter}{also}. Blank cells are not taken to mean unchanged.",
-                {
-                    "role": role,
-                    "count": lost,
-                    "blank": column.blank,
-                    **{f"word: {w}": c for w, c in column.words.items()},
-                },
-            )
-        )
+        found.append(Finding("missing-values", "warning", message, {"role": "setpoint", "count": len(got.time)}))
+    for role, column in got.read.items():
+        found += _missing_of(role, column, got.headers[role], held=any(f.code in _HELD for f in said))
     return found
 
 
-def _dated(stamps: Stamps, begin: datetime | None) -> list[Finding]:
-    if stamps.start is not None:
-        if begin is None:
-            return []
-        return [Finding("start-ignored", "info", "The stamps carry their own date, so the start given was not used.")]
-    if begin is not None:
+_HELD = ("exception-reported", "setpoint-held")
+
+
+def _missing_of(role: str, column: Numbers, header: str, *, held: bool) -> list[Finding]:
+    blank = 0 if held else int(column.blank.sum())
+    lost, rows_ = blank + column.unread, len(column.values)
+    if not lost:
         return []
-    if stamps.kind == "local":
-        message = "The stamps carry no offset and no zone was given: elapsed times hold, but the start is unknown."
-        return [Finding("zone-unknown", "warning", f'{message} Pass zone, for example "Europe/Berlin".')]
-    return [Finding("date-unknown", "info", "The log has no date: pass start to place it in time.")]
+    words = ", ".join(f"{word} ({count})" for word, count in column.words.items())
+    also = f"; in their place stood {words}" if words else ""
+    matter = "those rows are left out" if role != "setpoint" else "the setpoint is unknown there"
+    unchanged = ' If an empty cell means "unchanged", give the option "blanks" as held.' if blank else ""
+    return [
+        Finding(
+            "missing-values",
+            "error" if 2 * lost > rows_ and role != "setpoint" else "warning",
+            f"{lost} of {rows_} rows have no number for {role} ({quoted(header)}): {matter}{also}.{unchanged}",
+            {"role": role, "count": lost, "blank": blank, **{f"word: {w}": c for w, c in column.words.items()}},
+        )
+    ]
 
 
 def _unread(mapped: Mapped, dialect: Dialect) -> list[Finding]:
@@ -222,14 +182,3 @@ def _unread(mapped: Mapped, dialect: Dialect) -> list[Finding]:
         f"{mapped.unread} lines between the header and the first row of numbers (line {dialect.line}) were not read."
     )
     return [Finding("unread-lines", "info", message, {"count": mapped.unread, "first_row_line": dialect.line})]
-
-
-def _unit_assumed(stamps: Stamps, mapped: Mapped) -> list[Finding]:
-    """Whole numbers without a unit may be seconds, milliseconds or a row count."""
-    if stamps.kind != "elapsed" or mapped.units["time"] or not np.array_equal(stamps.time, np.round(stamps.time)):
-        return []
-    message = (
-        f"Column {quoted(mapped.headers['time'])} holds whole numbers and names no unit: they were read as seconds. "
-        'If they are milliseconds, name the column "time [ms]".'
-    )
-    return [Finding("time-unit-assumed", "warning", message, {"unit": "s"})]

@@ -17,6 +17,28 @@ LONE = "single row between gaps"
 
 
 @dataclass(frozen=True, slots=True)
+class Understood:
+    """How a log was read, for a person to confirm.
+
+    layout          wide, long or paired
+    why             {role: how its column was recognised}
+    first, last     stamps as a reader of the log would write them
+    dropped         {reason: rows}
+    clock_steps     (row of the record, s by which the clock was set back) of each
+    """
+
+    layout: str
+    encoding: str
+    delimiter: str
+    decimal: str
+    why: dict[str, str]
+    first: str
+    last: str
+    dropped: dict[str, int]
+    clock_steps: tuple[tuple[int, float], ...] = ()
+
+
+@dataclass(frozen=True, slots=True)
 class Source:
     """Where a record came from: what the report shows of the log itself.
 
@@ -29,6 +51,19 @@ class Source:
     rows: int
     columns: dict[str, str] = field(default_factory=dict)
     findings: tuple[Finding, ...] = ()
+    understood: Understood | None = None
+
+
+@dataclass(frozen=True, slots=True)
+class ModeSpan:
+    """Rows start..stop-1 under one mode of the controller.
+
+    mode    manual, automatic or cascade
+    """
+
+    start: int
+    stop: int
+    mode: str
 
 
 @dataclass(frozen=True, eq=False, slots=True)
@@ -42,6 +77,8 @@ class LoopRecord:
     start      time of the first row, aware (kept in UTC), or None
     excluded   spans left out with their reason; rows with a missing command or speed join them, and so do
                single rows between gaps, which cannot carry an initial condition
+    breaks     rows before which the clock was set: no segment crosses them
+    modes      spans by the controller's mode, where logged; in manual the setpoint does not command anything
     segments   runs of two or more usable rows without a gap; estimators give each its own initial condition
 
     Raises IdentError: length-mismatch, time-not-increasing, too-few-rows, not-finite, naive-start,
@@ -57,6 +94,8 @@ class LoopRecord:
     start: datetime | None = field(default=None, kw_only=True)
     source: Source | None = field(default=None, kw_only=True)
     excluded: tuple[Exclusion, ...] = field(default=(), kw_only=True)
+    breaks: tuple[int, ...] = field(default=(), kw_only=True)
+    modes: tuple[ModeSpan, ...] = field(default=(), kw_only=True)
     segments: tuple[Segment, ...] = field(default=(), init=False)
 
     def __post_init__(self) -> None:
@@ -84,7 +123,7 @@ class LoopRecord:
             usable[span.start : span.stop] = False
         missing = usable & (np.isnan(self.command) | np.isnan(self.speed))
         usable &= ~missing
-        found = runs(self.time, usable)
+        found = runs(self.time, usable, self.breaks)
         single = found[:, 1] - found[:, 0] < 2
         lone = np.zeros(self.rows, dtype=np.bool_)
         lone[found[single, 0]] = True

@@ -71,6 +71,18 @@ def uniform_step(time: Floats) -> float | None:
     return float(f"{step:.{STEP_DIGITS}g}") if spread <= UNIFORM_TOLERANCE * step else None
 
 
+def steady_step(steps: Floats) -> tuple[float, bool]:
+    """The typical step and whether all steps but a few lie close to it; 0 where there is none.
+
+    steps   (n,), s, positive
+    """
+    if len(steps) == 0:
+        return 0.0, True
+    typical = float(np.median(steps))
+    odd = np.count_nonzero(np.abs(steps - typical) > STEADY_SPREAD * typical)
+    return typical, bool(odd <= max(2, ODD_SHARE * len(steps)))
+
+
 def gaps(time: Floats) -> NDArray[np.intp]:
     """Rows before which the clock jumps: the step to them is a gap.
 
@@ -79,9 +91,7 @@ def gaps(time: Floats) -> NDArray[np.intp]:
     steps = np.diff(time)
     if len(steps) == 0:
         return np.zeros(0, dtype=np.intp)
-    typical = float(np.median(steps))
-    odd = np.count_nonzero(np.abs(steps - typical) > STEADY_SPREAD * typical)
-    steady = odd <= max(2, ODD_SHARE * len(steps))
+    typical, steady = steady_step(steps)
     limit = (STEADY_GAP if steady else IRREGULAR_GAP) * typical
     # Stamps are rounded: a step of exactly the limit must not become a gap by its last digit.
     return np.flatnonzero(steps > limit * (1 + 1e-9)) + 1
@@ -96,15 +106,16 @@ def spans(flags: Flags) -> NDArray[np.intp]:
     return edges.reshape(-1, 2)
 
 
-def runs(time: Floats, usable: Flags) -> NDArray[np.intp]:
+def runs(time: Floats, usable: Flags, breaks: tuple[int, ...] = ()) -> NDArray[np.intp]:
     """Runs of usable rows without a gap, as rows of (start, stop); single rows included.
 
     time    (n,), s, strictly increasing
     usable  (n,), False where a row is left out
+    breaks  rows before which a run ends whatever the stamps say
     """
     first = usable.copy()
     first[1:] &= ~usable[:-1]
-    jumps = gaps(time)
+    jumps = np.concatenate((gaps(time), np.array(breaks, dtype=np.intp)))
     first[jumps] = usable[jumps]
     starts = np.flatnonzero(first)
     # A run ends where rows stop being usable or where the next one starts.

@@ -44,13 +44,17 @@ EFFORT = _words(
 # Words that make a signal something else than one of the four, whatever stands beside them.
 OTHER = _words(
     """error err deviation abweichung regelabweichung erreur ecart errore limit limits limite max min maximum
-    minimum alarm alarme temperature temperatur temp position pos angle winkel acceleration power leistung
-    pressure druck flow count counts encoder"""
+    minimum alarm alarme temperature temperatur temp angle winkel acceleration power leistung
+    pressure druck flow"""
 )
+COUNTS = _words("count counts encoder pulse pulses impulse impulses ticks increments inkremente position pos")
+TAG = _words("tag tagname tagid point pointname variable varname item itemname channel signal kanal name")
+VALUE = _words("value wert valeur valor valore val")
 QUALITY = _words(
-    """status statuscode quality opcquality qualitat qualitaet qualite calidad qualita mode modus betriebsart
+    """status statuscode quality opcquality qualitat qualitaet qualite calidad qualita
     state zustand etat estado stato"""
 )
+MODE = _words("mode modus betriebsart modo modalita")
 AMBIGUOUS = _words("cv")
 
 TIME_UNITS = {
@@ -124,9 +128,12 @@ def meaning(header: Header) -> str | None:
     """What a column holds.
 
     time, date, setpoint, command or speed; output or input where only the other columns can tell; cv where
-    nothing can; quality for a status column; None where no word is known or the words contradict each other.
+    nothing can; quality for a status column, mode for manual or automatic, counts for an encoder; tag and value
+    for logs with one row per signal; None where no word is known or the words contradict each other.
     """
     words = {*header.words, "".join(header.words)}
+    if words & MODE:
+        return "mode"
     if words & QUALITY:
         return "quality"
     if words & AMBIGUOUS:
@@ -137,6 +144,8 @@ def meaning(header: Header) -> str | None:
         return "date"
     if words & OTHER:
         return None
+    if words & COUNTS and not words & (SETPOINT | COMMAND):
+        return "counts"
     controlled = bool(words & OUTPUT) and bool(words & CONTROLLER)
     roles = {
         "setpoint": bool(words & SETPOINT),
@@ -151,6 +160,8 @@ def meaning(header: Header) -> str | None:
         # "speed command" may be either: it is asked for.
         named = [role for role, said in roles.items() if said]
         return named[0] if len(named) == 1 else None
-    if len(header.words) == 1:
-        return "output" if words & OUTPUT else "input" if words & INPUT else None
-    return None
+    if len(header.words) == 1 and words & (OUTPUT | INPUT):
+        return "output" if words & OUTPUT else "input"
+    if words & TAG:
+        return "tag"
+    return "value" if words & VALUE else None

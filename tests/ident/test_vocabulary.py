@@ -44,7 +44,10 @@ from ident.record.vocabulary import meaning, understand
         ("control error", None, ""),
         ("Speed limit", None, ""),
         ("Phase U voltage", None, ""),
-        ("Value", None, ""),
+        ("Value", "value", ""),
+        ("TagName", "tag", ""),
+        ("Position", "counts", ""),
+        ("MODE", "mode", ""),
         ("", None, ""),
     ],
 )
