@@ -41,7 +41,9 @@ class SecondOrder:
             return SecondOrder(S, S * S / 4.0, True)
         # From a second lag that sampling cannot show to a damping ratio of 0.05.
         least = min(SHORTEST_LAG * layout.step * S, 0.2 * S * S)
-        return SecondOrder(S, float(np.clip(self.P * steps[1], least, 100.0 * S * S)))
+        # A small second lag acts like dead time, linearly: its step is taken in P itself, not in log P.
+        product = self.P * (1.0 + float(np.clip(log_steps[1], -0.7, 2.0)))
+        return SecondOrder(S, float(np.clip(product, least, 100.0 * S * S)))
 
     def response(self, stretch: Stretch, L: float) -> tuple[Floats, Floats]:
         """The answer at the used rows and its slope in L, both (n,)."""

@@ -41,6 +41,7 @@ TRIED = 2  # best starts descended
 ROUGHLY = 1e-2  # of one residual's variance: enough to choose between them
 EQUAL = 3.84  # of a residual's variance: less than this in the sum of squares does not tell lags from equal ones
 FAR = 10.0  # times EQUAL, by the slopes alone: plainly not equal
+CLOSELY = 1e-4  # of one residual's variance: a hundredth of a standard deviation
 ANGLES = 720
 
 
@@ -89,7 +90,7 @@ def _search(base: Ground) -> Point:
     starts.sort(key=lambda start: _unexplained(coarse, *start))
     descended = [refine(coarse, shape, L, ROUGHLY) for shape, L in starts[:TRIED]]
     best = min(descended, key=lambda p: p.rss)
-    return refine(base.layout, best.shape, best.L)
+    return refine(base.layout, best.shape, best.L, CLOSELY)
 
 
 def _unexplained(layout: Layout, shape: SecondOrder, L: float) -> float:
