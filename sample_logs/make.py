@@ -41,6 +41,9 @@ class Drum:
     base: float = -21.0  # dry friction and slip seen as an offset, rpm
 
 
+DRUM = Drum()
+
+
 @dataclass(frozen=True)
 class Panel:
     """The installed PI controller; trapezoidal integral, output limits, integral held at a limit."""
@@ -92,20 +95,20 @@ def plant(drum: Drum, start: float) -> Generator[float, float, None]:
 def by_hand(moves: Sequence[tuple[float, float]], seed: int, setpoint: float | None = None) -> list[Row]:
     """Manual operation: (seconds, command) one after the other."""
     commands = [command for seconds, command in moves for _ in range(round(seconds / STEP_S))]
-    read, drum = tacho(seed), plant(Drum(), commands[0])
-    speed, rows = next(drum), []
+    read, turning = tacho(seed), plant(DRUM, commands[0])
+    speed, rows = next(turning), []
     for command in commands:
         rows.append(Row(setpoint, command, read(speed)))
-        speed = drum.send(command)
+        speed = turning.send(command)
     return rows
 
 
-def automatic(panel: Panel, moves: Sequence[tuple[float, float]], seed: int) -> list[Row]:
+def automatic(panel: Panel, moves: Sequence[tuple[float, float]], seed: int, drum: Drum = DRUM) -> list[Row]:
     """Under the panel's PI: (seconds, setpoint) one after the other, at rest before."""
     setpoints = [setpoint for seconds, setpoint in moves for _ in range(round(seconds / STEP_S))]
-    rest = (setpoints[0] - Drum.base) / Drum.K
-    read, drum = tacho(seed), plant(Drum(), rest)
-    speed, rows, integral, error_before = next(drum), [], rest, 0.0
+    rest = (setpoints[0] - drum.base) / drum.K
+    read, turning = tacho(seed), plant(drum, rest)
+    speed, rows, integral, error_before = next(turning), [], rest, 0.0
     for setpoint in setpoints:
         reading = read(speed)
         error = setpoint - reading
@@ -115,7 +118,7 @@ def automatic(panel: Panel, moves: Sequence[tuple[float, float]], seed: int) -> 
             integral = wanted
         command, error_before = min(max(command, panel.low), panel.high), error
         rows.append(Row(setpoint, command, reading))
-        speed = drum.send(command)
+        speed = turning.send(command)
     return rows
 
 
@@ -128,6 +131,32 @@ def as_csv(rows: list[Row], start: datetime) -> str:
         setpoint = f"{row.setpoint:.1f}," if row.setpoint is not None else ""
         lines.append(f"{stamp.replace('+00:00', 'Z')},{setpoint}{row.command:.2f},{row.speed:.1f}")
     return "\n".join(lines) + "\n"
+
+
+# Ten nights: the gain of each, as the drive belt begins to slip, and the setpoints of a recipe that changes.
+NIGHTS = [
+    (14.6, [(8, 600), (21, 680), (15, 640), (16, 600)]),
+    (14.6, [(6, 600), (17, 560), (19, 650), (18, 600)]),
+    (14.6, [(9, 620), (14, 690), (20, 600), (17, 620)]),
+    (14.6, [(7, 600), (23, 660), (14, 700), (16, 600)]),
+    (14.6, [(8, 610), (18, 570), (16, 610), (18, 660)]),
+    (14.6, [(6, 600), (15, 650), (21, 590), (18, 600)]),
+    (14.6, [(9, 600), (19, 690), (16, 630), (16, 600)]),
+    (12.6, [(7, 600), (20, 655), (18, 700), (15, 600)]),
+    (11.7, [(8, 620), (16, 560), (20, 620), (16, 680)]),
+    (11.2, [(6, 600), (22, 670), (15, 610), (17, 600)]),
+]
+
+
+def nights() -> dict[str, str]:
+    """The same loop, one log a night: file name to its text."""
+    panel, first = Panel(Kp=0.075, Ti=2.3), datetime(2026, 11, 19, 2, 15, tzinfo=WINTER)
+    return {
+        f"nights/night_{n + 1:02d}.csv": as_csv(
+            automatic(panel, recipe, 51 + n, Drum(K=gain)), first + timedelta(days=n, minutes=7 * n % 20)
+        )
+        for n, (gain, recipe) in enumerate(NIGHTS)
+    }
 
 
 def logs() -> dict[str, str]:
@@ -158,11 +187,13 @@ def logs() -> dict[str, str]:
         "nothing_to_learn.csv": as_csv(
             by_hand([(90, 42.5)], 44, setpoint=600), datetime(2026, 11, 18, 13, 5, tzinfo=WINTER)
         ),
+        **nights(),
     }
 
 
 def main(folder: Path) -> None:
     for name, text in logs().items():
+        (folder / name).parent.mkdir(exist_ok=True)
         (folder / name).write_bytes(text.encode())
 
 

@@ -17,7 +17,8 @@ from service.api.samples import ABOUT
 
 ROOT = Path(__file__).resolve().parents[1]
 FOLDER = ROOT / "sample_logs"
-NAMES = ["nothing_to_learn.csv", "oscillating.csv", "setpoint_change.csv", "step_test.csv"]
+NIGHTS = [f"nights/night_{n:02d}.csv" for n in range(1, 11)]
+NAMES = [*NIGHTS, "nothing_to_learn.csv", "oscillating.csv", "setpoint_change.csv", "step_test.csv"]
 
 
 @pytest.fixture(scope="module")
@@ -34,7 +35,7 @@ def make() -> ModuleType:
 
 def test_the_script_makes_the_committed_files(make: ModuleType, tmp_path: Path) -> None:
     make.main(tmp_path)
-    assert sorted(path.name for path in tmp_path.iterdir()) == NAMES
+    assert sorted(str(path.relative_to(tmp_path)) for path in tmp_path.rglob("*.csv")) == NAMES
     for name in NAMES:
         assert (tmp_path / name).read_bytes() == (FOLDER / name).read_bytes(), name
 
