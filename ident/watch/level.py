@@ -4,7 +4,8 @@ Nights of a plant that the model does not quite describe, logged under moves of 
 than their covariances say. With z_i ~ N(level, D_i + X), D_i known, the scatter X has a moment estimate in closed
 form. It is 0 with one night, and rank-deficient with few: what it lacks in nights the tests pay for in thresholds
 (see `compare`). (Random effects by moments: DerSimonian and Laird 1986, Control. Clin. Trials 7, 177-188; several
-dimensions: Jackson, White and Thompson 2010, Stat. Med. 29, 1282-1297.)
+dimensions: Jackson, White and Thompson 2010, Stat. Med. 29, 1282-1297; in two steps: DerSimonian and Kacker 2007,
+Contemp. Clin. Trials 28, 105-114.)
 """
 
 from __future__ import annotations
@@ -36,6 +37,8 @@ class Level:
 def level(z: Floats, known: Floats) -> Level:
     """The level of nights z (n, 3) with known covariances (n, 3, 3), all positive definite."""
     weight = _weights(known)
+    # Where scatter dominates, a poor fit is as good a night as any: weights again, now with it.
+    weight = _weights(known + _scatter(z, known, weight))
     scatter = _scatter(z, known, weight)
     share = float(weight @ weight)
     precision = np.linalg.inv(_scaled(known + scatter, size := _size(known + scatter)))

@@ -138,8 +138,8 @@ def _band(z: Floats, settings: PidSettings, lag: float) -> Floats:
     wide = scale * np.geomspace(1e-5, 1e6, 600)
     size = np.abs(_loop(z, wide, settings, lag))
     decided = wide[((size > LOW) & (size < HIGH)).any(axis=0)]
-    longest = float(z[:, 2].max()) + lag
-    top = min(float(decided[-1]), TURNS / longest) if longest > 0.0 else float(decided[-1])
+    usual = float(np.median(z[:, 2])) + lag
+    top = min(float(decided[-1]), TURNS / usual) if usual > 0.0 else float(decided[-1])
     return np.geomspace(min(float(decided[0]), top / 10.0), top, POINTS)
 
 
