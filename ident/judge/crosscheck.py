@@ -16,7 +16,7 @@ from ident.errors import NotIdentifiable
 from ident.estimate import Fit
 from ident.estimate.lagged import Runs, even_runs
 from ident.findings import Finding, Severity
-from ident.judge.high_order import HighOrder, high_order
+from ident.judge.high_order import high_order
 from ident.judge.resonance import resonance
 from ident.judge.steps import settling_step
 from ident.judge.subspace import subspace_step
@@ -24,6 +24,7 @@ from ident.record import LoopRecord
 from ident.record.segments import Floats
 
 PAST_SPEEDS = 20
+SWINGS = 40  # past speeds at the log's own rate: with fewer, noise makes a swing look well damped
 REACH = 60  # strides within which the fitted model settles
 FINEST = 20  # command lags at least
 ROWS_PER_LAG = 8
@@ -87,7 +88,7 @@ def cross_check(record: LoopRecord, fitted: Fit, *, subspace: bool = True) -> Cr
     else:
         found, std = wide.step_response(len(expected))
         checks.append(_compare("high-order-arx", found, expected, wide.step, std))
-    findings += _resonance(runs, fitted, wide, stride, len(step))
+    findings += _resonance(runs, fitted)
 
     if subspace:
         dead = int(fitted.model.dead_time / (runs.step * stride))
@@ -138,9 +139,9 @@ def _disagreement(check: CrossCheck) -> Finding | None:
     )
 
 
-def _resonance(runs: Runs, fitted: Fit, wide: HighOrder | None, stride: int, settled: int) -> list[Finding]:
-    # Strides hide what swings faster than they do, so the log's own rate is looked at too.
-    own = wide if stride == 1 else high_order(runs, PAST_SPEEDS, min(max(settled, FINEST), REACH))
+def _resonance(runs: Runs, fitted: Fit) -> list[Finding]:
+    # Strides hide what swings faster than they do: here the log's own rate counts.
+    own = high_order(runs, SWINGS, REACH)
     found = resonance(own, fitted.model) if own is not None else None
     return [found] if found else []
 

@@ -12,7 +12,7 @@ from ident.record.segments import Floats
 
 SETTLED = 0.02  # of the static gain
 POINTS = 2**13  # of a period
-FIRST, DOUBLINGS = 8.0, 8  # first half-period over the average residence time
+FIRST, LONGER, TRIES = 8.0, 4.0, 8  # first half-period over the average residence time, and how it grows
 
 
 def settling_step(model: Any, h: float, most: int) -> Floats:
@@ -30,8 +30,9 @@ def _by_fourier(model: Any, h: float, most: int) -> Floats:
     """From the answer to a square wave slow enough to settle in each half: its series has the response as factors."""
     K, slow = model.static_gain, 1e-6 / h
     residence = -float((model.frequency_response(np.array([slow]))[0] / K).imag) / slow
-    half = FIRST * (residence + h)
-    for _ in range(DOUBLINGS):
+    half = FIRST * (abs(residence) + h) / LONGER
+    for _ in range(TRIES):
+        half *= LONGER
         harmonics = np.arange(1, POINTS // 2, 2)
         spectrum = np.zeros(POINTS // 2 + 1, dtype=np.complex128)
         spectrum[harmonics] = -2j / (np.pi * harmonics) * model.frequency_response(np.pi / half * harmonics)
@@ -39,6 +40,5 @@ def _by_fourier(model: Any, h: float, most: int) -> Floats:
         rising = wave[: POINTS // 2]
         if float(np.abs(rising[3 * POINTS // 8 :] - K).max()) <= SETTLED / 10 * abs(K):
             break
-        half *= 2.0
     times = h * np.arange(most)
     return np.asarray(np.interp(times, half / (POINTS // 2) * np.arange(POINTS // 2), rising, right=K))
