@@ -4,11 +4,14 @@ from __future__ import annotations
 
 import logging
 import socket
+import sys
 
 import uvicorn
 
 from service.app import create_app
+from service.errors import ProblemError
 from service.settings import Settings
+from service.store import Store
 
 GRACE_S = 10  # for answers under way when the service is stopped
 
@@ -32,9 +35,16 @@ def address(host: str, port: int) -> str:
 def serve(settings: Settings) -> int:
     """Run until stopped; 0 after an orderly stop, 1 if it could not start."""
     logging.basicConfig(level=settings.log_level.upper())
+    app = create_app(settings)
+    store: Store = app.state.shared.store
+    try:
+        store.open()  # here, so that what stands in its way is said in a sentence
+    except ProblemError as error:
+        print(f"gainwright: {error.problem.detail}\n  code: {error.problem.code}", file=sys.stderr)
+        return 1
     server = Announced(
         uvicorn.Config(
-            create_app(settings),
+            app,
             host=settings.host,
             port=settings.port,
             log_level=settings.log_level,
@@ -49,4 +59,6 @@ def serve(settings: Settings) -> int:
         pass  # raised again by uvicorn after its orderly stop
     except SystemExit:
         return 1  # uvicorn has said why
+    finally:
+        store.close()
     return 0 if server.started else 1

@@ -57,7 +57,7 @@ def upgrade() -> None:
         sa.PrimaryKeyConstraint("number", name="pk_analyses"),
         sa.UniqueConstraint("id", name="uq_analyses_id"),
         sa.ForeignKeyConstraint(["log_id"], ["logs.id"], name="fk_analyses_log_id"),
-        sa.CheckConstraint("status IN ('queued', 'running', 'done', 'failed')", name="ck_analyses_status"),
+        sa.CheckConstraint("status IN ('queued', 'running', 'done', 'failed')", name=op.f("ck_analyses_status")),
     )
     op.create_index("ix_analyses_log_id", "analyses", ["log_id"])
     op.create_index("ix_analyses_status_number", "analyses", ["status", "number"])
