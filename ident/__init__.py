@@ -5,13 +5,14 @@ from ident.estimate import Fit
 from ident.findings import Finding
 from ident.judge import fit
 from ident.loop import Margins, PidSettings, margins
-from ident.plants import Fopdt, Sopdt, UnderdampedSopdt
-from ident.record import LoopRecord, read_csv
+from ident.plants import Arx, Fopdt, Sopdt, UnderdampedSopdt
+from ident.record import LoopRecord, Preview, preview, read_csv
 from ident.report import Report, TuningReport, analyse, summary
 from ident.tune import Proposals, Tuning, propose, tune
 from ident.watch import Drift, MarginDrift, Night, ParameterDrift, PracticalSize, drift, drift_history
 
 __all__ = [
+    "Arx",
     "Drift",
     "Finding",
     "Fit",
@@ -25,6 +26,7 @@ __all__ = [
     "ParameterDrift",
     "PidSettings",
     "PracticalSize",
+    "Preview",
     "Proposals",
     "ReadError",
     "Refused",
@@ -38,6 +40,7 @@ __all__ = [
     "drift_history",
     "fit",
     "margins",
+    "preview",
     "propose",
     "read_csv",
     "summary",

@@ -31,6 +31,8 @@ _MARKS = (
 )
 _PROBE = 65536
 _CONTROLS = bytes(set(range(32)) - set(b"\t\n\r\f"))
+# A power cut leaves some; text of two bytes a character without a mark is half of them.
+_NULS = 0.2
 _EMPTY = b"\0\r\n"
 _NOT_TEXT = (
     "This is not a text file (a picture, a spreadsheet, an archive?): export the log as CSV, in UTF-8 or with a "
@@ -108,7 +110,8 @@ def load(source: LogSource) -> Body:
     probe = probe[: end.text]
     if not probe.strip() and end.text <= _PROBE:
         raise ReadError("empty-log", "The log is empty: send the rows of a CSV file.", {"bytes": end.size})
-    if end.nuls > end.text // 100 or len(probe) - len(probe.translate(None, _CONTROLS)) > len(probe) // 100 + end.nuls:
+    controls = len(probe) - len(probe.translate(None, _CONTROLS)) - probe.count(b"\0")
+    if end.nuls > _NULS * end.text or controls > len(probe) // 100:
         raise ReadError("not-text", _NOT_TEXT)
     size, cut = end.text, end.tail_nuls > 0 and not end.ended
     if cut:
