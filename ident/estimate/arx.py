@@ -30,7 +30,8 @@ def fit_arx(record: LoopRecord, orders: Sequence[int] | None = None) -> Fit:
     orders  (na, nb, delay), na >= 0, nb and delay >= 1; None: na, nb 1..4 and delay 1..21 are searched
 
     Raises NotIdentifiable: irregular-sampling, too-short, or not-identifiable where command or speed never moves,
-    the speed does not answer, or the record cannot tell the coefficients apart; Refused: orders-out-of-range.
+    the speed does not answer, the record cannot tell the coefficients apart or the equation comes out unstable;
+    Refused: orders-out-of-range.
     """
     asked = None if orders is None else _orders(orders)
     runs = even_runs(record)
@@ -38,6 +39,7 @@ def fit_arx(record: LoopRecord, orders: Sequence[int] | None = None) -> Fit:
     na, nb, delay = asked or (found.na, found.nb, found.delay)  # type: ignore[union-attr]
     fitted = fit_equation(runs, na, nb, delay)
     _require_answer(fitted)
+    _require_stable(fitted)
     simulated = [fitted.simulate(r) for r in runs.runs]
     figures = statistics(runs, fitted, simulated, searched=found is not None)
     profile = _delay_profile(found, runs.step) if found and not fitted.exact else None
@@ -54,7 +56,7 @@ def fit_arx(record: LoopRecord, orders: Sequence[int] | None = None) -> Fit:
         covariance=Covariance(_names(fitted), tuple(tuple(float(v) for v in row) for row in fitted.covariance)),
         friction=None,
         statistics=figures,
-        findings=findings(runs, fitted, found, figures),
+        findings=findings(runs, found, figures),
         simulated=_on_record(record, runs, simulated),
         profile=profile,
     )
@@ -86,6 +88,16 @@ def _require_answer(fitted: Equation) -> None:
             "The speed does not answer to the command by clearly more than its noise. Log a larger or longer step of "
             "the command.",
             {"response_in_stds": clear},
+        )
+
+
+def _require_stable(fitted: Equation) -> None:
+    if not fitted.model.stable:
+        raise NotIdentifiable(
+            "not-identifiable",
+            "The fitted ARX equation is unstable, as happens where the plant integrates or noise has the larger part: "
+            "it can be neither simulated nor tuned. Take a first-order model, or log a longer test.",
+            {"largest_pole": max(abs(z) for z in fitted.model.poles)},
         )
 
 

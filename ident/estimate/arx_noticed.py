@@ -4,7 +4,6 @@ from __future__ import annotations
 
 from collections.abc import Iterator
 
-from ident.estimate.equation import Equation
 from ident.estimate.lagged import Runs
 from ident.estimate.orders import MOST_A, MOST_B, Orders
 from ident.evidence.statistics import Statistics
@@ -14,11 +13,10 @@ POOR_FIT = 50.0  # %
 UNLIKELY = 0.01
 
 
-def findings(runs: Runs, fitted: Equation, found: Orders | None, figures: Statistics) -> tuple[Finding, ...]:
+def findings(runs: Runs, found: Orders | None, figures: Statistics) -> tuple[Finding, ...]:
     """All findings of one fit; `found` is None where the caller gave the orders."""
     return (
         *_rows(runs),
-        *_stability(fitted),
         *_limits(found),
         *_residuals(figures),
         *_validation(figures),
@@ -33,18 +31,6 @@ def _rows(runs: Runs) -> Iterator[Finding]:
             f"{runs.left_out} rows have another sample time than the rest and were left out: "
             "an ARX model has one sample time.",
             {"rows": runs.left_out, "sample_time_s": runs.step},
-        )
-
-
-def _stability(fitted: Equation) -> Iterator[Finding]:
-    if not fitted.model.stable:
-        largest = max(abs(z) for z in fitted.model.poles)
-        yield Finding(
-            "model-unstable",
-            "error",
-            "The fitted equation is unstable, as happens where the plant integrates or noise has the larger part: "
-            "do not tune with it. Take a first- or second-order model, or log a longer test.",
-            {"largest_pole": largest},
         )
 
 

@@ -31,14 +31,12 @@ def statistics(runs: Runs, fitted: Equation, simulated: list[Floats], searched: 
     p = len(fitted.coefficients) + 1 + searched
     measured = np.concatenate([r.speed[fitted.skip :] for r in runs.runs])
     modelled = np.concatenate([s[fitted.skip :] for s in simulated])
-    with np.errstate(over="ignore", invalid="ignore"):
-        rms = math.sqrt(float(np.mean((measured - modelled) ** 2)))
     r = autocorrelation(e, min(LAGS, n // 4))
     tested = r[: min(TESTED_LAGS, n // 5)]
     largest = int(np.argmax(np.abs(r))) if len(r) and not fitted.exact else None
     return Statistics(
-        fit_percent=fit_percent(measured, modelled) if math.isfinite(rms) else None,
-        rms_residual=rms,
+        fit_percent=fit_percent(measured, modelled),
+        rms_residual=math.sqrt(float(np.mean((measured - modelled) ** 2))),
         aicc=None if fitted.exact else aicc(fitted.rss, n, p),
         bic=None if fitted.exact else bic(fitted.rss, n, p),
         whiteness_p=None if fitted.exact or not len(tested) else ljung_box(tested, n, len(fitted.model.a))[1],
@@ -84,6 +82,8 @@ def _validation(runs: Runs, fitted: Equation) -> float | None:
         trained = fit_equation(runs.first(row), len(fitted.model.a), len(fitted.model.b), fitted.model.delay)
     except NotIdentifiable:
         return None
+    if not trained.model.stable:
+        return None
     measured, modelled, before = [], [], 0
     for run in runs.runs:
         # A run that begins among the held-out rows has an initial state of its own, taken from itself.
@@ -95,4 +95,4 @@ def _validation(runs: Runs, fitted: Equation) -> float | None:
             modelled.append(trained.simulate(run, known)[start:])
         before += run.rows
     y, y_model = np.concatenate(measured), np.concatenate(modelled)
-    return fit_percent(y, y_model) if len(y) and np.isfinite(y_model).all() else None
+    return fit_percent(y, y_model) if len(y) else None

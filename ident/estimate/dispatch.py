@@ -2,28 +2,41 @@
 
 from __future__ import annotations
 
+from collections.abc import Sequence
+
 from ident.errors import NotIdentifiable, Refused
+from ident.estimate.arx import fit_arx
 from ident.estimate.fit import Fit
 from ident.estimate.fopdt import fit_fopdt
-from ident.estimate.ground import ground
+from ident.estimate.ground import Hold, ground
 from ident.estimate.sopdt import fit_sopdt
 from ident.record import LoopRecord
 
 MODELS = ("fopdt", "sopdt", "arx", "auto")
 
 
-def fit_all(record: LoopRecord, model: str = "auto") -> tuple[Fit, ...]:
+def fit_all(
+    record: LoopRecord, model: str = "auto", orders: Sequence[int] | None = None, hold: Hold | None = None
+) -> tuple[Fit, ...]:
     """Fits of a record, the simplest first.
 
-    model  "fopdt" or "sopdt" for that one alone; "auto" for both, the second where the record carries it
+    model   "fopdt", "sopdt" or "arx" for that one alone; "auto" for the first two, the second where the record
+            carries it
+    orders  (na, nb, delay) of an ARX model; None: searched
+    hold    "zero-order" or "linear": what the command did between samples; None: as the data have it
 
-    Raises NotIdentifiable where the record has too little in it; Refused (not-offered, unknown-model).
+    Raises NotIdentifiable where the record has too little in it; Refused (unknown-model, orders-without-arx,
+    orders-out-of-range).
     """
     if model not in MODELS:
         raise Refused("unknown-model", f"Models are {', '.join(MODELS)}.", {"model": model})
+    if hold not in (None, "zero-order", "linear"):
+        raise Refused("unknown-hold", "Between samples a command is zero-order or linear.", {"hold": str(hold)})
     if model == "arx":
-        raise Refused("not-offered", "The model arx is not fitted yet: ask for fopdt, sopdt or auto.", {"model": model})
-    base = ground(record)
+        return (fit_arx(record, orders),)
+    if orders is not None:
+        raise Refused("orders-without-arx", "Only an ARX model has orders: ask for model arx.", {"model": model})
+    base = ground(record, hold)
     if model == "sopdt":
         return (fit_sopdt(base),)
     first = fit_fopdt(base)

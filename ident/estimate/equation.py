@@ -22,7 +22,6 @@ from ident.plants.arx import Arx
 from ident.record.segments import Floats
 
 FORGOTTEN = 40.0  # neper, below rounding
-LONG = 10**9  # rows: for ever
 DEPENDENT = 1e-13  # smallest over largest singular value of unit columns
 
 
@@ -56,7 +55,7 @@ class Equation:
         return np.asarray(past - self._drive(run))
 
     def simulate(self, run: Run, known: int | None = None) -> Floats:
-        """Simulated speeds (n,) of a run, NaN on its first `skip` rows, whose commands were not all logged.
+        """Speeds (n,) of a run simulated by a stable model, NaN on the first `skip` rows, which lack commands.
 
         The initial state, na numbers, is the one that brings the simulation nearest to the first `known` speeds
         (None: all) in least squares: started from single noisy speeds, a slow plant would carry their noise along.
@@ -76,15 +75,14 @@ class Equation:
                 free[i:, i] = impulse[: rows - i]
             seen = max(min(known if known is not None else rows, rows + self.skip) - self.skip, na)
             gap = run.speed[self.skip : self.skip + rows] - forced[:rows]
-            if np.isfinite(free).all() and np.isfinite(gap).all():
-                forced[:rows] += free @ np.linalg.lstsq(free[:seen], gap[:seen], rcond=None)[0]
+            forced[:rows] += free @ np.linalg.lstsq(free[:seen], gap[:seen], rcond=None)[0]
         out[self.skip :] = forced
         return out
 
     def _memory(self) -> int:
         """Rows after which an initial state is below rounding."""
         slowest = max(abs(z) for z in self.model.poles)
-        return max(int(FORGOTTEN / -math.log(slowest)), 1) if 0.0 < slowest < 1.0 else LONG
+        return max(int(FORGOTTEN / -math.log(slowest)), 1) if slowest > 0.0 else 1
 
     def _drive(self, run: Run) -> Floats:
         """The command's part and the constant, at rows skip..n-1."""

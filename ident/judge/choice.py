@@ -5,7 +5,7 @@ from __future__ import annotations
 from collections.abc import Sequence
 from dataclasses import dataclass
 
-from ident.estimate import Fit, fit_all
+from ident.estimate import Fit, Hold, fit_all
 from ident.record import LoopRecord
 
 CLEARLY = 10.0  # AICc: a difference that leaves little doubt (Burnham and Anderson 2002, section 2.6)
@@ -42,14 +42,19 @@ def choose(fits: Sequence[Fit]) -> Choice:
 NAMES = {"fopdt": "first order with dead time", "sopdt": "second order with dead time", "arx": "the ARX equation"}
 
 
-def fit(record: LoopRecord, model: str = "auto") -> Fit:
+def fit(
+    record: LoopRecord, model: str = "auto", *, orders: Sequence[int] | None = None, hold: Hold | None = None
+) -> Fit:
     """Fit a model to a record.
 
-    model  "fopdt", "sopdt", or "auto" for the one that the data support
+    model   "fopdt", "sopdt", "arx", or "auto" for the one of the first two that the data support
+    orders  (na, nb, delay) of an ARX model; None: na, nb 1..4 and delay 1..21 are searched
+    hold    "zero-order" or "linear": what the command did between samples; None: as the data have it
 
-    Raises NotIdentifiable where the record has too little in it; Refused (not-offered, unknown-model).
+    Raises NotIdentifiable where the record has too little in it; Refused (unknown-model, orders-without-arx,
+    orders-out-of-range).
     """
-    fits = fit_all(record, model)
+    fits = fit_all(record, model, orders, hold)
     return fits[choose(fits).index]
 
 

@@ -93,9 +93,9 @@ def cross_check(record: LoopRecord, fitted: Fit, *, subspace: bool = True) -> Cr
     if subspace:
         dead = int(fitted.model.dead_time / (runs.step * stride))
         longest = max(runs.runs, key=lambda r: r.rows)
-        command = _means(longest.command, stride)[:SUBSPACE_ROWS]
-        speed = longest.speed[::stride][: len(command)]
-        seen, why = subspace_step(command, speed, dead, len(expected))
+        command = _means(longest.command, stride)
+        rows = _liveliest(command, SUBSPACE_ROWS)
+        seen, why = subspace_step(command[rows], longest.speed[::stride][rows], dead, len(expected))
         if seen is None:
             findings.append(_failed("subspace", why))
         else:
@@ -153,6 +153,15 @@ def _failed(method: str, why: str, severity: Severity = "warning") -> Finding:
         f"The structure-free cross-check ({method}) gave no answer: {why}. The fit stands on its own statistics.",
         {"method": method, "reason": why},
     )
+
+
+def _liveliest(command: Floats, most: int) -> slice:
+    """The span of `most` rows in which the command moves most: a wider stride instead would hide the response."""
+    if len(command) <= most:
+        return slice(0, len(command))
+    total = np.cumsum(np.concatenate(([0.0], np.abs(np.diff(command)))))
+    start = int(np.argmax(total[most - 1 :] - total[: len(total) - most + 1]))
+    return slice(start, start + most)
 
 
 def _means(values: Floats, stride: int) -> Floats:

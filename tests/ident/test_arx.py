@@ -307,6 +307,21 @@ def test_an_integrating_plant_has_no_bounded_gain() -> None:
     assert fit.derived["K"].ci95 == (None, None)
 
 
+def test_the_public_names_give_the_same_model_and_tune_it() -> None:
+    u = random_binary(3000, seed=14)
+    record = record_of(u, with_arx_noise(PLANT, u, 0.01, np.random.default_rng(14)))
+    fit = ident.fit(record, "arx", orders=(2, 2, 5))
+    assert fit.name == "arx"
+    assert isinstance(fit.model, ident.Arx)
+    assert fit.model == fit_arx(record, (2, 2, 5)).model
+    assert fit.covariance.names == ("a1", "a2", "b1", "b2")
+    tuning = ident.tune(fit, Ms=1.6)
+    assert max(tuning.margins.Ms, tuning.margins.Mt) == pytest.approx(1.6, rel=1e-3)  # type: ignore[type-var]
+    with pytest.raises(ident.Refused) as error:
+        ident.fit(record, "fopdt", orders=(2, 2, 5))
+    assert error.value.code == "orders-without-arx"
+
+
 # What is refused
 
 
@@ -326,7 +341,9 @@ def test_impossible_orders_are_refused(orders: object) -> None:
     assert error.value.code == "orders-out-of-range"
 
 
-@pytest.mark.parametrize("what", ["short", "constant command", "constant speed", "noise only", "too many orders"])
+@pytest.mark.parametrize(
+    "what", ["short", "constant command", "constant speed", "noise only", "too many orders", "runaway"]
+)
 def test_a_log_that_cannot_carry_the_model_is_refused(what: str) -> None:
     rng = np.random.default_rng(13)
     u, y = random_binary(1000), rng.standard_normal(1000)
@@ -339,6 +356,8 @@ def test_a_log_that_cannot_carry_the_model_is_refused(what: str) -> None:
         y = np.full(1000, 900.0)
     if what == "too many orders":  # a first-order plant without noise: common factors would be free
         y, orders = Arx([-0.9], [0.1], 1, H).simulate(u), (2, 2, 1)
+    if what == "runaway":
+        y, orders = Arx([-1.002], [0.1], 1, H).simulate(u), (1, 1, 1)
     with pytest.raises(ident.NotIdentifiable) as error:
         fit_arx(record_of(u, y), orders)
     assert error.value.code == ("too-short" if what == "short" else "not-identifiable")

@@ -189,6 +189,14 @@ def test_chance_seldom_makes_a_finding() -> None:
     assert np.mean(np.array(seen) > 0) <= 0.08
 
 
+def test_a_long_log_is_judged_where_its_command_moves() -> None:
+    u = np.concatenate((np.zeros(30_000), random_binary(6000)))
+    y = respond(u, H, 2.0, 0.1, 0.05) + 0.1 * np.random.default_rng(12).standard_normal(36_000)
+    found = cross_check(record_of(u, y), ident.fit(record_of(u, y), "fopdt"))
+    assert [c.method for c in found.checks] == ["high-order-arx", "subspace"]
+    assert found.checks[1].agreement_percent > 98.0
+
+
 # What does not work out
 
 
