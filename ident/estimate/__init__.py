@@ -3,5 +3,6 @@
 from ident.estimate.dispatch import fit_all
 from ident.estimate.fit import DeadTimeProfile, Fit
 from ident.estimate.friction import Friction
+from ident.estimate.ground import Hold
 
-__all__ = ["DeadTimeProfile", "Fit", "Friction", "fit_all"]
+__all__ = ["DeadTimeProfile", "Fit", "Friction", "Hold", "fit_all"]

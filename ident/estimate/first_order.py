@@ -33,12 +33,20 @@ class FirstOrder:
 
     def answer(self, stretch: Stretch, L: float) -> tuple[Floats, Floats, Floats]:
         """At the used rows: the answer to the delayed command (n,), its slope in log T (1, n), its slope in L (n,)."""
-        T = self.T
-        gap = lag_gap(stretch.command, stretch.intervals, T)
-        at = delayed(stretch, L, (stretch.command, gap, lag_gap_slope(gap, stretch.intervals, T)))
-        decay = np.exp(-at.since / T)
-        held, q, q_T = at.series
-        return held + decay * q, (decay * (T * q_T + at.since / T * q))[None], decay * q / T
+        T, u, steps, straight = self.T, stretch.command, stretch.intervals, stretch.straight
+        gap = lag_gap(u, steps, T, straight=straight)
+        slope = lag_gap_slope(gap, steps, T, command=u, straight=straight)
+        series = (u, gap, slope, stretch.rates) if straight else (u, gap, slope)
+        at = delayed(stretch, L, series)
+        e, decay = at.since, np.exp(-at.since / T)
+        held, q, q_T = at.series[:3]
+        answer, slope_T, slope_L = held + decay * q, decay * (T * q_T + e / T * q), decay * q / T
+        if straight:
+            m, late = at.series[3], 1.0 - decay
+            answer = answer + m * (e - T * late)
+            slope_T = slope_T - m * T * (late - decay * e / T)
+            slope_L = slope_L - m * late
+        return answer, slope_T[None], slope_L
 
     def transients(self, time: Floats) -> tuple[Floats, Floats]:
         """Free motions from t = 0: exp(-t/T) (1, n), and its slope in log T (1, 1, n)."""

@@ -2,7 +2,9 @@
 
 from __future__ import annotations
 
+import math
 from dataclasses import dataclass
+from typing import Literal
 
 import numpy as np
 
@@ -10,15 +12,21 @@ from ident.errors import NotIdentifiable
 from ident.estimate.coloured import coloured
 from ident.estimate.layout import Layout, lay_out
 from ident.estimate.point import Point
+from ident.estimate.refine import refine
 from ident.estimate.search import search, settle
 from ident.evidence.colour import Colour, noise_colour
 from ident.evidence.feedback import feedback
 from ident.record import LoopRecord
 from ident.record.segments import Floats
 
+Hold = Literal["zero-order", "linear"]
+
 # Taking the noise's colour into account costs some of the simulated fit: up to 1.4 times its sum of squares in
 # simulated loops with slow disturbances. Past this factor the rest is not noise but dynamics that the shape lacks.
 WORTH = 2.0
+MOVING = 0.5  # share of rows with a move, above which a command may be smooth
+SMOOTH = 0.7  # mean square of the second differences over that of the first; 2 for noise and for steps
+CLEARLY = 10.0  # fall of n ln(sum of squares) that decides between held and straight
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -49,13 +57,19 @@ class Found:
     set_aside: bool = False
 
 
-def ground(record: LoopRecord) -> Ground:
-    """Lay out a record and find its plain least-squares FOPDT. Raises NotIdentifiable."""
+def ground(record: LoopRecord, hold: Hold | None = None) -> Ground:
+    """Lay out a record and find its plain least-squares FOPDT.
+
+    hold  what the command did between samples; None: as the data have it
+
+    Raises NotIdentifiable.
+    """
     layout = lay_out(record)
     _require_movement(record, layout)
     at = search(layout)
     if any(s.start == "joined" for s in layout.stretches):
         layout, at = _leave_out_unknown_past(layout, at)
+    layout, at = _between_samples(layout, at, hold)
     return Ground(record, layout, at)
 
 
@@ -85,6 +99,31 @@ def on_record(base: Ground, at: Point) -> Floats:
 def _spread(values: Floats) -> float:
     deviation = values - values.mean()
     return float(deviation @ deviation)
+
+
+def _between_samples(layout: Layout, at: Point, hold: Hold | None) -> tuple[Layout, Point]:
+    """The command between samples as the caller or the data have it.
+
+    Only a command that moves in most rows can be anything but held. Where held and straight explain the speed equally
+    well, a smooth command is taken as straight: a hold would put half a step of its own into the dead time.
+    """
+    moves = [np.diff(s.command) for s in layout.stretches]
+    if hold == "zero-order" or (hold is None and float(np.mean(np.concatenate(moves) != 0.0)) < MOVING):
+        return layout, at
+    straight = layout.straightened()
+    # A straight command leads a held one by half a step.
+    tries = [refine(straight, at.shape, at.L + share * layout.step) for share in (0.5, 0.0)]
+    other = min(tries, key=lambda p: p.rss)
+    better = layout.rows * math.log(max(at.rss, 1e-300) / max(other.rss, 1e-300))
+    if hold == "linear" or better > CLEARLY or (better > -CLEARLY and _smooth(moves)):
+        return straight, other
+    return layout, at
+
+
+def _smooth(moves: list[Floats]) -> bool:
+    """Whether the command's moves change little from row to row."""
+    turns = np.concatenate([np.diff(m) for m in moves])
+    return float(np.mean(turns**2)) < SMOOTH * float(np.mean(np.concatenate(moves) ** 2))
 
 
 def _require_movement(record: LoopRecord, layout: Layout) -> None:

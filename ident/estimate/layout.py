@@ -40,6 +40,7 @@ class Stretch:
     command     (n,), deviation from the record's first usable command
     speed       (n,), deviation from the mean of the usable speeds
     skip        rows at the start left out of the residuals
+    straight    the command is taken as straight between samples, not held
     """
 
     row0: int
@@ -49,6 +50,7 @@ class Stretch:
     speed: Floats
     start: Start
     skip: int = 0
+    straight: bool = False
 
     @property
     def rows(self) -> int:
@@ -58,6 +60,11 @@ class Stretch:
     def intervals(self) -> float | Floats:
         """The step, or the (n-1,) intervals where there is none."""
         return self.step if self.step is not None else np.diff(self.time)
+
+    @property
+    def rates(self) -> Floats:
+        """(n,), the command's slope per s from each row to the next; 0 after the last."""
+        return np.append(np.diff(self.command) / np.diff(self.time), 0.0)
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -92,6 +99,15 @@ class Layout:
     def uniform(self) -> bool:
         """Whether every stretch has its rows on one grid."""
         return all(s.step is not None for s in self.stretches)
+
+    def straightened(self) -> Layout:
+        """The same rows, the command taken as straight between samples."""
+        return replace(self, stretches=tuple(replace(s, straight=True) for s in self.stretches))
+
+    @property
+    def straight(self) -> bool:
+        """Whether the command is taken as straight between samples."""
+        return any(s.straight for s in self.stretches)
 
     def whitened(self, colour: Colour) -> Layout:
         """The same rows, their residuals to be whitened by a colour."""

@@ -31,6 +31,7 @@ def findings(
         *_start(layout),
         *_integrating(layout, at, parameters, derived),
         *_set_aside(found),
+        *_straight(layout),
         *_widths(parameters),
         *_residuals(figures),
         *_dead_time(layout, at),
@@ -73,6 +74,17 @@ def _set_aside(found: Found) -> Iterator[Finding]:
             "warning",
             "Under feedback a model of the noise keeps the parameters unbiased, but here what this model leaves is "
             "not noise: it lacks some of the plant's dynamics. The plain fit is reported; a richer model says more.",
+        )
+
+
+def _straight(layout: Layout) -> Iterator[Finding]:
+    if layout.straight:
+        yield Finding(
+            "command-straight-between-samples",
+            "info",
+            "The command changes smoothly and was taken as straight between its samples, not held. If the controller "
+            "does hold it over the log's own sample time, the dead time is half a sample shorter: say so.",
+            {"sample_time_s": layout.step},
         )
 
 

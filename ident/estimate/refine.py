@@ -2,7 +2,8 @@
 
 Under a held command a first-order answer starts with a corner, so its sum of squares is smooth in L only within one
 sample interval (a cell): the descent stays inside one cell at a time and crosses into the next only where that goes on
-descending. (Kaufman 1975, BIT 15, 49-57: the eliminated parameters' correction is solved with the step.)
+descending. A straight command, or a second lag, has no corners and no cells.
+(Kaufman 1975, BIT 15, 49-57: the eliminated parameters' correction is solved with the step.)
 """
 
 from __future__ import annotations
@@ -26,7 +27,7 @@ def refine(layout: Layout, shape: Shape, L: float, promise: float = PROMISE) -> 
     """The nearest minimum from (shape, L), through as many cells of the dead time as it takes."""
     h = layout.step
     L = max(L, 0.0)
-    if not (layout.uniform and isinstance(shape, FirstOrder)):
+    if not (layout.uniform and isinstance(shape, FirstOrder)) or layout.straight:
         return _descend(layout, point(layout, shape, L), 0.0, np.inf, promise)
     cell = int(L / h)
     best = _descend(layout, point(layout, shape, L), cell * h, (cell + 1) * h, promise)

@@ -47,12 +47,15 @@ class SecondOrder:
 
     def response(self, stretch: Stretch, L: float) -> tuple[Floats, Floats]:
         """The answer at the used rows and its slope in L, both (n,)."""
-        q, r = pair_states(stretch.command, stretch.intervals, self.S, self.P)
-        at = delayed(stretch, L, (stretch.command, q, r))
+        u, straight = stretch.command, stretch.straight
+        q, r = pair_states(u, stretch.intervals, self.S, self.P, straight=straight)
+        at = delayed(stretch, L, (u, q, r, stretch.rates) if straight else (u, q, r))
         c0, c1, c2 = motion(self.S, self.P, at.since)
-        held, q, r = at.series
+        held, q, r = at.series[:3]
+        m = at.series[3] if straight else 0.0
+        q, r = q + m * self.S, r - m
         # Later instants are earlier dead times: the slope in L is minus the speed's own rate.
-        return np.asarray(held + c0 * q + c1 * r), np.asarray(c1 / self.P * q - c2 * r)
+        return np.asarray(held + m * (at.since - self.S) + c0 * q + c1 * r), np.asarray(c1 / self.P * q - c2 * r - m)
 
     def answer(self, stretch: Stretch, L: float) -> tuple[Floats, Floats, Floats]:
         """At the used rows: answer (n,), slopes in the logarithms (k, n), slope in L (n,)."""

@@ -80,9 +80,9 @@ def log_estimate(value: float, std_log: float, unit: str) -> Estimate:
 
 
 def dead_time_profile(layout: Layout, at: Point, known: Uncertainty) -> DeadTimeProfile | None:
-    """The profile over the cells around the minimum; None where rows are not on one grid or fit exactly."""
+    """The profile over the cells around the minimum; None where rows are off one grid or fit exactly."""
     std = math.sqrt(known.log_covariance[-1, -1])
-    if not layout.uniform or at.rss <= 1e-20 * float(layout.target @ layout.target) or std == 0.0:
+    if not layout.uniform or layout.straight or at.rss <= 1e-20 * float(layout.target @ layout.target) or std == 0.0:
         return None
     h = layout.step
     reach = max(1, min(math.ceil(4.5 * std / h), PROFILE_CELLS))

@@ -1,11 +1,12 @@
-"""The exact answer of 1/(P s^2 + S s + 1) to a held command, on any time axis.
+"""The exact answer of 1/(P s^2 + S s + 1) to a command held or straight between samples, on any time axis.
 
 S = T1 + T2 and P = T1 T2 describe two lags, equal lags and an underdamped pair alike, without a seam between them.
-With the command held, q = y - u and r = dy/dt move freely between samples:
+With the command held, q = y - u and r = dy/dt move freely between samples
 
     q(e) = c0 q + c1 r,   r(e) = -(c1/P) q + c2 r
 
-with c0, c1, c2 from `motion`. The states at the samples follow by one second-order recursion each.
+with c0, c1, c2 from `motion`; with a straight one of slope m, q + m S and r - m do, about y = u - m S + m e. At the
+samples both follow from the moves of the command by one second-order recursion each.
 (Zero-order hold of a second-order system: Åström and Wittenmark, Computer-Controlled Systems, table 2.1.)
 """
 
@@ -41,29 +42,36 @@ def motion(S: float, P: float, since: float | Floats) -> tuple[Floats, Floats, F
     return np.asarray(even + sigma * c1), np.asarray(c1), np.asarray(even - sigma * c1)
 
 
-def pair_states(command: Floats, step: float | Floats, S: float, P: float) -> tuple[Floats, Floats]:
+def pair_states(
+    command: Floats, step: float | Floats, S: float, P: float, *, straight: bool = False
+) -> tuple[Floats, Floats]:
     """q = y - u and r = dy/dt (per s) at the samples, from a start settled at command[0].
 
     command  (n,);  step  s, one sample time or (n-1,) intervals;  S  s;  P  s^2
+    straight the command is straight between samples instead of held
     """
-    moved = command - command[0]
     c0, c1, c2 = motion(S, P, step)
-    gamma_y, gamma_r = 1.0 - c0, c1 / P
+    # What a move of the command by 1 leaves in q and r at the next sample.
+    if straight:
+        g_q, g_r = (-S * (1.0 - c0) - c1) / step, (1.0 - c2 - c1 * S / P) / step
+    else:
+        g_q, g_r = -np.ones_like(c0), np.zeros_like(c0)
+    moves = np.diff(command)
     if not isinstance(step, np.ndarray):
-        trace, det = float(c0 + c2), math.exp(-S / P * step)
-        poles = [1.0, -trace, det]
-        y = lfilter([0.0, float(gamma_y), float(c1 * gamma_r - c2 * gamma_y)], poles, moved)
-        r = lfilter([0.0, float(gamma_r), float(-c1 / P * gamma_y - c0 * gamma_r)], poles, moved)
-        return np.asarray(y - moved), np.asarray(r)
-    # A banded triangular system over y[0], r[0], y[1], r[1], ...: linear cost on any axis.
+        poles = [1.0, -float(c0 + c2), math.exp(-S / P * step)]
+        drive = np.concatenate((moves, [0.0]))  # the move from row j to j + 1 shows at j + 1
+        q = lfilter([0.0, float(g_q), float(c1 * g_r - c2 * g_q)], poles, drive)
+        r = lfilter([0.0, float(g_r), float(-c1 / P * g_q - c0 * g_r)], poles, drive)
+        return np.asarray(q), np.asarray(r)
+    # A banded triangular system over q[0], r[0], q[1], r[1], ...: linear cost on any axis.
     n = len(command)
     band = np.zeros((4, 2 * n))
     band[0] = 1.0
     band[2, 0 : 2 * n - 2 : 2], band[3, 0 : 2 * n - 2 : 2] = -c0, c1 / P
     band[1, 1 : 2 * n - 2 : 2], band[2, 1 : 2 * n - 2 : 2] = -c1, -c2
     right = np.zeros(2 * n)
-    right[2::2], right[3::2] = gamma_y * moved[:-1], gamma_r * moved[:-1]
+    right[2::2], right[3::2] = g_q * moves, g_r * moves
     state, info = dtbtrs(band, right, uplo="L")
     assert info == 0  # the diagonal is 1
-    state = np.asarray(state, dtype=np.float64).reshape(n, 2)
-    return np.asarray(state[:, 0] - moved), np.asarray(state[:, 1])
+    pairs = np.asarray(state, dtype=np.float64).reshape(n, 2)
+    return pairs[:, 0].copy(), pairs[:, 1].copy()

@@ -5,7 +5,7 @@ from __future__ import annotations
 from importlib.metadata import PackageNotFoundError, version
 
 from ident.errors import NotIdentifiable, Refused
-from ident.estimate import Fit, fit_all
+from ident.estimate import Fit, Hold, fit_all
 from ident.findings import Finding
 from ident.judge import advice, choose, excitation
 from ident.record import LoopRecord
@@ -20,6 +20,7 @@ def analyse(
     record: LoopRecord,
     *,
     model: str = "auto",
+    hold: Hold | None = None,
     Ms: float = 1.6,
     form: str = "pi",
     goal: str = "integral",
@@ -30,6 +31,7 @@ def analyse(
     """Everything one record says: model, proposals, margins, predicted outcome.
 
     model          fopdt, sopdt, or auto to let the data choose
+    hold           what the command did between samples: zero-order, linear, or None to let the data choose
     Ms             robustness target: max(Ms, Mt) of a proposal is at most this
     form, goal     pi; integral (the largest ki)
     period         s, of the controller; None: the log's sample time, with a finding; 0 for an analogue controller
@@ -41,6 +43,7 @@ def analyse(
     """
     options: dict[str, float | int | str | None] = {
         "model": model,
+        "hold": hold,
         "Ms": Ms,
         "form": form,
         "goal": goal,
@@ -49,7 +52,7 @@ def analyse(
         "seed": seed,
     }
     found: list[Finding] = []
-    fits, refused = _fit(record, model)
+    fits, refused = _fit(record, model, hold)
     choice = choose(fits) if fits else None
     fitted = fits[choice.index] if choice else None
     held, assumed = _period(record, period)
@@ -84,9 +87,9 @@ def analyse(
     )
 
 
-def _fit(record: LoopRecord, model: str) -> tuple[tuple[Fit, ...], NotIdentifiable | None]:
+def _fit(record: LoopRecord, model: str, hold: Hold | None) -> tuple[tuple[Fit, ...], NotIdentifiable | None]:
     try:
-        return fit_all(record, model), None
+        return fit_all(record, model, hold=hold), None
     except NotIdentifiable as error:
         return (), error
 
