@@ -28,6 +28,8 @@ SWINGS = 40  # past speeds at the log's own rate: with fewer, noise makes a swin
 REACH = 60  # strides within which the fitted model settles
 FINEST = 20  # command lags at least
 ROWS_PER_LAG = 8
+ROWS_PER_PAST = 20  # a short log gets fewer past speeds, FEWEST_PAST at least
+FEWEST_PAST = 4
 SUBSPACE_ROWS = 20_000
 CLEAR = 3.5  # standard deviations, the largest over the response
 NOTABLE, LARGE = 5.0, 10.0  # percent of the settled gain
@@ -81,7 +83,8 @@ def cross_check(record: LoopRecord, fitted: Fit, *, subspace: bool = True) -> Cr
     findings: list[Finding] = []
 
     lags = max(len(expected) + 5, FINEST)
-    wide = high_order(runs, PAST_SPEEDS, lags, stride)
+    past = min(max(runs.rows() // (ROWS_PER_PAST * stride), FEWEST_PAST), PAST_SPEEDS)
+    wide = high_order(runs, past, lags, stride)
     if wide is None or float(np.abs(wide.poles).max()) >= 1.0:
         why = "the log has too few rows for it" if wide is None else "its model is unstable"
         findings.append(_failed("high-order-arx", why))

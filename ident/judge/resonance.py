@@ -12,6 +12,7 @@ from ident.judge.high_order import HighOrder
 LIGHT = 0.1  # damping ratio below which a peak is narrow
 ABOVE = 2.0  # times the fitted model's response at the same frequency
 CLEAR = 5.0  # standard deviations above it
+RESOLVED = 0.8  # of pi/h: above it, sampling itself makes peaks
 HIGH = 0.03  # of the static gain: a lower peak moves no loop
 
 
@@ -22,7 +23,7 @@ def resonance(seen: HighOrder, model: Any) -> Finding | None:
     rate = -np.log(z) / seen.step  # -s of the pole, 1/s
     w = np.abs(np.angle(z)) / seen.step
     damping = rate.real / np.abs(rate)
-    narrow = damping < LIGHT
+    narrow = (damping < LIGHT) & (w < RESOLVED * np.pi / seen.step)
     w, damping = w[narrow], damping[narrow]
     if not len(w):
         return None

@@ -17,7 +17,7 @@ from ident.record.segments import Floats
 
 ORDERS = (2, 4)
 HORIZON = 20  # block rows
-FEWEST = 10 * HORIZON  # rows
+FEWEST = 6 * HORIZON  # rows
 
 
 def subspace_step(command: Floats, speed: Floats, dead: int, rows: int) -> tuple[Floats | None, str]:
