@@ -26,6 +26,7 @@ Hold = Literal["zero-order", "linear"]
 WORTH = 2.0
 MOVING = 0.5  # share of rows with a move, above which a command may be smooth
 SMOOTH = 0.7  # mean square of the second differences over that of the first; 2 for noise and for steps
+TOLERATED = 1.3  # times the held sum of squares, for a smooth command
 CLEARLY = 10.0  # fall of n ln(sum of squares) that decides between held and straight
 
 
@@ -104,8 +105,9 @@ def _spread(values: Floats) -> float:
 def _between_samples(layout: Layout, at: Point, hold: Hold | None) -> tuple[Layout, Point]:
     """The command between samples as the caller or the data have it.
 
-    Only a command that moves in most rows can be anything but held. Where held and straight explain the speed equally
-    well, a smooth command is taken as straight: a hold would put half a step of its own into the dead time.
+    Only a command that moves in most rows can be anything but held. A smooth one is taken as straight unless that
+    explains the speed plainly worse: a hold would take half a step of its own out of the dead time, and by chance of
+    where the samples fall can even fit a little better for it.
     """
     moves = [np.diff(s.command) for s in layout.stretches]
     if hold == "zero-order" or (hold is None and float(np.mean(np.concatenate(moves) != 0.0)) < MOVING):
@@ -115,7 +117,7 @@ def _between_samples(layout: Layout, at: Point, hold: Hold | None) -> tuple[Layo
     tries = [refine(straight, at.shape, at.L + share * layout.step) for share in (0.5, 0.0)]
     other = min(tries, key=lambda p: p.rss)
     better = layout.rows * math.log(max(at.rss, 1e-300) / max(other.rss, 1e-300))
-    if hold == "linear" or better > CLEARLY or (better > -CLEARLY and _smooth(moves)):
+    if hold == "linear" or better > CLEARLY or (_smooth(moves) and other.rss < TOLERATED * at.rss):
         return straight, other
     return layout, at
 
