@@ -8,6 +8,7 @@ import time
 
 from service.errors import Problem
 from service.work.options import Options
+from service.work.stages import enter
 
 
 def obey(source: bytes, options: Options) -> bytes | Problem:
@@ -15,6 +16,9 @@ def obey(source: bytes, options: Options) -> bytes | Problem:
     if source == b"die":
         os.kill(os.getpid(), signal.SIGKILL)
     if source == b"hang":
+        time.sleep(600)
+    if source == b"analysing":
+        enter("analysing")
         time.sleep(600)
     if source.startswith(b"wait"):
         time.sleep(0.5)

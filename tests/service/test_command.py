@@ -2,25 +2,29 @@
 
 from __future__ import annotations
 
+import os
 import socket
 import subprocess
 import sys
+from pathlib import Path
 
 import pytest
-from conftest import ROOT
+from conftest import ROOT, own_folder
 from starlette.testclient import TestClient
 
 from service.cli import main
 from service.serve import address
+from service.store import Store
 from service.work.options import Options
 
 SAMPLE = ROOT / "sample_logs" / "step_test.csv"
 
 
-def gainwright(*arguments: str) -> subprocess.CompletedProcess[bytes]:
+def gainwright(*arguments: str, **environment: str) -> subprocess.CompletedProcess[bytes]:
     return subprocess.run(
         [sys.executable, "-m", "service.cli", *arguments],
         cwd=ROOT,
+        env={**os.environ, "GAINWRIGHT_DATA_DIR": str(own_folder()), **environment},
         capture_output=True,
         timeout=120,
     )
@@ -99,6 +103,18 @@ def test_a_port_in_use_is_said_and_ends_in_failure() -> None:
     assert told.returncode == 1
     assert "address already in use" in told.stderr.decode()
     assert told.stdout == b""
+
+
+def test_a_folder_in_use_is_said_in_a_sentence_and_ends_in_failure(tmp_path: Path) -> None:
+    store = Store(tmp_path)
+    store.open()
+    try:
+        told = gainwright("serve", "--port", "0", GAINWRIGHT_DATA_DIR=str(tmp_path))
+    finally:
+        store.close()
+    assert (told.returncode, told.stdout) == (1, b"")
+    assert b"code: data-in-use" in told.stderr
+    assert b"Traceback" not in told.stderr
 
 
 def test_numpy_comes_after_the_thread_limit() -> None:

@@ -297,6 +297,22 @@ def test_a_log_that_kills_its_worker_has_failed_after_three_attempts_and_may_try
         assert again.json()["status"] in {"queued", "running"}
 
 
+def test_the_stage_is_the_worker_s_own_word() -> None:
+    with TestClient(create_app(apart(), task=obey)) as service:
+        told = service.post("/v1/loops/pan/logs", content=b"analysing").json()
+        end = time.monotonic() + 20
+        while told["stage"] != "analysing" and time.monotonic() < end:
+            time.sleep(0.05)
+            told = service.get(f"/v1/analyses/{told['id']}").json()
+        assert (told["status"], told["stage"], told["progress"]) == ("running", "analysing", 0.5)
+        # Waiting ends when the time is up, and says how it stands.
+        begun = time.monotonic()
+        waited = service.post("/v1/loops/pan/logs", content=b"analysing", headers={"Prefer": "wait=1"})
+        assert 0.9 < time.monotonic() - begun < 20
+        assert (waited.status_code, waited.json()["status"]) == (200, "running")
+        assert waited.headers["preference-applied"] == "wait=1"
+
+
 def test_a_stop_in_order_leaves_the_rest_for_the_next_start(step_test: bytes) -> None:
     folder = own_folder()
     with TestClient(create_app(apart(data_dir=folder), task=obey)) as service:
