@@ -7,7 +7,7 @@ from importlib.metadata import PackageNotFoundError, version
 from ident.errors import NotIdentifiable, Refused
 from ident.estimate import Fit, Hold, fit_all
 from ident.findings import Finding
-from ident.judge import advice, choose, excitation
+from ident.judge import CrossChecks, advice, choose, cross_check, excitation
 from ident.record import LoopRecord
 from ident.report.cautions import CAUTIONS
 from ident.report.curves import curves
@@ -27,6 +27,7 @@ def analyse(
     period: float | None = None,
     compute_delay: float = 0.0,
     seed: int = 0,
+    subspace: bool = True,
 ) -> Report:
     """Everything one record says: model, proposals, margins, predicted outcome.
 
@@ -37,6 +38,7 @@ def analyse(
     period         s, of the controller; None: the log's sample time, with a finding; 0 for an analogue controller
     compute_delay  s, from reading the speed to writing the command
     seed           of every random draw: the same record and options give the same report
+    subspace       cross-check the model by a subspace method too, which is slow to load the first time
 
     A record with too little in it gives a report without fits that says so. Raises Refused for options without
     an answer.
@@ -57,8 +59,10 @@ def analyse(
     fitted = fits[choice.index] if choice else None
     held, assumed = _period(record, period)
     proposal: Proposals | None = None
+    checked = CrossChecks((), ())
     if fitted is not None:
-        found += assumed
+        checked = cross_check(record, fitted, subspace=subspace)
+        found += [*assumed, *checked.findings]
         proposal, untunable = _propose(fitted, Ms=Ms, form=form, goal=goal, period=held, delay=compute_delay)
         found += untunable
     else:
@@ -83,6 +87,7 @@ def analyse(
         curves=curves(record, fitted, tunings, period=held, compute_delay=compute_delay),
         findings=tuple(found),
         cautions=CAUTIONS,
+        cross_checks=checked.checks,
         options=options,
     )
 

@@ -11,7 +11,7 @@ from dataclasses import dataclass, field
 from ident.estimate import Friction
 from ident.evidence import Covariance, Estimate, Statistics
 from ident.findings import Finding
-from ident.judge import Advice, Excitation, Operation
+from ident.judge import Advice, CrossCheck, Excitation, Operation
 from ident.loop import Margins, PidSettings
 from ident.tune import Predicted, WorstCase
 
@@ -167,5 +167,6 @@ class Report:
     curves: Curves
     findings: tuple[Finding, ...]
     cautions: tuple[str, ...]
+    cross_checks: tuple[CrossCheck, ...] = ()
     options: dict[str, float | int | str | None] = field(default_factory=dict)
     report_version: str = REPORT_VERSION

@@ -56,6 +56,8 @@ def _model(fit: FitReport, report: Report) -> Iterator[str]:
     yield f"  fit       {percent} (NRMSE of the simulated response); {held_out}"
     if len(report.fits) > 1:
         yield f"  chosen    {report.selected_because}"
+    for check in report.cross_checks:
+        yield f"  checked   by {check.method}: step responses agree to {check.agreement_percent:.1f} %"
     yield f"  residual  {s.rms_residual:.4g} {report.log.speed_unit} rms over {s.rows_used} rows"
 
 
