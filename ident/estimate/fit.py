@@ -5,6 +5,7 @@ from __future__ import annotations
 from dataclasses import dataclass
 
 from ident.estimate.friction import Friction
+from ident.estimate.shape import Shape
 from ident.evidence import Covariance, Estimate, Statistics
 from ident.findings import Finding
 from ident.plants import Arx, Fopdt, Sopdt, UnderdampedSopdt
@@ -21,6 +22,14 @@ class DeadTimeProfile:
     L: Floats
     ratio: Floats
     limit: float
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class Spread:
+    """Where plausible plants are drawn: the shape, and the covariance of log|K|, its logarithms and L (s)."""
+
+    shape: Shape
+    log_covariance: Floats
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -43,3 +52,4 @@ class Fit:
     findings: tuple[Finding, ...]
     simulated: Floats
     profile: DeadTimeProfile | None
+    spread: Spread | None = None

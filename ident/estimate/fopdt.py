@@ -5,7 +5,7 @@ from __future__ import annotations
 import numpy as np
 
 from ident.estimate.diagnostics import statistics
-from ident.estimate.fit import Fit
+from ident.estimate.fit import Fit, Spread
 from ident.estimate.ground import Ground, on_record, with_noise
 from ident.estimate.known import require_known
 from ident.estimate.noticed import findings
@@ -54,4 +54,5 @@ def fit_fopdt(base: Ground) -> Fit:
         findings=findings(found, parameters, derived, figures),
         simulated=on_record(base, at),
         profile=profile,
+        spread=Spread(at.shape, known.log_covariance),
     )

@@ -11,7 +11,7 @@ import math
 import numpy as np
 
 from ident.estimate.diagnostics import statistics
-from ident.estimate.fit import Fit
+from ident.estimate.fit import Fit, Spread
 from ident.estimate.ground import Ground, on_record, with_noise
 from ident.estimate.known import require_known
 from ident.estimate.layout import Layout
@@ -77,6 +77,7 @@ def fit_sopdt(base: Ground) -> Fit:
         findings=findings(found, parameters, derived, figures),
         simulated=on_record(base, at),
         profile=None,
+        spread=Spread(at.shape, known.log_covariance),
     )
 
 

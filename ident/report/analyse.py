@@ -4,8 +4,10 @@ from __future__ import annotations
 
 from importlib.metadata import PackageNotFoundError, version
 
+import numpy as np
+
 from ident.errors import NotIdentifiable, Refused
-from ident.estimate import Fit, Hold, fit_all
+from ident.estimate import Fit, Hold, fit_all, plausible
 from ident.findings import Finding
 from ident.judge import CrossChecks, advice, choose, cross_check, excitation
 from ident.record import LoopRecord
@@ -13,7 +15,9 @@ from ident.report.cautions import CAUTIONS
 from ident.report.curves import curves
 from ident.report.log import log_info, record_info
 from ident.report.shape import FitReport, Report, TuningReport
-from ident.tune import Proposals, propose
+from ident.tune import Proposals, propose, worst_case
+
+PLANTS = 200  # drawn from the fit for the worst case
 
 
 def analyse(
@@ -69,8 +73,20 @@ def analyse(
         assert refused is not None
         found.append(Finding(refused.code, "error", refused.message, refused.evidence))
     moved = excitation(record, refused)
+    drawn = plausible(fitted, np.random.default_rng(seed), PLANTS) if fitted else ()
     tunings = tuple(
-        TuningReport(t.method, t.form, t.settings, t.margins, None, t.predicted, {}, t.findings)
+        TuningReport(
+            t.method,
+            t.form,
+            t.settings,
+            t.margins,
+            worst_case(drawn, t.settings, delay=fitted.model.dead_time, period=held, compute_delay=compute_delay)
+            if fitted and t.margins.stable
+            else None,
+            t.predicted,
+            {},
+            t.findings,
+        )
         for t in (proposal.tunings if proposal else ())
     )
     return Report(

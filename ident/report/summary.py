@@ -84,6 +84,12 @@ def _tuning(tuning: TuningReport, report: Report, *, recommended: bool) -> Itera
         f"  Ms {_number(m.Ms)}   Mt {_number(m.Mt)}   gain margin {_number(m.gain_margin)}   "
         f"phase margin {_number(m.phase_margin_deg)} deg   delay margin {_number(m.delay_margin_s)} s"
     )
+    if tuning.worst_case:
+        w = tuning.worst_case
+        yield (
+            f"  over {w.plants} plants that the log allows: Ms {_number(w.Ms_median)} (median), "
+            f"{_number(w.Ms_p95)} (95 %), unstable on {100.0 * w.unstable_share:.1f} %"
+        )
     if tuning.predicted:
         step, load = tuning.predicted.setpoint_step, tuning.predicted.load_step
         yield (

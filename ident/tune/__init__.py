@@ -6,7 +6,7 @@ from ident.tune.propose import Proposals, propose
 from ident.tune.setpoint_weight import choose_setpoint_weight
 from ident.tune.simc import simc
 from ident.tune.tuning import Tuning, tune
-from ident.tune.worst_case import WorstCase
+from ident.tune.worst_case import WorstCase, worst_case
 
 __all__ = [
     "LoadStep",
@@ -21,4 +21,5 @@ __all__ = [
     "propose",
     "simc",
     "tune",
+    "worst_case",
 ]
