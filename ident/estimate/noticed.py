@@ -4,6 +4,7 @@ from __future__ import annotations
 
 from collections.abc import Iterator
 
+from ident.estimate.asymmetry import up_and_down
 from ident.estimate.first_order import LONGEST_T
 from ident.estimate.ground import Found
 from ident.estimate.layout import Layout
@@ -32,6 +33,7 @@ def findings(
         *_integrating(layout, at, parameters, derived),
         *_set_aside(found),
         *_straight(layout),
+        *up_and_down(found),
         *_widths(parameters),
         *_residuals(figures),
         *_dead_time(layout, at),
