@@ -22,10 +22,18 @@ export function s(tag, attributes, ...children) {
   return fill(document.createElementNS(SVG, tag), attributes, children);
 }
 
+const GREEK = { zeta: "ζ", w0: "ω0" };
+const STANDING = new Set(["exp"]);
+
 /** A symbol of the trade with its index set low: "Kp" becomes K with subscript p. */
 export function symbol(name) {
-  const match = /^([A-Za-z])([a-z0-9]+)$/.exec(name);
-  return match ? h("var", {}, match[1], h("sub", {}, match[2])) : h("var", {}, name);
+  const match = /^(.)_?([A-Za-z0-9]+)$/.exec(GREEK[name] ?? name);
+  return match ? h("var", {}, match[1], h("sub", {}, match[2])) : h("var", {}, GREEK[name] ?? name);
+}
+
+/** A formula with its symbols set as symbols: "K/(T1 + T2)". */
+export function expression(text) {
+  return text.split(/([A-Za-z][A-Za-z0-9_]*)/).map((part, i) => (i % 2 && !STANDING.has(part) ? symbol(part) : part));
 }
 
 /**

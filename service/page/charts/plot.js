@@ -8,7 +8,7 @@ let serial = 0;
 
 /**
  * {node, X, Y, area}: append marks to `area`, which is clipped to the frame.
- * x, y   {domain: [low, high], label, count}
+ * x, y   {domain: [low, high], label, count}; for x also ticks: {values, text(value)} of its own
  * title, describe   what it shows, and what it says, in words
  */
 export function plot({ width, height, x, y, title, describe, margin = {} }) {
@@ -17,7 +17,7 @@ export function plot({ width, height, x, y, title, describe, margin = {} }) {
   const X = linear(x.domain, [room.left, right]);
   const Y = linear(y.domain, [bottom, room.top]);
   const id = `plot-${(serial += 1)}`;
-  const across = ticks(x.domain, x.count ?? Math.max(3, Math.round(width / 90)));
+  const across = x.ticks ?? ticks(x.domain, x.count ?? Math.max(3, Math.round(width / 90)));
   const up = ticks(y.domain, y.count ?? Math.max(3, Math.round(height / 50)));
   const area = s("g", { "clip-path": `url(#${id}-clip)` });
   const node = s("svg", { viewBox: `0 0 ${width} ${height}`, class: "plot", role: "img", "aria-labelledby": `${id}-title ${id}-desc` },
@@ -28,7 +28,7 @@ export function plot({ width, height, x, y, title, describe, margin = {} }) {
     across.values.map((v) => s("line", { class: "grid", x1: X(v), x2: X(v), y1: room.top, y2: bottom })),
     up.values.map((v) => s("line", { class: v === 0 ? "grid zero" : "grid", x1: room.left, x2: right, y1: Y(v), y2: Y(v) })),
     area,
-    across.values.map((v) => s("text", { class: "tick", x: X(v), y: bottom + 16, "text-anchor": "middle" }, fixed(v, across.decimals))),
+    across.values.map((v) => s("text", { class: "tick", x: X(v), y: bottom + 16, "text-anchor": "middle" }, across.text ? across.text(v) : fixed(v, across.decimals))),
     up.values.map((v) => s("text", { class: "tick", x: room.left - 8, y: Y(v) + 4, "text-anchor": "end" }, fixed(v, up.decimals))),
     x.label && s("text", { class: "axis", x: right, y: height - 6, "text-anchor": "end" }, x.label),
     y.label && s("text", { class: "axis", x: room.left, y: room.top - 12, "text-anchor": "start" }, y.label));

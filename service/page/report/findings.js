@@ -14,7 +14,8 @@ function collect(report) {
   const all = [
     ...report.findings.map((one) => ["", one]),
     ...report.log.findings.map((one) => ["the log", one]),
-    ...report.fits.flatMap((fit) => fit.findings.map((one) => [word(MODELS, fit.model).toLowerCase(), one])),
+    // What was noticed about a fit that was not chosen stands with the comparison of the models.
+    ...report.fits.filter((_, i) => report.selected === null || i === report.selected).flatMap((fit) => fit.findings.map((one) => [word(MODELS, fit.model).toLowerCase(), one])),
     ...report.tunings.flatMap((tuning) => tuning.findings.map((one) => [word(METHODS, tuning.method), one])),
   ];
   const seen = new Set();
@@ -31,6 +32,12 @@ function evidence(figures) {
       h("dd", {}, typeof value === "number" ? significant(value, 5) : String(value ?? "–"))))));
 }
 
+/** The findings as a list: [[what about, finding]]. */
+export function findingList(some) {
+  return h("ul", {}, some.map(([about, one]) => h("li", { "data-testid": `finding-${one.code}` },
+    h("p", {}, one.message), h("p", { class: "hint" }, about && `${about} · `, h("code", {}, one.code)), evidence(one.evidence))));
+}
+
 export function findings(report) {
   const all = collect(report);
   return section("findings", "Findings", all.length ? null : "Nothing stood out.",
@@ -38,8 +45,7 @@ export function findings(report) {
       const some = all.filter(([, one]) => one.severity === severity);
       return some.length > 0 && h("div", { class: `severity ${severity}` },
         h("h3", {}, h("span", { class: "shape", "aria-hidden": "true" }, mark), title),
-        h("ul", {}, some.map(([about, one]) => h("li", { "data-testid": `finding-${one.code}` },
-          h("p", {}, one.message), h("p", { class: "hint" }, about && `${about} · `, h("code", {}, one.code)), evidence(one.evidence)))));
+        findingList(some));
     }));
 }
 

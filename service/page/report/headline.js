@@ -1,8 +1,8 @@
 // What the log says and what to set, before anything else.
 
-import { h, symbol } from "/page/dom.js";
+import { expression, h, symbol } from "/page/dom.js";
 import { estimate, exact, fixed, interval, per, significant, withUnit } from "/page/format.js";
-import { METHODS, MODELS, PARAMETERS, word } from "/page/report/words.js";
+import { formula, METHODS, MODELS, PARAMETERS, word } from "/page/report/words.js";
 
 function quantity(name, { value, unit, ci95, std }) {
   const shown = estimate({ value, ci95, std });
@@ -12,12 +12,20 @@ function quantity(name, { value, unit, ci95, std }) {
       h("p", { class: "ci" }, "95 %: ", interval(shown))));
 }
 
+/** What comes after the dead time, by the parameters that the model has. */
+function answer({ T, T1, T2, zeta, w0 }) {
+  if (T) return `then 63 % of the change comes within ${withUnit(estimate(T).value, "s")}`;
+  if (T1) return `then the speed follows through two lags of ${withUnit(estimate(T1).value, "s")} and ${withUnit(estimate(T2).value, "s")}`;
+  const overshoot = 100 * Math.exp((-Math.PI * zeta.value) / Math.sqrt(1 - zeta.value ** 2));
+  const peak = Math.PI / (w0.value * Math.sqrt(1 - zeta.value ** 2));
+  return `then the speed swings past its end value by ${withUnit(fixed(overshoot, overshoot < 1 ? 2 : 0), "%")}, ${withUnit(significant(peak, 3), "s")} later`;
+}
+
 function sentence(fit, log) {
-  const { K, T, L } = fit.parameters;
-  if (!K || !T || !L) return null;
+  const { K, L, ...rest } = fit.parameters;
+  if (!K || !L || !(rest.T || rest.T1 || rest.zeta)) return null;
   const unit = log.command_unit ? `1 ${log.command_unit}` : "One unit";
-  const lead = withUnit(estimate(L).value, "s");
-  return `${unit} more command changes the speed by ${withUnit(estimate(K).value, log.speed_unit)} in the end. Nothing happens for ${lead}; then 63 % of the change comes within ${withUnit(estimate(T).value, "s")}.`;
+  return `${unit} more command changes the speed by ${withUnit(estimate(K).value, log.speed_unit)} in the end. Nothing happens for ${withUnit(estimate(L).value, "s")}; ${answer(rest)}.`;
 }
 
 function setting(name, value, unit, gloss, digits = 4) {
@@ -45,6 +53,7 @@ function model(report) {
   return h("section", { class: "card", "aria-labelledby": "model-title" },
     h("p", { class: "eyebrow" }, "The model"),
     h("h2", { id: "model-title", "data-testid": "model" }, word(MODELS, fit.model)),
+    formula(fit) && h("p", { class: "formula", "data-testid": "formula" }, expression(formula(fit))),
     h("dl", { class: "quantities" }, Object.entries(fit.parameters).map(([name, one]) => quantity(name, one))),
     h("p", {}, sentence(fit, report.log)),
     report.selected_because && h("p", { class: "note" }, report.selected_because));

@@ -12,7 +12,7 @@ function spans(list) {
 export function log(report, name) {
   const { log: read, record, options } = report;
   const facts = [
-    ["File", name],
+    name && ["File", name],
     ["Rows", String(read.rows)],
     ["Start", instant(read.start) ?? "no absolute time in the log"],
     ["End", instant(read.end)],

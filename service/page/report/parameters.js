@@ -3,33 +3,43 @@
 import { dataTable } from "/page/charts/data_table.js";
 import { responsive } from "/page/charts/plot.js";
 import { profile as profileChart } from "/page/charts/small.js";
-import { h, section, symbol, table } from "/page/dom.js";
+import { expression, h, section, table } from "/page/dom.js";
 import { estimate, interval } from "/page/format.js";
-import { MODELS, PARAMETERS, word } from "/page/report/words.js";
+import { formula, MODELS, PARAMETERS, RINGING, word } from "/page/report/words.js";
 
-function row(name, one, label) {
+const HEAD = ["Parameter", "Value", "Standard deviation", "95 % interval", "Unit"];
+
+function row(hook, name, one, label = expression(name), gloss = word(PARAMETERS, name)) {
   const shown = estimate(one);
-  return [[label ?? symbol(name), " ", h("span", { class: "gloss" }, word(PARAMETERS, name))],
-    h("data", { value: one.value, "data-testid": `parameter-${name}` }, shown.value), shown.std, interval(shown), one.unit];
+  return [[label, " ", h("span", { class: "gloss" }, gloss === name ? "" : gloss)],
+    h("data", { value: one.value, "data-testid": hook && `${hook}-${name}` }, shown.value), shown.std, interval(shown), one.unit];
 }
 
-function rows(fit) {
-  const derived = Object.entries(fit.derived).map(([name, one]) =>
-    row(name, one, name.includes("/") ? name.split("/").flatMap((part, i) => (i ? ["/", symbol(part)] : [symbol(part)])) : null));
+function derived(fit, hook) {
+  return Object.entries(fit.derived).map(([name, one]) => {
+    const [label, gloss] = ("zeta" in fit.parameters && RINGING[name]) || [name];
+    return row(hook, name, one, expression(label), gloss);
+  });
+}
+
+function rows(fit, hook) {
   const friction = fit.friction ? [["Dry friction, forward", fit.friction.forward], ["Dry friction, backward", fit.friction.backward]]
     .map(([label, one]) => { const shown = estimate(one); return [label, shown.value, shown.std, interval(shown), one.unit]; }) : [];
-  return [...Object.entries(fit.parameters).map(([name, one]) => row(name, one)), ...derived, ...friction];
+  return [...Object.entries(fit.parameters).map(([name, one]) => row(hook, name, one)), ...derived(fit, hook), ...friction];
+}
+
+/** The parameters of one fit, under its formula; hook: how tests find its numbers. */
+export function parameterTable(fit, hook = null) {
+  const written = formula(fit);
+  return [written && h("p", { class: "formula" }, expression(written)),
+    table(`Parameters of the ${word(MODELS, fit.model).toLowerCase()}`, HEAD, rows(fit, hook), { class: "stack", "data-testid": hook && `${hook}s` })];
 }
 
 export function parameters(report) {
   if (report.selected === null) return null;
   const fit = report.fits[report.selected];
-  const head = ["Parameter", "Value", "Standard deviation", "95 % interval", "Unit"];
-  const others = report.fits.filter((one) => one !== fit);
   return section("parameters", "Parameters", "How well this one log fixes each number. The interval holds for the noise in the log, not for a machine that changes.",
-    table(`Parameters of the ${word(MODELS, fit.model).toLowerCase()}`, head, rows(fit), { class: "stack", "data-testid": "parameters" }),
-    others.map((one) => h("details", { class: "fold small" }, h("summary", {}, `Not selected: ${word(MODELS, one.model).toLowerCase()}`),
-      table(`Parameters of the ${word(MODELS, one.model).toLowerCase()}`, head, rows(one), { class: "stack" }))));
+    parameterTable(fit, "parameter"));
 }
 
 export function profile(report) {

@@ -4,7 +4,7 @@ import { h, section, symbol, table } from "/page/dom.js";
 import { estimate, fixed, per, significant, withUnit } from "/page/format.js";
 import { METHODS, word } from "/page/report/words.js";
 
-function marginCells({ stable, Ms, Mt, gain_margin, phase_margin_deg, delay_margin_s }) {
+export function marginCells({ stable, Ms, Mt, gain_margin, phase_margin_deg, delay_margin_s }) {
   if (!stable) return [h("strong", { class: "verdict poor" }, "▲ unstable"), "–", "–", "–", "–"];
   return [fixed(Ms, 3), fixed(Mt, 3), gain_margin === null ? "no limit" : `× ${significant(gain_margin, 3)}`,
     withUnit(fixed(phase_margin_deg, 1), "°"), withUnit(significant(delay_margin_s, 3), "s")];

@@ -12,8 +12,30 @@ export const PARAMETERS = {
   T1: "First time constant",
   T2: "Second time constant",
   L: "Dead time",
+  w0: "Natural frequency",
+  zeta: "Damping ratio",
+  T_r: "Average residence time",
   "K/T": "Initial slope after a unit move of the command",
+  "K/(T1 + T2)": "Gain over the sum of the time constants",
+  "T1 + T2": "Sum of the time constants",
 };
+
+/** Of a ringing fit, whose time constants are not real numbers. */
+export const RINGING = {
+  "K/(T1 + T2)": ["K w0/(2 zeta)", "Gain over what stands for the sum of time constants"],
+  "T1 + T2": ["2 zeta/w0", "Stands for the sum of time constants"],
+};
+
+/** The model's transfer function from command to speed, by the parameters that it has. */
+export function formula({ parameters: p }) {
+  if ("T" in p) return "K exp(−L s)/(T s + 1)";
+  if ("T1" in p) return "K exp(−L s)/((T1 s + 1)(T2 s + 1))";
+  if ("zeta" in p) return "K w0² exp(−L s)/(s² + 2 zeta w0 s + w0²)";
+  return null;
+}
+
+export const FORMS = { pi: "PI", pid: "PID" };
+export const GOALS = { integral: "Largest integral gain", load: "Least error after a load step", setpoint: "Least error after a setpoint step" };
 
 export const METHODS = {
   "largest-ki": "Largest integral gain within the target",

@@ -1,0 +1,60 @@
+// Another target for a kept fit: what is asked, and the proposals it gives beside the report's own.
+
+import { h, section, symbol, table } from "/page/dom.js";
+import { exact, per, significant } from "/page/format.js";
+import { marginCells } from "/page/report/tunings.js";
+import { FORMS, GOALS, METHODS, word } from "/page/report/words.js";
+import { field, given } from "/page/views/fields.js";
+
+function line(name, { settings, margins }, extra) {
+  return { attributes: { "data-testid": extra }, cells: [name, significant(settings.Kp), significant(settings.Ti), significant(settings.Td), significant(settings.Tf), significant(settings.b, 3), ...marginCells(margins)] };
+}
+
+function asked({ Ms, form, goal }) {
+  return `Ms ${exact(Ms)}, ${word(FORMS, form)}, ${word(GOALS, goal).toLowerCase()}`;
+}
+
+function beside(report, told) {
+  const gain = per(report.log.command_unit, report.log.speed_unit);
+  const head = ["Proposal", [symbol("Kp"), gain && ` (${gain})`], [symbol("Ti"), " (s)"], [symbol("Td"), " (s)"], [symbol("Tf"), " (s)"], symbol("b"),
+    symbol("Ms"), symbol("Mt"), "Gain margin", "Phase margin", "Delay margin"];
+  const own = report.recommended === null ? [] : [line(`In this report: ${asked(report.options)}`, report.tunings[report.recommended], "retuned-before")];
+  const best = told.recommended;
+  const order = told.tunings.map((_, i) => i).sort((a, b) => (b === best) - (a === best) || a - b);
+  const rows = order.map((i) => line(
+    [`${asked(told.options)}: ${word(METHODS, told.tunings[i].method)}`, i === best && [" ", h("span", { class: "badge" }, "recommended")]], told.tunings[i], `retuned-${i === best ? "best" : i}`));
+  return [
+    table("The report's proposal and the new ones", head, [...own, ...rows], { class: "stack" }),
+    h("p", { class: "note" }, told.recommended_because),
+    told.tunings.flatMap(({ findings }) => findings).map((one) => h("p", { class: "note" }, one.message)),
+  ];
+}
+
+/** asked: what the address asks for; ask(wanted) -> proposals; onAsked(wanted): they are on screen. */
+export function another(report, preset, { ask, onAsked }) {
+  const output = h("div", { "aria-live": "polite", "data-testid": "retuned" });
+  const button = h("button", { class: "button", type: "submit" }, "Propose");
+  const form = h("form", { class: "options", "data-testid": "another", onsubmit: (event) => { event.preventDefault(); propose(); } },
+    field("Ms", "Target Ms", null, { type: "number", min: "1.01", max: "10", step: "any", required: true, value: preset.Ms ?? report.options.Ms }),
+    field("form", "Controller", null, { value: preset.form ?? report.options.form }, Object.entries(FORMS)),
+    field("goal", "Aim", null, { value: preset.goal ?? report.options.goal }, Object.entries(GOALS)),
+    field("period", "Controller period, s", null, { type: "number", min: "0", step: "any", placeholder: "as in the report", value: preset.period ?? "" }),
+    h("div", { class: "submit" }, button));
+
+  async function propose() {
+    const texts = given(form);
+    const wanted = { ...texts, Ms: Number(texts.Ms), ...("period" in texts && { period: Number(texts.period) }) };
+    button.disabled = true;
+    try {
+      output.replaceChildren(...[beside(report, await ask(wanted))].flat(2).filter(Boolean));
+      onAsked(texts);
+    } catch (error) {
+      if (error.name !== "AbortError") output.replaceChildren(h("p", { class: "notice", role: "alert" }, error.message));
+    } finally {
+      button.disabled = false;
+    }
+  }
+
+  if (preset.Ms) propose();
+  return section("another", "Another target", "From the same kept fit, without fitting again. Nothing is stored; the address above keeps what you asked.", form, output);
+}
