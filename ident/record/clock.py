@@ -17,6 +17,7 @@ SHARED = 0.3  # share of repeated stamps above which the clock is coarse, and ro
 BACKWARDS = 0.9  # share of steps back in a log written newest first
 CONFLICTS = 0.02  # share of rows with a stamp already taken above which the log is refused, beyond FEW
 FEW = 2
+NEAREST = 0.5  # of the step: rows of one steady clock do not lie nearer
 MOST_STEPS = 50  # clock steps in one log
 MOST_LOOKS = 500  # rows that go back, to be told from clock steps one by one
 HOUR = 3600.0
@@ -66,7 +67,7 @@ def ordered(time: Floats, columns: list[Floats], line: Lines, *, local: bool = F
             "the rows were spread evenly."
         )
         found.append(_said("stamps-spread", "warning", message, count=share))
-    late, shifts = _late(time, line[rows])
+    late, shifts = _late(time, [column[rows] for column in columns], line[rows])
     for row, by in shifts:
         time[row:] += by
     if late.any():
@@ -134,16 +135,18 @@ def _spread(time: Floats, line: Lines) -> Floats:
     return out
 
 
-def _late(time: Floats, line: Lines) -> tuple[Flags, list[tuple[int, float]]]:
+def _late(time: Floats, columns: list[Floats], line: Lines) -> tuple[Flags, list[tuple[int, float]]]:
     """Rows to sort into their place, and (row, s to add from there on) where the clock was set back."""
     time = time.copy()
     late = np.zeros(len(time), dtype=np.bool_)
     shifts: list[tuple[int, float]] = []
-    step, steady = steady_step(np.diff(time)[np.diff(time) > 0])
+    step, steady = _step(np.sort(time))
+    if not steady:
+        step, steady = _step(time)
     limit = (STEADY_GAP if steady else IRREGULAR_GAP) * step
-    if np.any(np.diff(time) < 0) and _all_fit(time, limit):
-        ahead = np.maximum.accumulate(time)
-        return time < ahead, []
+    nearest = NEAREST * step if steady else 0.0
+    if np.any(np.diff(time) < 0) and steady and _all_fit(time, columns, nearest, limit):
+        return time < np.maximum.accumulate(time), []
     looked = 0
     while len(back := np.flatnonzero(np.diff(time) < 0)):
         row = int(back[0]) + 1
@@ -151,12 +154,9 @@ def _late(time: Floats, line: Lines) -> tuple[Flags, list[tuple[int, float]]]:
         while stop < len(time) and time[row] <= time[stop] < time[row - 1] and stop - row < 1000:
             stop += 1
         # Rows that came late are followed by one that goes on where the log was; their place is still free.
-        others = np.delete(time, slice(row, stop))
-        lower = others[others <= time[row]]
-        upper = others[others > time[stop - 1]]
         looked += 1
-        fits = len(lower) and len(upper) and time[row] - lower.max() <= limit and upper.min() - time[stop - 1] <= limit
-        if fits and stop < len(time) and time[stop] > time[row - 1] and stop - row < len(time) // 4:
+        fits = stop < len(time) and time[stop] > time[row - 1] and stop - row < len(time) // 4
+        if fits and _free(time, columns, slice(row, stop), nearest, limit):
             late[row:stop] = True
             time[row:stop] = time[row - 1]
             continue
@@ -172,17 +172,44 @@ def _late(time: Floats, line: Lines) -> tuple[Flags, list[tuple[int, float]]]:
     return late, shifts
 
 
-def _all_fit(time: Floats, limit: float) -> bool:
-    """Whether sorting alone mends the log: every late row has its neighbours near, few have their stamp taken."""
+def _step(time: Floats) -> tuple[float, bool]:
+    steps = np.diff(time)
+    return steady_step(steps[steps > 0])
+
+
+def _free(time: Floats, columns: list[Floats], run: slice, nearest: float, limit: float) -> bool:
+    """Whether the place of rows that came late is still free, or holds the same rows already."""
+    others = np.delete(np.arange(len(time)), np.arange(run.start, run.stop))
+    others = others[np.argsort(time[others], kind="stable")]
+    there, mine = time[others], time[run]
+    at = np.searchsorted(there, mine)
+    here = np.minimum(at, len(others) - 1)
+    same = there[here] == mine
+    for column in columns:
+        a, b = column[others[here]], column[run]
+        same &= (a == b) | (np.isnan(a) & np.isnan(b))
+    if same.mean() > 1 - CONFLICTS:
+        return True
+    if at[-1] == len(others) or at[0] != at[-1]:
+        return False
+    below = mine[0] - there[at[0] - 1] if at[0] else limit
+    above = there[at[0]] - mine[-1]
+    return bool(nearest <= below <= limit and max(nearest, 1e-12) <= above <= limit)
+
+
+def _all_fit(time: Floats, columns: list[Floats], nearest: float, limit: float) -> bool:
+    """Whether sorting alone mends the log: every late row finds its place free, or the same row there already."""
     late = time < np.maximum.accumulate(time)
     order = np.argsort(time, kind="stable")
-    there = time[order]
-    before = np.diff(there, prepend=there[0])
-    after = np.diff(there, append=there[-1])
-    moved = late[order]
-    taken = np.count_nonzero(moved & (before == 0) & (np.arange(len(time)) > 0))
-    near = (before[moved] <= limit) & (after[moved] <= limit)
-    return bool(near.all() and taken <= max(1, CONFLICTS * len(time)))
+    there, moved = time[order], late[order]
+    steps = np.diff(there)
+    same = np.zeros(len(steps), dtype=np.bool_)
+    same[steps == 0] = _repeated(there, columns, order)
+    below, above = np.append(np.nan, steps), np.append(steps, np.nan)
+    repeats = np.append(False, same) | np.append(same, False)
+    free = (below >= nearest) & (below <= limit) & (above >= nearest) & (above <= limit)
+    lost = moved & ~repeats & ~free
+    return int(lost.sum()) <= CONFLICTS * int(moved.sum())
 
 
 def _unique(

@@ -11,15 +11,15 @@ import pandas as pd
 from numpy.typing import NDArray
 
 from ident.errors import ReadError
-from ident.record.grouping import grouped_numbers
+from ident.record.grouping import LONGEST, Bytes, Chars, as_bytes, as_chars, grouped_numbers
 from ident.record.quote import printable, quoted
 from ident.record.segments import Flags, Floats, Lines
 
 Rows = NDArray[np.int64]
-Texts = NDArray[np.object_]
 
 _INFINITE = re.compile(r"[+-]?(?:inf(?:inity)?|∞|1\.#INF)", re.IGNORECASE)
-_HAS_DIGITS = re.compile(r"[+-]?[.,]?[0-9]")
+# By character code: whether a plain number may hold it (0 ends a cell).
+_PLAIN = {d: np.isin(np.arange(256), [0, *f"0123456789+-eE{d}".encode()]) for d in ".,"}
 _WORDS_KEPT = 5
 # More cells than this share that hold digits and yet are no numbers: the log was not understood.
 _NOT_UNDERSTOOD = 0.02
@@ -38,7 +38,7 @@ class Cells:
     values: Floats
     blank: Flags
     odd: Rows
-    odd_texts: Texts
+    odd_texts: Bytes
     words: Rows
     counts: Counter[str]
 
@@ -66,24 +66,50 @@ def read_cells(column: pd.Series, decimal: str) -> Cells:
     none = np.zeros(0, dtype=np.int64)
     blank = np.array(column.isna(), dtype=np.bool_)
     if column.dtype.kind in "iuf":
-        return Cells(column.to_numpy(dtype=np.float64), blank, none, none.astype(object), none, Counter())
-    texts = column.astype("str")
-    other = texts.str.contains("." if decimal == "," else ",", regex=False).fillna(False).to_numpy(dtype=np.bool_)
-    plain = texts.str.replace(",", ".", regex=False) if decimal == "," else texts
-    # numpy's copy, because pandas hands out its own and that may be read-only
-    values = np.array(pd.to_numeric(plain.to_numpy(dtype=object), errors="coerce"), dtype=np.float64)
-    values[other] = np.nan
+        return Cells(column.to_numpy(dtype=np.float64), blank, none, np.zeros(0, dtype="S1"), none, Counter())
+    texts = column.astype("str").fillna("").to_numpy(dtype=object)
+    cells = as_bytes(texts)
+    chars = as_chars(cells)
+    plain = _PLAIN[decimal][chars].all(axis=1) & (chars[:, 0] != 0) & ((chars[:, -1] == 0) | (chars.shape[1] < LONGEST))
+    values = np.full(len(texts), np.nan)
+    values[plain] = _plain_values(chars[plain], decimal)
     rest = np.flatnonzero(np.isnan(values) & ~blank)
-    left = texts.to_numpy(dtype=object)[rest]
-    stripped = np.array([str(t).strip() for t in left], dtype=object)
-    empty = stripped == ""
-    blank[rest[empty]] = True
-    infinite = np.array([bool(_INFINITE.fullmatch(t)) for t in stripped], dtype=np.bool_)
-    values[rest[infinite]] = np.inf
-    odd = np.array([bool(_HAS_DIGITS.match(t)) and "#" not in t for t in stripped], dtype=np.bool_) & ~infinite
-    words = ~odd & ~empty & ~infinite
-    counts = Counter(printable(t) for t in stripped[words])
-    return Cells(values, blank, rest[odd], stripped[odd], rest[words], counts)
+    left = texts[rest]
+    odd = _with_digits(cells[rest])
+    # Each different word is looked at once.
+    codes, spelled = pd.factorize(left[~odd])
+    stripped = [str(t).strip() for t in spelled]
+    empty = np.array([t == "" for t in stripped], dtype=np.bool_)[codes]
+    infinite = np.array([bool(_INFINITE.fullmatch(t)) for t in stripped], dtype=np.bool_)[codes]
+    values[rest[~odd][infinite]] = np.inf
+    blank[rest[~odd][empty]] = True
+    word = ~empty & ~infinite
+    counts: Counter[str] = Counter()
+    for code, count in zip(*np.unique(codes[word], return_counts=True), strict=True):
+        counts[printable(stripped[code])] += int(count)
+    return Cells(values, blank, rest[odd], cells[rest[odd]], rest[~odd][word], counts)
+
+
+def _plain_values(chars: Chars, decimal: str) -> Floats:
+    """Cells that hold the characters of plain numbers only; NaN where they make none."""
+    if decimal == ",":
+        chars = np.where(chars == ord(","), np.uint8(ord(".")), chars)
+    cells = np.ascontiguousarray(chars).view(f"S{chars.shape[1]}").reshape(-1)
+    try:
+        return cells.astype(np.float64)
+    except ValueError:
+        return np.array(pd.to_numeric(cells.astype("U").astype(object), errors="coerce"), dtype=np.float64)
+
+
+def _with_digits(cells: Bytes) -> Flags:
+    """Cells that begin like a number; those with # are a spreadsheet's words."""
+    view = np.ascontiguousarray(cells).view(np.uint8).reshape(len(cells), cells.dtype.itemsize)
+    digit = (view[:, :3] >= 48) & (view[:, :3] <= 57)
+    sign = (view[:, 0] == ord("+")) | (view[:, 0] == ord("-"))
+    mark = [(view[:, k] == ord(".")) | (view[:, k] == ord(",")) for k in (0, 1)]
+    begins = digit[:, 0] | ((sign | mark[0]) & digit[:, 1]) | (sign & mark[1] & digit[:, 2])
+    flags: Flags = begins & (np.strings.find(cells, b"#") < 0)
+    return flags
 
 
 def joined(pieces: list[Cells]) -> Cells:
@@ -137,11 +163,11 @@ def to_numbers(cells: Cells, *, name: str, decimal: str, line: Lines) -> Numbers
             row = int(line[cells.odd[lost[0]]])
             raise ReadError(
                 "unreadable-number",
-                f"Line {row}, column {quoted(name)}: {quoted(cells.odd_texts[lost[0]])} is not a plain "
+                f"Line {row}, column {quoted(name)}: {quoted(cells.odd_texts[lost[0]].decode())} is not a plain "
                 "number; export numbers without units or thousands signs.",
                 {"line": row, "column": printable(name), "count": len(lost)},
             )
-        words.update(printable(t) for t in cells.odd_texts[lost])
+        words.update(printable(t.decode()) for t in cells.odd_texts[lost])
     bad = np.isinf(values)
     if bad.any():
         at = int(line[np.argmax(bad)])

@@ -41,11 +41,11 @@ def comb(block: bytes, delimiter: str, width: int) -> Combed:
     """
     text = block if block.endswith(b"\n") else block + b"\n"
     mark = delimiter.encode()
-    lines = text.count(b"\n")
-    none = np.zeros(0, dtype=np.int64)
-    if text.count(mark) == (width - 1) * lines and b'"' not in text:
-        return Combed(text, lines, none, none, none, none)
     bytes_ = np.frombuffer(text, dtype=np.uint8)
+    lines = int(np.count_nonzero(bytes_ == _NEWLINE))  # several times faster than bytes.count
+    none = np.zeros(0, dtype=np.int64)
+    if int(np.count_nonzero(bytes_ == mark[0])) == (width - 1) * lines and b'"' not in text:
+        return Combed(text, lines, none, none, none, none)
     ends = np.flatnonzero(bytes_ == _NEWLINE)
     starts = np.concatenate(([0], ends[:-1] + 1))
     marks = bytes_ == mark[0]

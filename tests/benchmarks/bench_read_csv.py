@@ -35,6 +35,7 @@ def variants(clean: bytes) -> dict[str, bytes]:
         "clean ISO 8601": clean,
         "dd.mm.yyyy, decimal commas": re.sub(rb"(\d{4})-(\d\d)-(\d\d)T", rb"\3.\2.\1 ", german),
         "one state word": b"\n".join(lines),
+        "thousands and units in cells": re.sub(rb",(\d)(\d\d\.\d)\n", rb',"\1,\1\2 rpm"\n', clean),
         "elapsed seconds": b"\n".join((b"Time,SP,CO,PV", *elapsed)),
     }
 

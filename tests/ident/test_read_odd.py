@@ -350,6 +350,21 @@ def test_19_a_gap_and_a_clock_set_back_split_the_record(shared: Path) -> None:
     assert r.source.understood.last == "2026-03-02T08:15:31.200Z"
 
 
+@pytest.mark.parametrize("back", [0.7, 1.7, 1.73, 25.0])
+@pytest.mark.parametrize("late", [False, True])
+def test_19_a_small_clock_step_in_a_long_log_is_not_sorted_away(back: float, late: bool) -> None:
+    at = np.arange(4000) / 10 - np.where(np.arange(4000) >= 2500, back, 0.0)
+    table = [[f"{t:.2f}", str(k % 7), str(k)] for k, t in enumerate(at)]
+    if late:
+        table[100], table[101] = table[101], table[100]
+    r = read_csv(text(table, "time,CO,PV"))
+    assert r.speed.tolist() == list(range(4000))
+    assert (r.breaks, [(s.start, s.stop) for s in r.segments]) == ((2500,), [(0, 2500), (2500, 4000)])
+    np.testing.assert_allclose(r.time, np.arange(4000) / 10, atol=1e-9)
+    assert finding(r, "clock-step").evidence["step_s"] == pytest.approx(-back)
+    assert ("rows-sorted" in codes(r)) == late
+
+
 def test_20_pairs_of_time_and_value_of_unlike_length() -> None:
     sp = [(iso(k), str(SP[k])) for k in (0, 8)]
     out = [(iso(k), str(CO[k])) for k in range(30) if k == 0 or CO[k] != CO[k - 1]]
