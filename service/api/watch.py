@@ -37,8 +37,8 @@ class Row:
     """What one report says, for a history.
 
     at         where the log stands: its own time, or that of its receipt where it has none
-    margins    that the controller would have on this log's plant; margins_of: the installed one as set now, or,
-               where none is known, the one proposed for the baseline
+    margins    that the controller would have on this log's plant, taken as first order
+    margins_of the installed controller as set now, or, where none is known, the one proposed for the baseline
     proposed   settings that this report recommends
     """
 

@@ -1,4 +1,4 @@
-"""Store: everything that is kept, opened at start and closed at stop."""
+"""Store: everything that is kept, opened at start and closed at stop. Nothing is removed yet: no retention."""
 
 from __future__ import annotations
 

@@ -8,6 +8,7 @@ from pydantic import TypeAdapter
 
 import ident
 from service.errors import Problem
+from service.work.kept_plant import plant_of
 from service.work.numbers import numbers_of, parse
 from service.work.options import Options
 from service.work.report import told
@@ -15,7 +16,10 @@ from service.work.report import told
 
 @dataclass(frozen=True, slots=True)
 class Retuned:
-    """Proposals for a kept fit, as in its report; options: what they were made for."""
+    """Proposals for a kept fit, as in its report; options: what they were made for.
+
+    worst_case of each is None: the plants that it is taken over are drawn while the log is at hand.
+    """
 
     options: dict[str, float | int | str | None]
     tunings: tuple[ident.TuningReport, ...]
@@ -36,16 +40,13 @@ def retuned_bytes(report: bytes, options: Options) -> bytes | Problem:
 
 def _retune(report: bytes, given: Options) -> Retuned:
     parsed = parse(report)
-    numbers = numbers_of(parsed)
-    plant = numbers.first_order
-    if plant is None:
-        raise ident.Refused("no-fit", "This report has no first-order fit to tune from. " + numbers.reason)
+    plant = plant_of(parsed)
     before = parsed["options"]
     asked = {
         name: getattr(given, name) if name in given.model_fields_set else before[name]
         for name in ("Ms", "form", "goal", "period")
     }
-    period = numbers.period_s if asked["period"] is None else asked["period"]
+    period = numbers_of(parsed).period_s if asked["period"] is None else asked["period"]
     delay = before["compute_delay"]
     found = ident.propose(
         plant,

@@ -260,17 +260,19 @@ def test_lists_come_in_pages(service: TestClient) -> None:
     expect.answer(service.get("/v1/loops?limit=0"), expected=422, code="invalid-option")
 
 
-def test_another_proposal_comes_from_the_kept_fit(service: TestClient, step_test: bytes) -> None:
-    report = keep(service, step_test, query="?period=0.02")["report_id"]
+@pytest.mark.parametrize("model", ["fopdt", "sopdt", "arx"])
+def test_another_proposal_comes_from_the_kept_fit(service: TestClient, step_test: bytes, model: str) -> None:
+    report = keep(service, step_test, query=f"?period=0.02&model={model}")["report_id"]
     kept = service.get(f"/v1/reports/{report}").json()
+    assert kept["fits"][kept["selected"]]["model"] == model
     same = service.post(f"/v1/reports/{report}/tunings", json={})
     assert same.status_code == 200
     # With nothing asked for it is the report's own, to the last digit.
-    assert same.json()["tunings"] == kept["tunings"]
+    assert same.json()["tunings"] == [{**tuning, "worst_case": None} for tuning in kept["tunings"]]
     assert same.json()["recommended"] == kept["recommended"]
     calm = service.post(f"/v1/reports/{report}/tunings", json={"Ms": 1.4, "form": "pi"}).json()
-    fresh = service.post("/v1/reports?period=0.02&Ms=1.4", content=step_test).json()
-    assert calm["tunings"] == fresh["tunings"]
+    fresh = service.post(f"/v1/reports?period=0.02&Ms=1.4&model={model}", content=step_test).json()
+    assert calm["tunings"] == [{**tuning, "worst_case": None} for tuning in fresh["tunings"]]
     assert calm["options"]["Ms"] == 1.4
     refused = service.post(f"/v1/reports/{report}/tunings", json={"Ms": 0.5})
     expect.answer(refused, expected=422, code="invalid-body")
