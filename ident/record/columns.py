@@ -94,9 +94,7 @@ def map_columns(
             kinds["time"] = [paired["speed"]]
         date = _by_words(index, kinds, names or [])
         _check_complete(index, kinds, names, width)
-        paired = (
-            {role: paired.get(role, _left_of(i, set(paired.values()))) for role, i in index.items()} if paired else {}
-        )
+        paired = {role: paired.get(role, paired["speed"]) for role, i in index.items()} if paired else {}
     if index["time"] < 0:
         raise ReadError("missing-column", f"No column for time was recognised; {_HOW}.", {"role": "time"})
     units = {
@@ -166,7 +164,7 @@ def _paired(kinds: dict[str, list[int]], index: dict[str, int]) -> dict[str, int
     values = {role: index[role] if role in index else (kinds.get(role) or [-1])[0] for role in ROLES[1:]}
     left = {role: _left_of(i, times) for role, i in values.items() if i >= 0}
     apart = left.get("command", -1) >= 0 and left.get("speed", -1) >= 0 and left["command"] != left["speed"]
-    return left if apart else {}
+    return {role: t for role, t in left.items() if t >= 0} if apart else {}
 
 
 def _left_of(position: int, times: set[int]) -> int:
