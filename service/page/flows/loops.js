@@ -41,7 +41,7 @@ export async function loop(visit, { name }) {
     return fail(visit, error, { name, title: "There is no such loop yet", loop: null, advice: "It begins with its first log, or with its settings: the list of loops has a place for a new name." });
   }
   const [history, logs, drift] = await Promise.all([
-    settled(api.history(name, visit.signal)), settled(api.logs(name, visit.signal)), settled(api.drift(name, visit.signal)),
+    settled(api.history(name, visit.signal)), settled(api.logs(name, visit.signal)), known.baseline.length ? settled(api.drift(name, visit.signal)) : null,
   ]);
   return visit.show(known.loop, null, loopView({ loop: known, history, logs, drift }, {
     onReport: (id) => visit.to(reportAddress(id).slice(1)),

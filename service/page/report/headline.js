@@ -8,7 +8,7 @@ function quantity(name, { value, unit, ci95, std }) {
   const shown = estimate({ value, ci95, std });
   return h("div", { class: "quantity" },
     h("dt", {}, symbol(name), h("span", { class: "gloss" }, word(PARAMETERS, name).toLowerCase())),
-    h("dd", {}, h("data", { value, "data-testid": `headline-${name}` }, shown.value), h("span", { class: "unit" }, unit),
+    h("dd", {}, h("data", { value, "data-testid": `headline-${name}` }, shown.value), h("span", { class: "unit" }, unit === "1" ? "" : unit),
       h("p", { class: "ci" }, "95 %: ", interval(shown))));
 }
 
@@ -17,8 +17,9 @@ function answer({ T, T1, T2, zeta, w0 }) {
   if (T) return `then 63 % of the change comes within ${withUnit(estimate(T).value, "s")}`;
   if (T1) return `then the speed follows through two lags of ${withUnit(estimate(T1).value, "s")} and ${withUnit(estimate(T2).value, "s")}`;
   const overshoot = 100 * Math.exp((-Math.PI * zeta.value) / Math.sqrt(1 - zeta.value ** 2));
+  if (overshoot < 0.5) return "then the speed follows through a second-order lag that hardly overshoots";
   const peak = Math.PI / (w0.value * Math.sqrt(1 - zeta.value ** 2));
-  return `then the speed swings past its end value by ${withUnit(fixed(overshoot, overshoot < 1 ? 2 : 0), "%")}, ${withUnit(significant(peak, 3), "s")} later`;
+  return `then the speed swings past its end value by ${withUnit(fixed(overshoot, 0), "%")}, ${withUnit(significant(peak, 3), "s")} later`;
 }
 
 function sentence(fit, log) {

@@ -12,7 +12,7 @@ const HEAD = ["Parameter", "Value", "Standard deviation", "95 % interval", "Unit
 function row(hook, name, one, label = expression(name), gloss = word(PARAMETERS, name)) {
   const shown = estimate(one);
   return [[label, " ", h("span", { class: "gloss" }, gloss === name ? "" : gloss)],
-    h("data", { value: one.value, "data-testid": hook && `${hook}-${name}` }, shown.value), shown.std, interval(shown), one.unit];
+    h("data", { value: one.value, "data-testid": hook && `${hook}-${name}` }, shown.value), shown.std, interval(shown), one.unit === "1" ? "–" : one.unit];
 }
 
 function derived(fit, hook) {

@@ -37,7 +37,7 @@ function change({ change: by, baseline }) {
 }
 
 function parameters(drift) {
-  const head = ["Parameter", "Verdict", "Since", "Baseline", "Last log", "Change", "Least that counts", "Least this log shows", "Statistic, held to"];
+  const head = ["Parameter", "Verdict", "Since", "Baseline", "Last log", "Change", "Least that counts", "Least this log could show", "Statistic, held to"];
   const rows = Object.entries(drift.parameters).map(([name, one]) => ({
     attributes: { "data-testid": `drift-${name}` },
     cells: [[expression(name), h("span", { class: "unit" }, one.unit)], verdictMark({ ...one, as_of: drift.as_of }), one.since ? day(one.since) : "–",
