@@ -204,7 +204,7 @@ def test_a_baseline_is_chosen_on_the_page_and_an_empty_night_is_no_news(visit: C
     verdict = one.page.get_by_test_id("verdict")
     expect(verdict).to_have_attribute("data-verdict", "no-news")
     expect(verdict).to_contain_text("not the same as “not moved”")
-    expect(verdict).to_contain_text("The last log with news is of 2026-11-22")
+    expect(verdict).to_contain_text("What stands is the log of 2026-11-22: the loop had not moved.")
     expect(one.page.get_by_test_id("night").last).to_contain_text("no news")
     one.clean()
 
@@ -295,7 +295,7 @@ def test_another_target_stands_beside_the_report_s_own(
     expect(cells.first).to_be_visible(timeout=REPORT_MS)
     assert float(cells.nth(0).inner_text()) == pytest.approx(best["settings"]["Kp"], rel=5e-4)
     assert float(cells.nth(1).inner_text()) == pytest.approx(best["settings"]["Ti"], rel=5e-4)
-    assert float(cells.nth(5).inner_text()) == pytest.approx(1.3, abs=2e-3)
+    assert float(cells.nth(3).inner_text()) == pytest.approx(1.3, abs=2e-3)
     before = float(one.page.get_by_test_id("retuned-before").locator("td").first.inner_text())
     assert before == pytest.approx(one.value("setting-Kp")[0], rel=5e-4)
     assert "Ms=1.3" in one.page.url
@@ -407,4 +407,20 @@ def test_a_second_order_fit_is_shown_as_what_it_is(
     for code in alone:
         expect(one.page.get_by_test_id("part-findings").get_by_test_id(f"finding-{code}")).to_have_count(0)
         expect(one.page.get_by_test_id("other-fopdt").get_by_test_id(f"finding-{code}")).to_have_count(1)
+    one.clean()
+
+
+def test_a_second_order_night_stands_in_the_history_with_the_sum_of_its_time_constants(
+    visit: Callable[..., Visit], api: Api
+) -> None:
+    name = "drum 11"
+    told = api("POST", f"{api.loop(name)}/logs", second_order(LAGS))
+    report = api("GET", f"/reports/{told['report_id']}")
+    sum_of_lags = report["fits"][report["selected"]]["derived"]["T1 + T2"]
+    one = visit(here(name))
+    one.page.get_by_role("button", name="Later night").click()
+    shown = one.page.get_by_test_id("panel-T").locator("output").inner_text()
+    numbers = [float(text) for text in re.findall(r"\d+\.\d+", shown)]
+    assert numbers == pytest.approx([sum_of_lags["value"], *sum_of_lags["ci95"]], abs=6e-3)
+    expect(one.page.get_by_test_id("part-history")).to_contain_text("the verdict compares first-order fits")
     one.clean()

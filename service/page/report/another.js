@@ -6,8 +6,8 @@ import { marginCells } from "/page/report/tunings.js";
 import { FORMS, GOALS, METHODS, word } from "/page/report/words.js";
 import { field, given } from "/page/views/fields.js";
 
-function line(name, { settings, margins }, extra) {
-  return { attributes: { "data-testid": extra }, cells: [name, significant(settings.Kp), significant(settings.Ti), significant(settings.Td), significant(settings.Tf), significant(settings.b, 3), ...marginCells(margins)] };
+function line(name, { settings: set, margins }, pid, hook) {
+  return { attributes: { "data-testid": hook }, cells: [name, significant(set.Kp), significant(set.Ti), ...(pid ? [significant(set.Td), significant(set.Tf)] : []), significant(set.b, 3), ...marginCells(margins)] };
 }
 
 function asked({ Ms, form, goal }) {
@@ -16,17 +16,19 @@ function asked({ Ms, form, goal }) {
 
 function beside(report, told) {
   const gain = per(report.log.command_unit, report.log.speed_unit);
-  const head = ["Proposal", [symbol("Kp"), gain && ` (${gain})`], [symbol("Ti"), " (s)"], [symbol("Td"), " (s)"], [symbol("Tf"), " (s)"], symbol("b"),
+  const before = report.recommended === null ? null : report.tunings[report.recommended];
+  const pid = [...told.tunings, ...(before ? [before] : [])].some(({ settings }) => settings.Td > 0);
+  const head = ["Proposal", [symbol("Kp"), gain && ` (${gain})`], [symbol("Ti"), " (s)"], ...(pid ? [[symbol("Td"), " (s)"], [symbol("Tf"), " (s)"]] : []), symbol("b"),
     symbol("Ms"), symbol("Mt"), "Gain margin", "Phase margin", "Delay margin"];
-  const own = report.recommended === null ? [] : [line(`In this report: ${asked(report.options)}`, report.tunings[report.recommended], "retuned-before")];
+  const own = before ? [line(`In this report: ${asked(report.options)}`, before, pid, "retuned-before")] : [];
   const best = told.recommended;
   const order = told.tunings.map((_, i) => i).sort((a, b) => (b === best) - (a === best) || a - b);
   const rows = order.map((i) => line(
-    [`${asked(told.options)}: ${word(METHODS, told.tunings[i].method)}`, i === best && [" ", h("span", { class: "badge" }, "recommended")]], told.tunings[i], `retuned-${i === best ? "best" : i}`));
+    [`${asked(told.options)}: ${word(METHODS, told.tunings[i].method)}`, i === best && [" ", h("span", { class: "badge" }, "recommended")]], told.tunings[i], pid, `retuned-${i === best ? "best" : i}`));
   return [
     table("The report's proposal and the new ones", head, [...own, ...rows], { class: "stack" }),
     h("p", { class: "note" }, told.recommended_because),
-    told.tunings.flatMap(({ findings }) => findings).map((one) => h("p", { class: "note" }, one.message)),
+    told.tunings.flatMap(({ method, findings }) => findings.map((one) => h("p", { class: "note" }, `${word(METHODS, method)}: ${one.message}`))),
   ];
 }
 

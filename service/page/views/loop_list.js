@@ -3,7 +3,7 @@
 import { h, table } from "/page/dom.js";
 import { exact } from "/page/format.js";
 import { loopAddress } from "/page/views/addresses.js";
-import { day, verdictMark } from "/page/views/verdict.js";
+import { day, lastNews, verdictMark } from "/page/views/verdict.js";
 
 function opening(onOpen) {
   const name = h("input", { id: "new-loop", name: "loop", required: true, maxlength: 100, autocomplete: "off", spellcheck: "false", placeholder: "drum 3" });
@@ -14,6 +14,12 @@ function opening(onOpen) {
 
 function installed(one) {
   return one ? `Kp ${exact(one.Kp)}, Ti ${exact(one.Ti)} s` : "not told";
+}
+
+/** What stands where the last log has no news. */
+function before(drift) {
+  const last = drift.verdict === "no-news" && lastNews(drift);
+  return last ? h("span", {}, "; before: ", verdictMark({ ...last, as_of: last.at }), ` ${day(last.at)}`) : "";
 }
 
 /** {node, tell(loop, drift), unknown(loop, error)}; after, next: where this page and the next begin. */
@@ -33,7 +39,7 @@ export function loopList(loops, { after, next, onOpen }) {
   return {
     node,
     tell(loop, drift) {
-      cells.get(loop).replaceChildren(...(drift === null ? ["no baseline chosen"] : [verdictMark(drift), drift.as_of ? ` ${day(drift.as_of)}` : ""]));
+      cells.get(loop).replaceChildren(...(drift === null ? ["no baseline chosen"] : [verdictMark(drift), drift.as_of ? ` ${day(drift.as_of)}` : "", before(drift)]));
     },
     unknown(loop, error) {
       cells.get(loop).replaceChildren(`not known: ${error.message}`);

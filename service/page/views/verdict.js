@@ -14,7 +14,20 @@ export function verdictMark({ verdict, as_of }) {
   return h("span", { class: `verdict ${mood}` }, text);
 }
 
-function words({ verdict, as_of, last_informative, since, nights }) {
+/** The last night that had news, or nothing. */
+export function lastNews({ nights }) {
+  return nights.findLast(({ verdict }) => verdict !== "no-news");
+}
+
+function standing(drift) {
+  const last = lastNews(drift);
+  if (!last) return "No log since the baseline had news.";
+  const said = last.verdict === "moved" ? `the loop had moved${drift.since ? ` (since ${day(drift.since)})` : ""}` : "the loop had not moved";
+  return h("strong", {}, `What stands is the log of ${day(last.at)}: ${said}.`);
+}
+
+function words(drift) {
+  const { verdict, as_of, since, nights } = drift;
   if (as_of === null) {
     return ["Nothing to compare yet", "No log stands behind the baseline in time. The verdict begins with the next one."];
   }
@@ -26,8 +39,7 @@ function words({ verdict, as_of, last_informative, since, nights }) {
   }
   const why = nights[nights.length - 1]?.unusable;
   return ["The last log brings no news", ["Too little happened in it, or its numbers are too uncertain, to tell whether the loop has moved. That is not the same as “not moved”. ",
-    why && `${why} `,
-    last_informative ? `The last log with news is of ${day(last_informative)}.` : "No log since the baseline had news."]];
+    why && `${why} `, standing(drift)]];
 }
 
 function change({ change: by, baseline }) {
@@ -41,7 +53,7 @@ function parameters(drift) {
   const rows = Object.entries(drift.parameters).map(([name, one]) => ({
     attributes: { "data-testid": `drift-${name}` },
     cells: [[expression(name), h("span", { class: "unit" }, one.unit)], verdictMark({ ...one, as_of: drift.as_of }), one.since ? day(one.since) : "–",
-      significant(one.baseline), significant(one.now), change(one), significant(one.practical, 2), significant(one.visible, 2), `${significant(one.statistic, 3)}, ${significant(one.threshold, 3)}`],
+      significant(one.baseline), significant(one.now), change(one), significant(one.practical, 2), significant(one.visible, 2), one.statistic === null ? "–" : `${significant(one.statistic, 3)}, ${significant(one.threshold, 3)}`],
   }));
   return [table("Each parameter against the baseline", head, rows, { class: "stack drift" }),
     h("p", { class: "axis-note" }, "Statistic: the squared change over its variance. A parameter has moved when that exceeds what it is held to and the change is at least one that counts.")];
@@ -56,11 +68,11 @@ function range([low, high]) {
 
 function margin({ Ms_baseline, Ms_now, ci95, target, unstable_share, settings, settings_from }) {
   const whose = settings_from === "installed" ? "The installed settings" : "The settings proposed for the baseline (none are told as installed)";
-  const state = Ms_now === null ? "No Ms can be told for the last log’s plant." : Ms_now <= target ? "within the target" : "beyond the target";
+  const state = Ms_now === null ? "no Ms can be told from the last log" : Ms_now <= target ? "within the target" : "beyond the target";
   return h("div", { class: "margin-now", "data-testid": "margin-now" },
     h("h3", {}, "What robustness is left"),
     h("dl", { class: "margins" },
-      [["Ms on the baseline’s plant", fixed(Ms_baseline, 3)], ["Ms on the last log’s plant", fixed(Ms_now, 3)], ["95 % interval", range(ci95)], ["Target", exact(target)]]
+      [["Ms on the baseline’s plant", fixed(Ms_baseline, 3)], ["Ms on the last log’s plant", fixed(Ms_now, 3)], ["95 % interval", Ms_now === null ? "–" : range(ci95)], ["Target", exact(target)]]
         .map(([label, text]) => h("div", {}, h("dt", {}, label), h("dd", {}, text)))),
     h("p", { class: "note" }, `${whose}, Kp ${exact(settings.Kp)}, Ti ${exact(settings.Ti)} s: `, h("strong", {}, state), ". ",
       unstable_share ? `With ${fixed(100 * unstable_share, 1)} % of the plants that the log allows the loop is unstable. ` : "",
