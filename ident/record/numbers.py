@@ -114,6 +114,8 @@ def _with_digits(cells: Bytes) -> Flags:
 
 def joined(pieces: list[Cells]) -> Cells:
     """Stretches of one column, one after the other."""
+    if len(pieces) == 1:
+        return pieces[0]
     starts = np.cumsum([0, *(len(p.values) for p in pieces[:-1])])
     counts: Counter[str] = Counter()
     for p in pieces:
@@ -133,6 +135,8 @@ def chosen(cells: Cells, rows: Flags) -> Cells:
 
     rows    (n,) flags
     """
+    if rows.all():
+        return cells
     place = np.cumsum(rows) - 1
     odd, words = rows[cells.odd], rows[cells.words]
     return Cells(

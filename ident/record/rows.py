@@ -61,10 +61,12 @@ def wide(table: Table, mapped: Mapped, options: Options, decimal: str, bad: Flag
         if role != "time" and not ((cells := table.numbers[i]).blank.all() and role == "setpoint")
     }
     order = ordered(axis.stamps.time, [n.values for n in read.values()], line, local=axis.stamps.kind == "local")
-    values = {role: n.values[order.rows] for role, n in read.items()}
-    blank = {role: n.blank[order.rows] for role, n in read.items()}
+    # Rows that stand in order already are not copied.
+    pick = order.rows if order.findings else slice(None)
+    values = {role: n.values[pick] for role, n in read.items()}
+    blank = {role: n.blank[pick] for role, n in read.items()}
     rows = np.arange(len(order.rows))
-    time, line = order.time, line[order.rows]
+    time, line = order.time, line[pick]
     findings = [*axis.findings, *order.findings]
     held = _held_roles(values, blank, options)
     if held & {"command", "speed"}:

@@ -13,26 +13,50 @@ from ident.record.segments import Floats
 from ident.watch.coordinates import covariance, place
 from ident.watch.level import Level, level
 from ident.watch.night import Estimated, Night
-from ident.watch.sizes import PracticalSize, repeatability
+from ident.watch.sizes import MISFIT, REPEATS, PracticalSize, differing
 
 ROUNDING = 1e-9  # relative; no night is known better, which keeps every covariance invertible
 FEW = 4  # nights below which the scatter between them is hardly known
 
 
 @dataclass(frozen=True, slots=True, eq=False)
+class Allowed:
+    """repeats, misfit: (3, 3), of healthy nights, and of those whose model leaves something out (added);
+    size_L: practical size of L, s."""
+
+    repeats: Floats
+    misfit: Floats
+    size_L: float
+
+    def around(self, night: Night) -> Floats:
+        """(3, 3): the night's covariance with what is allowed, dead time widened where it is poorly known.
+
+        A dead time is found among the minima of many cells. As noise grows a wrong one wins, and errors come with tails
+        that no first-order covariance knows (the threshold effect of delay estimation: Weiss and Weinstein 1983, IEEE
+        Trans. ASSP 31, 472-486). So its variance is doubled where three standard deviations reach the practical size,
+        and left alone where they are far below it. (The factor is from our simulated nights, no source.)
+        """
+        own = covariance(night)
+        wide = 1.0 + 9.0 * own[2, 2] / self.size_L**2 if self.size_L > 0.0 else 1.0
+        widen = np.array([1.0, 1.0, np.sqrt(wide)])
+        allowed = self.repeats + self.misfit if night.misfit else self.repeats
+        return np.asarray(own * np.outer(widen, widen) + allowed)
+
+
+@dataclass(frozen=True, slots=True, eq=False)
 class Baseline:
-    """level: what is compared with;  sizes: practical, in each parameter's unit;
-    repeats: (3, 3) how a healthy night differs from the next;  gain_unit: of K;  findings: about the baseline."""
+    """What later nights meet.
+
+    level       what they are compared with;  gain_unit  of K;  findings  about the baseline
+    practical   least changes that count, each in its parameter's unit
+    allowed     how a night may differ from its plant's usual place, its own error left out
+    """
 
     level: Level
-    sizes: dict[str, float]
-    repeats: Floats
+    practical: dict[str, float]
+    allowed: Allowed
     gain_unit: str
     findings: tuple[Finding, ...]
-
-    def known(self, night: Night) -> Floats:
-        """(3, 3): how far a night may lie from its plant's usual place, as far as that is known."""
-        return known(night, self.sizes, self.repeats)
 
 
 def baseline_of(given: Sequence[Night | Estimated], practical: PracticalSize) -> Baseline:
@@ -57,38 +81,28 @@ def baseline_of(given: Sequence[Night | Estimated], practical: PracticalSize) ->
     K, T = float(middle[0] / middle[1]), float(1.0 / middle[1])
     std_T = T**2 * float(np.sqrt(np.median(own[:, 1, 1])))
     sizes = practical.at(middle, std_T)
-    repeats = repeatability(sizes, K, T)
+    repeats = differing(sizes, REPEATS, K, T)
     repeats += np.diag((ROUNDING * np.array([middle[0], middle[1], T + middle[2]])) ** 2)
-    found = level(z, np.array([known(n, sizes, repeats) for n in nights]))
+    allowed = Allowed(repeats, differing(sizes, MISFIT, K, T) / len(nights), sizes["L"])
+    found = level(z, np.array([allowed.around(n) for n in nights]))
     # Integrating nights may average to a pole at or beyond 0: T is then as long as their errors allow, and unknown.
     pole = max(float(found.z[1]), 0.01 * float(np.sqrt(found.covariance[1, 1])))
     found = replace(found, z=np.array([found.z[0], pole, max(float(found.z[2]), 0.0)]))
-    return Baseline(found, sizes, repeats, nights[0].gain_unit, _findings(len(nights)))
+    return Baseline(found, sizes, allowed, nights[0].gain_unit, _findings(nights))
 
 
-def _findings(nights: int) -> tuple[Finding, ...]:
-    if nights >= FEW:
+def _findings(nights: list[Night]) -> tuple[Finding, ...]:
+    if len(nights) >= FEW:
         return ()
+    misfit = sum(n.misfit for n in nights)
     return (
         Finding(
             "few-baseline-nights",
-            "info",
-            f"The baseline has {nights} night{'s' if nights > 1 else ''}, so how far healthy nights differ is "
-            "assumed more than known. Add nights with ordinary moves of different lengths: five or more.",
-            {"nights": nights},
+            "warning" if misfit else "info",
+            f"The baseline has {len(nights)} night{'s' if len(nights) > 1 else ''}, so how far healthy nights differ is "
+            "assumed more than known"
+            + (", and widely, as the first-order model does not quite describe this plant" if misfit else "")
+            + ". Add nights with ordinary moves of different lengths: five or more.",
+            {"nights": len(nights), "nights_with_misfit": misfit},
         ),
     )
-
-
-def known(night: Night, sizes: dict[str, float], repeats: Floats) -> Floats:
-    """The night's covariance and the repeatability together, dead time widened where it is poorly known.
-
-    A dead time is found among the minima of many cells. As noise grows a wrong one wins, and errors come with tails
-    that no first-order covariance knows (the threshold effect of delay estimation: Weiss and Weinstein 1983, IEEE
-    Trans. ASSP 31, 472-486). So its variance is doubled where three standard deviations reach the practical size,
-    and left alone where they are far below it. (The factor is from our simulated nights, no source.)
-    """
-    own = covariance(night)
-    wide = 1.0 + 9.0 * own[2, 2] / sizes["L"] ** 2 if sizes["L"] > 0.0 else 1.0
-    widen = np.array([1.0, 1.0, np.sqrt(wide)])
-    return np.asarray(own * np.outer(widen, widen) + repeats)

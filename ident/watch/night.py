@@ -10,9 +10,10 @@ from typing import Protocol
 import numpy as np
 
 from ident.errors import Refused
-from ident.evidence import Covariance, Estimate
+from ident.evidence import Covariance, Estimate, Statistics
 
 NAMES = ("K", "T", "L")
+ANSWERS = 1e-3  # input_correlation_p below which the residual answers to the command
 
 
 class Estimated(Protocol):
@@ -26,6 +27,10 @@ class Estimated(Protocol):
     def covariance(self) -> Covariance:
         """Of those parameters."""
 
+    @property
+    def statistics(self) -> Statistics:
+        """How well they describe the log."""
+
 
 @dataclass(frozen=True, slots=True)
 class Night:
@@ -33,6 +38,7 @@ class Night:
 
     covariance   3 rows of 3
     gain_unit    of K; nights in different units are not compared
+    misfit       the residual still answers to the command: the model leaves out something of the plant
     Raises Refused night-unusable.
     """
 
@@ -41,6 +47,7 @@ class Night:
     L: float
     covariance: tuple[tuple[float, ...], ...]
     gain_unit: str = ""
+    misfit: bool = False
 
     def __post_init__(self) -> None:
         plant = (self.K, self.T, self.L)
@@ -66,7 +73,13 @@ class Night:
         """
         values = {name: estimate.value for name, estimate in estimated.parameters.items()}
         unit = estimated.parameters["K"].unit if "K" in estimated.parameters else ""
-        return cls.from_values(values, estimated.covariance.names, estimated.covariance.matrix, gain_unit=unit)
+        return cls.from_values(
+            values,
+            estimated.covariance.names,
+            estimated.covariance.matrix,
+            gain_unit=unit,
+            input_correlation_p=estimated.statistics.input_correlation_p,
+        )
 
     @classmethod
     def from_values(
@@ -76,8 +89,9 @@ class Night:
         matrix: Sequence[Sequence[float | None]],
         *,
         gain_unit: str = "",
+        input_correlation_p: float | None = None,
     ) -> Night:
-        """Of a stored report's numbers: values by name, and the covariance with the order of its names.
+        """Of a stored report's numbers: values by name, the covariance with the order of its names, and a statistic.
 
         Raises Refused: night-not-first-order, night-unusable.
         """
@@ -91,4 +105,5 @@ class Night:
         entries = [[matrix[i][j] for j in order] for i in order]
         covariance = tuple(tuple(math.nan if v is None else float(v) for v in row) for row in entries)
         K, T, L = (float(values[name]) for name in NAMES)
-        return cls(K, T, L, covariance, gain_unit)
+        misfit = input_correlation_p is not None and input_correlation_p < ANSWERS
+        return cls(K, T, L, covariance, gain_unit, misfit)

@@ -9,7 +9,12 @@ size is 5 % of T + L where that is more.
 
 Two healthy nights do not agree for ever: oil warms, loads differ. `REPEATS` of the practical size is taken as one
 standard deviation of what a night differs from the next, on top of the fits' own errors, whatever the baseline shows:
-a fit of a million rows must not make a hair's breadth significant. (Engineering judgement, no source.)
+a fit of a million rows must not make a hair's breadth significant.
+
+A fit whose residual still answers to the command says itself that the plant is another, and its parameters then
+depend on the moves of the night by more than its covariance. How much, only several nights can tell. `MISFIT` of the
+practical size is assumed of one baseline night, with a variance that falls as 1/n: the scatter that n nights show takes
+over. (All three are engineering judgement, tried on simulated nights; no source.)
 """
 
 from __future__ import annotations
@@ -22,7 +27,8 @@ from ident.errors import Refused
 from ident.record.segments import Floats
 from ident.watch.coordinates import readings, slopes
 
-REPEATS = 0.1
+REPEATS = (0.1, 0.1, 0.1)  # of K, T, L
+MISFIT = (0.25, 0.5, 0.5)
 T_KNOWN = 0.25  # std of T over T; beyond, T says nothing about what is large for L
 
 
@@ -57,8 +63,8 @@ class PracticalSize:
         }
 
 
-def repeatability(sizes: dict[str, float], K: float, T: float) -> Floats:
-    """(3, 3) covariance, in coordinates, of how a healthy night differs from the next."""
+def differing(sizes: dict[str, float], shares: tuple[float, float, float], K: float, T: float) -> Floats:
+    """(3, 3) covariance, in coordinates, of nights that differ by these shares of the practical sizes, one std."""
     to = slopes(K, T)
-    std = REPEATS * np.array([sizes["K"], sizes["T"], sizes["L"]])
+    std = np.array(shares) * np.array([sizes["K"], sizes["T"], sizes["L"]])
     return np.asarray((to * std**2) @ to.T)

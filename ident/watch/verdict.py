@@ -96,7 +96,7 @@ def verdict(level: Baseline, night: Night | None, significance: float) -> Drift:
             f'The night gives K in "{night.gain_unit}", the baseline in "{level.gain_unit}": bring both to one.',
         )
     z = place(night)
-    whole = joint(z, level.known(night), level.level, significance)
+    whole = joint(z, level.allowed.around(night), level.level, significance)
     parameters = {
         name: _parameter(level, night, name, reading, whole, significance) for name, reading in before.items()
     }
@@ -115,10 +115,10 @@ def _parameter(
     known, now = level.level, readings(place(night))[name]
     at_level, at_night = before.gradient, now.gradient
     variance = float(
-        at_night @ level.known(night) @ at_night + at_level @ (known.scatter + known.covariance) @ at_level
+        at_night @ level.allowed.around(night) @ at_night + at_level @ (known.scatter + known.covariance) @ at_level
     )
     estimated = (1.0 + known.share) * float(at_level @ known.scatter @ at_level)
-    change, practical = now.value - before.value, level.sizes[name]
+    change, practical = now.value - before.value, level.practical[name]
     own = along(change, variance, estimated, known.degrees, significance)
     visible = math.sqrt(max(own.threshold, whole.threshold) * variance)
     if whole.significant and own.significant and abs(change) >= practical:
@@ -140,7 +140,9 @@ def _in_the_dark(name: str, found: ParameterDrift) -> ParameterDrift:
 
 
 def _unseen(level: Baseline, name: str, before: Reading) -> ParameterDrift:
-    return ParameterDrift("no-news", None, None, before.value, None, None, level.sizes[name], None, _unit(level, name))
+    return ParameterDrift(
+        "no-news", None, None, before.value, None, None, level.practical[name], None, _unit(level, name)
+    )
 
 
 def _unit(level: Baseline, name: str) -> str:

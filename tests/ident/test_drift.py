@@ -170,6 +170,18 @@ def test_scatter_between_baseline_nights_absorbs_what_covariances_do_not_say() -
     assert drift(nights, replace(tonight, K=1.25 * K)).parameters["K"].verdict == "moved"
 
 
+def test_what_one_baseline_night_cannot_know_of_a_misfit_is_no_alarm() -> None:
+    def short(share: float, misfit: bool) -> ident.Night:
+        return replace(night(T=(1.0 + share) * T), misfit=misfit)
+
+    assert drift([short(0.0, False)], short(0.25, False)).verdict == "moved"
+    found = drift([short(0.0, True)], short(0.25, True))
+    assert found.verdict == "no-news"
+    assert {(f.code, f.severity) for f in found.findings} == {("few-baseline-nights", "warning")}
+    # Eight nights that agree know it.
+    assert drift([short(0.0, True)] * 8, short(0.25, True)).verdict == "moved"
+
+
 def test_verdicts_do_not_depend_on_units_or_on_the_order_of_the_baseline() -> None:
     baseline = [night(K=k * K, T=t * T) for k, t in ((1.0, 1.0), (1.01, 0.97), (0.98, 1.02), (1.0, 1.01))]
     tonight = night(K=0.8 * K)
@@ -205,6 +217,7 @@ def test_a_night_comes_back_from_a_stored_report() -> None:
         stored["c"]["names"],
         stored["c"]["matrix"],
         gain_unit=stored["p"]["K"]["unit"],
+        input_correlation_p=fit.statistics.input_correlation_p,
     )
     assert again == ident.Night.of(fit)
     assert ident.drift([fit], fit).verdict == "not-moved"
