@@ -99,8 +99,8 @@ def _findings(nights: list[Night]) -> tuple[Finding, ...]:
         Finding(
             "few-baseline-nights",
             "warning" if misfit else "info",
-            f"The baseline has {len(nights)} night{'s' if len(nights) > 1 else ''}, so how far healthy nights differ is "
-            "assumed more than known"
+            f"The baseline has {len(nights)} night{'s' if len(nights) > 1 else ''}, so how far healthy nights differ "
+            "is assumed more than known"
             + (", and widely, as the first-order model does not quite describe this plant" if misfit else "")
             + ". Add nights with ordinary moves of different lengths: five or more.",
             {"nights": len(nights), "nights_with_misfit": misfit},
