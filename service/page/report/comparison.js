@@ -17,13 +17,33 @@ function row(report, fit, i) {
   };
 }
 
+const METHODS = { "high-order-arx": "Difference equation of high order", subspace: "Subspace model" };
+
+// How far models that presume no structure agree with the chosen one on the answer to a step.
+function crossChecks(report) {
+  const checks = report.cross_checks ?? [];
+  if (checks.length === 0) return null;
+  return [
+    h("p", { class: "note" }, "Beside models that presume no structure: the answer to a step, differences in percent of the settled gain."),
+    table("The chosen model beside models without structure",
+      ["Model without structure", "Agreement", "Largest difference", "at", "Chance alone, up to"],
+      checks.map((one) => ({
+        attributes: { "data-testid": `cross-check-${one.method}` },
+        cells: [word(METHODS, one.method), withUnit(fixed(one.agreement_percent, 1), "%"),
+          withUnit(fixed(one.max_difference_percent, 1), "%"), withUnit(significant(one.at_s, 3), "s"),
+          one.bound_percent === null ? "–" : withUnit(fixed(one.bound_percent, 1), "%")],
+      })), { class: "stack" }),
+  ];
+}
+
 export function comparison(report) {
-  if (report.selected === null || report.fits.length < 2) return null;
+  if (report.selected === null) return null;
   const others = report.fits.filter((_, i) => i !== report.selected);
   return section("comparison", "Models compared", "All on the same rows. AICc weighs the misfit against the number of parameters, smaller is better; a noise order of 0 is white noise.",
     h("p", { "data-testid": "selected-because" }, report.selected_because),
     table("The fits beside each other", ["Model", "AICc", "Fit", "Fit on a held-out span", "Residual, rms", "Noise order"],
       report.fits.map((fit, i) => row(report, fit, i)), { class: "stack" }),
+    crossChecks(report),
     others.map((fit) => h("details", { class: "fold small", "data-testid": `other-${fit.model}` },
       h("summary", {}, `Not chosen: ${word(MODELS, fit.model).toLowerCase()}`),
       parameterTable(fit),
