@@ -109,6 +109,19 @@ class Layout:
         """Whether the command is taken as straight between samples."""
         return any(s.straight for s in self.stretches)
 
+    def leading(self, rows: int) -> tuple[Layout | None, int]:
+        """The stretches that make up the first `rows` used rows, not whitened, and how many that came to."""
+        kept: list[Stretch] = []
+        taken = 0
+        for s in self.stretches:
+            own = min(s.rows - s.skip, rows - taken)
+            if own < SHORTEST:
+                break
+            stop = s.skip + own
+            kept.append(replace(s, time=s.time[:stop], command=s.command[:stop], speed=s.speed[:stop]))
+            taken += own
+        return (levelled(tuple(kept), self.command_level, self.speed_level), taken) if kept else (None, 0)
+
     def whitened(self, colour: Colour) -> Layout:
         """The same rows, their residuals to be whitened by a colour."""
         plain = replace(self, colour=colour, target=self.speed)

@@ -16,12 +16,14 @@ from ident.estimate.first_order import FirstOrder
 from ident.estimate.layout import Layout
 from ident.estimate.point import Point
 from ident.estimate.refine import refine
-from ident.estimate.start import starts, thinning
+from ident.estimate.start import Start, starts, thinning
 
 FINER = 8  # block means shrink by this factor from level to level
 MARGIN = 2  # cells beyond the window that a level's resolution asks for
 MOST_ROUNDS = 6
 SETTLED = 0.1  # relative change of T below which a level has done its work
+ENOUGH = 4000  # rows for a first look, where they show the answer plainly:
+PLAIN = 1000.0  # times its own noise, in power
 NEIGHBOURS = 6  # cells on either side of the refined minimum
 
 
@@ -29,9 +31,20 @@ def search(layout: Layout) -> Point:
     """The least-squares FOPDT of a layout: global over L up to half the longest stretch."""
     even = layout.evened()
     blocks = thinning(even)
-    ends = [_follow(even, start.T, start.L, blocks) for start in starts(even.thinned(blocks))]
+    ends = [_follow(even, start.T, start.L, blocks) for start in _starts(even.thinned(blocks))]
     _, T, L = min(ends)
     return settle(layout, T, L)
+
+
+def _starts(layout: Layout) -> tuple[Start, ...]:
+    """Starts from the first rows alone, where those say it plainly; else from all of them."""
+    if layout.rows > 2 * ENOUGH:
+        head, rows = layout.leading(ENOUGH)
+        if head is not None and float(np.ptp(np.concatenate([s.command for s in head.stretches]))) > 0.0:
+            found = starts(head)
+            if rows * found[0].explained > PLAIN * (1.0 - found[0].explained):
+                return found
+    return starts(layout)
 
 
 def settle(layout: Layout, T: float, L: float) -> Point:

@@ -2,13 +2,11 @@
 
 from __future__ import annotations
 
-from dataclasses import replace
-
 import numpy as np
 
 from ident.errors import NotIdentifiable
 from ident.estimate.columns import columns
-from ident.estimate.layout import SHORTEST, Layout, Stretch, levelled
+from ident.estimate.layout import Layout
 from ident.estimate.point import Point
 from ident.estimate.refine import refine
 from ident.evidence.criteria import fit_percent
@@ -23,7 +21,7 @@ def validation_fit(layout: Layout, at: Point) -> float | None:
 
     None where one of the two parts does not move enough to say anything.
     """
-    train, row = _first_rows(layout, int(TRAINED * layout.rows))
+    train, row = layout.leading(int(TRAINED * layout.rows))
     if train is None or not _moves(layout, row):
         return None
     try:
@@ -40,26 +38,6 @@ def validation_fit(layout: Layout, at: Point) -> float | None:
         rest = layout.speed - base
         base = base + float(transient @ rest) / float(transient @ transient) * transient
     return fit_percent(layout.speed[row:], base[row:])
-
-
-def _first_rows(layout: Layout, rows: int) -> tuple[Layout | None, int]:
-    """The stretches that make up the first `rows` used rows, and how many that came to."""
-    kept: list[Stretch] = []
-    taken = 0
-    for s in layout.stretches:
-        own = s.rows - s.skip
-        if taken + own > rows:
-            own = rows - taken
-            if own >= SHORTEST:
-                stop = s.skip + own
-                kept.append(replace(s, time=s.time[:stop], command=s.command[:stop], speed=s.speed[:stop]))
-                taken += own
-            break
-        kept.append(s)
-        taken += own
-    if not kept:
-        return None, 0
-    return levelled(tuple(kept), layout.command_level, layout.speed_level), taken
 
 
 def _moves(layout: Layout, row: int) -> bool:
