@@ -2,11 +2,12 @@
 
 from __future__ import annotations
 
+from collections.abc import Iterator
 from typing import Any
 
 import pytest
 import schemathesis
-from conftest import ROOT, Served, apart
+from conftest import ROOT, apart, start_served
 from hypothesis import HealthCheck, given, settings
 from schemathesis.config import SchemathesisConfig
 from starlette.testclient import TestClient
@@ -26,9 +27,13 @@ CONFIG = SchemathesisConfig.from_dict(
 )
 
 
-@pytest.fixture(scope="session")
-def described(served: Served) -> Any:
-    return schemathesis.openapi.from_url(f"http://{served.host}:{served.port}/openapi.json", config=CONFIG)
+@pytest.fixture(scope="module")
+def described() -> Iterator[Any]:
+    # A service of its own: the loops that random names make must not stand in other tests' lists.
+    served = start_served(workers="1")
+    yield schemathesis.openapi.from_url(f"http://{served.host}:{served.port}/openapi.json", config=CONFIG)
+    served.process.terminate()
+    served.process.communicate(timeout=30)
 
 
 def operations() -> list[tuple[str, str]]:
