@@ -138,8 +138,7 @@ def _residuals(figures: Statistics) -> Iterator[Finding]:
         yield Finding(
             "residuals-follow-command",
             "info",
-            "The residuals still depend on past commands: a first-order model with dead time leaves some of the "
-            "dynamics out.",
+            "The residuals still depend on past commands: this model leaves some of the dynamics out.",
             {"input_correlation_p": p},
         )
 
