@@ -21,12 +21,20 @@ FEW = 4  # nights below which the scatter between them is hardly known
 
 @dataclass(frozen=True, slots=True, eq=False)
 class Allowed:
-    """repeats, misfit: (3, 3), of healthy nights, and of those whose model leaves something out (added);
-    size_L: practical size of L, s."""
+    """How nights differ beside their errors.
+
+    repeats   (3, 3), healthy ones;  misfit  (3, 3), added where the model leaves something out
+    always    whether the baseline already says that it does;  size_L  practical size of L, s
+    """
 
     repeats: Floats
     misfit: Floats
+    always: bool
     size_L: float
+
+    def misfits(self, night: Night) -> bool:
+        """Whether the model leaves something out. The plant's affair: a log that fails to show it is no proof."""
+        return night.misfit or self.always
 
     def around(self, night: Night) -> Floats:
         """(3, 3): the night's covariance with what is allowed, dead time widened where it is poorly known.
@@ -39,7 +47,7 @@ class Allowed:
         own = covariance(night)
         wide = 1.0 + 9.0 * own[2, 2] / self.size_L**2 if self.size_L > 0.0 else 1.0
         widen = np.array([1.0, 1.0, np.sqrt(wide)])
-        allowed = self.repeats + self.misfit if night.misfit else self.repeats
+        allowed = self.repeats + self.misfit if self.misfits(night) else self.repeats
         return np.asarray(own * np.outer(widen, widen) + allowed)
 
 
@@ -83,7 +91,8 @@ def baseline_of(given: Sequence[Night | Estimated], practical: PracticalSize) ->
     sizes = practical.at(middle, std_T)
     repeats = differing(sizes, REPEATS, K, T)
     repeats += np.diag((ROUNDING * np.array([middle[0], middle[1], T + middle[2]])) ** 2)
-    allowed = Allowed(repeats, differing(sizes, MISFIT, K, T) / len(nights), sizes["L"])
+    misfit = differing(sizes, MISFIT, K, T) / len(nights)
+    allowed = Allowed(repeats, misfit, any(n.misfit for n in nights), sizes["L"])
     found = level(z, np.array([allowed.around(n) for n in nights]))
     # Integrating nights may average to a pole at or beyond 0: T is then as long as their errors allow, and unknown.
     pole = max(float(found.z[1]), 0.01 * float(np.sqrt(found.covariance[1, 1])))
@@ -95,14 +104,13 @@ def _findings(nights: list[Night]) -> tuple[Finding, ...]:
     if len(nights) >= FEW:
         return ()
     misfit = sum(n.misfit for n in nights)
+    widely = ", and widely, as the first-order model does not quite describe this plant" if misfit else ""
     return (
         Finding(
             "few-baseline-nights",
             "warning" if misfit else "info",
             f"The baseline has {len(nights)} night{'s' if len(nights) > 1 else ''}, so how far healthy nights differ "
-            "is assumed more than known"
-            + (", and widely, as the first-order model does not quite describe this plant" if misfit else "")
-            + ". Add nights with ordinary moves of different lengths: five or more.",
+            f"is assumed more than known{widely}. Add nights with ordinary moves of different lengths: five or more.",
             {"nights": len(nights), "nights_with_misfit": misfit},
         ),
     )

@@ -28,7 +28,7 @@ from ident.record.segments import Floats
 from ident.watch.coordinates import readings, slopes
 
 REPEATS = (0.1, 0.1, 0.1)  # of K, T, L
-MISFIT = (0.25, 0.5, 0.5)
+MISFIT = (0.15, 0.5, 0.5)
 T_KNOWN = 0.25  # std of T over T; beyond, T says nothing about what is large for L
 
 

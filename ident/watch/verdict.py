@@ -10,8 +10,8 @@ would not have met the thresholds on average; so a night that shows K may say no
 
 On a blind night, one that would be no-news, the model stands on few moves or short ones. There what it leaves out
 weighs most, and a first-order fit of a second-order plant trades T against L by more than any covariance tells. So
-such a night calls K or K/T alone, and those only where the change is `BLIND` times what it would have shown. (The
-rule and the factor are from our simulated nights, no source.)
+such a night calls K or K/T alone (K alone where the fits say that they leave something out), and those only where the
+change is `BLIND` times what it would have shown. (The rule and the factor are from our simulated nights, no source.)
 """
 
 from __future__ import annotations
@@ -101,7 +101,8 @@ def verdict(level: Baseline, night: Night | None, significance: float) -> Drift:
         name: _parameter(level, night, name, reading, whole, significance) for name, reading in before.items()
     }
     if all(parameters[name].blind for name in GAINS):
-        parameters = {name: _in_the_dark(name, p) for name, p in parameters.items()}
+        trusted = ("K",) if level.allowed.misfits(night) else GAINS
+        parameters = {name: _in_the_dark(p, name in trusted) for name, p in parameters.items()}
     if any(p.verdict == "moved" for p in parameters.values()):
         said: Verdict = "moved"
     else:
@@ -130,11 +131,11 @@ def _parameter(
     )
 
 
-def _in_the_dark(name: str, found: ParameterDrift) -> ParameterDrift:
-    """The parameter on a blind night."""
+def _in_the_dark(found: ParameterDrift, trusted: bool) -> ParameterDrift:
+    """The parameter on a blind night, and whether such a night may call it."""
     assert found.change is not None
     assert found.visible is not None
-    if name in GAINS and found.verdict == "moved" and abs(found.change) >= BLIND * found.visible:
+    if trusted and found.verdict == "moved" and abs(found.change) >= BLIND * found.visible:
         return found
     return replace(found, verdict="no-news" if found.verdict == "moved" else found.verdict)
 
