@@ -1,11 +1,10 @@
 """Practical sizes: how far a parameter must move before anybody should be called.
 
-A loop tuned for Ms = 1.6 by the largest integral gain reaches about 1.7 when K is 10 % up. That is the least change
-worth a walk to the machine. T does less: with a PI whose integral time follows it, 15 % either way moves Ms by less
-than 10 % of gain does. What K/T does to the loop is the same as what T does. The dead time counts by the phase it
-takes at the crossover, which in a loop tuned for its dead time lies near 1/(2 L): a fifth of L is then a tenth of a
-radian. Where L is small against T the crossover lies lower, and L itself is known to a share of T at best: so the
-size is 5 % of T + L where that is more.
+A PI of the largest integral gain for Ms = 1.6 comes to 1.66 ... 1.69 when K is 10 % up, over L/T from 0.1 to 3. That
+is the least change worth a walk to the machine. T 15 % off comes to at most 1.68, so it may move further; K/T as far as
+T. L 20 % up comes to 1.8: by margin alone it should be held tighter, but a night seldom knows it better, and a size that
+no night can see would only make nights say nothing. Where L is small against T, it is known to a share of T at best: so
+the size is 5 % of T + L where that is more. (Figures: `tests/ident/test_drift_margin.py`.)
 
 Two healthy nights do not agree for ever: oil warms, loads differ. `REPEATS` of the practical size is taken as one
 standard deviation of what a night differs from the next, on top of the fits' own errors, whatever the baseline shows:

@@ -103,3 +103,14 @@ def test_where_nothing_can_be_proposed_it_says_so() -> None:
     assert found.margin is None
     assert found.verdict == "not-moved"
     assert "margin-unknown" in {f.code for f in found.findings}
+
+
+@pytest.mark.parametrize("L", [0.1, 0.25, 1.0, 3.0])
+def test_what_a_move_of_the_practical_size_costs_is_as_stated(L: float) -> None:
+    # ident/watch/sizes.py states these figures as the reason for its sizes.
+    settings = ident.tune(ident.Fopdt(1.0, 1.0, L), Ms=1.6).settings
+    moved = at((1.1, 1.0, L), (1.0, 0.85, L), (1.0, 1.15, L), (1.0, 1.0, 1.2 * L))
+    K_up, T_down, T_up, L_up = sensitivities(moved, settings, 0.0)
+    assert 1.655 < K_up < 1.695
+    assert max(T_down, T_up) < 1.685
+    assert L_up == pytest.approx(1.8, abs=0.03)
