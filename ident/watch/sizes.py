@@ -2,7 +2,7 @@
 
 A PI of the largest integral gain for Ms = 1.6 comes to 1.66 ... 1.69 when K is 10 % up, over L/T from 0.1 to 3. That
 is the least change worth a walk to the machine. T 15 % off comes to at most 1.68, so it may move further; K/T as far as
-T. L 20 % up comes to 1.8: by margin alone it should be held tighter, but a night seldom knows it better, and a size that
+T. L 20 % up comes to 1.8: by margin alone it should be held tighter, but nights seldom know it better, and a size
 no night can see would only make nights say nothing. Where L is small against T, it is known to a share of T at best: so
 the size is 5 % of T + L where that is more. (Figures: `tests/ident/test_drift_margin.py`.)
 

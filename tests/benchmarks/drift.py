@@ -2,6 +2,8 @@
 
 Nights are simulated under PI with noise in the loop (tests/reference/nightly.py), fitted by `ident.fit` and compared
 as a service would; nothing between the log and the verdict is left out. Seeded; 200 series take about half an hour.
+
+The bar: at most 3 of 2000 moved, and 95 % found, for the plant that is fitted as what it is; no alarms for the others.
 """
 
 from __future__ import annotations
