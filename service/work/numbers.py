@@ -32,12 +32,16 @@ class Parameter:
 
 @dataclass(frozen=True, slots=True)
 class Plant:
-    """K, T, L of the first-order fit with their covariance, in the order of `names`."""
+    """K, T, L of the first-order fit with their covariance, in the order of `names`.
+
+    input_correlation_p   says whether that fit leaves dynamics out, which makes nights differ by more than noise
+    """
 
     values: dict[str, float]
     names: tuple[str, ...]
     matrix: tuple[tuple[float | None, ...], ...]
     gain_unit: str
+    input_correlation_p: float | None = None
 
 
 @dataclass(frozen=True, slots=True)
@@ -134,4 +138,5 @@ def _plant(fit: Mapping[str, Any]) -> Plant:
         tuple(covariance["names"]),
         tuple(tuple(row) for row in covariance["matrix"]),
         parameters["K"]["unit"],
+        fit["statistics"]["input_correlation_p"],
     )

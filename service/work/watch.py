@@ -179,7 +179,14 @@ def _night(numbers: Numbers, gain_unit: str | None) -> tuple[ident.Night | None,
             f'Its gain is in "{plant.gain_unit}", the baseline\'s in "{gain_unit}": bring the logs to one unit.',
         )
     try:
-        return ident.Night.from_values(plant.values, plant.names, plant.matrix, gain_unit=plant.gain_unit), None
+        night = ident.Night.from_values(
+            plant.values,
+            plant.names,
+            plant.matrix,
+            gain_unit=plant.gain_unit,
+            input_correlation_p=plant.input_correlation_p,
+        )
+        return night, None
     except ident.IdentError as error:
         return None, error.message
 
