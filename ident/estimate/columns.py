@@ -17,7 +17,7 @@ class Columns:
 
     response          (rows,), deviation from the command level
     slopes            (k, rows), of the response in the shape's logarithms;  slope_L  (rows,), per s
-    nuisance          (m, rows): the offset, then the transients of each freed stretch
+    nuisance          (m, rows): the offset, the drift where there is one, then the transients of each freed stretch
     nuisance_slopes   (k, m, rows)
     """
 
@@ -44,13 +44,14 @@ def _nuisance(layout: Layout, shape: Shape) -> tuple[Floats, Floats]:
         shape.transients(s.time[s.skip :] - s.time[s.skip]) if s.start != "settled" else None for s in layout.stretches
     ]
     some = next((o for o in own if o is not None), None)
-    if some is None:
-        return np.ones((1, layout.rows)), np.zeros((1, 1, layout.rows))
-    k, m = some[1].shape[:2]
-    value = np.zeros((1 + m * sum(o is not None for o in own), layout.rows))
+    first = 2 if layout.drifting else 1  # nuisances that do not move with the shape
+    k, m = some[1].shape[:2] if some is not None else (1, 0)
+    value = np.zeros((first + m * sum(o is not None for o in own), layout.rows))
     slope = np.zeros((k, *value.shape))
     value[0] = 1.0
-    column, row = 1, 0
+    if layout.drifting:
+        value[1] = layout.clock
+    column, row = first, 0
     for stretch, mine in zip(layout.stretches, own, strict=True):
         end = row + stretch.rows - stretch.skip
         if mine is not None:

@@ -14,6 +14,7 @@ from ident.estimate.layout import Layout, lay_out
 from ident.estimate.point import Point
 from ident.estimate.refine import refine
 from ident.estimate.search import search, settle
+from ident.estimate.slow_drift import allow_drift
 from ident.evidence.colour import Colour, noise_colour
 from ident.evidence.feedback import feedback
 from ident.record import LoopRecord
@@ -71,6 +72,7 @@ def ground(record: LoopRecord, hold: Hold | None = None) -> Ground:
     if any(s.start == "joined" for s in layout.stretches):
         layout, at = _leave_out_unknown_past(layout, at)
     layout, at = _between_samples(layout, at, hold)
+    layout, at = allow_drift(layout, at)
     return Ground(record, layout, at)
 
 

@@ -13,6 +13,7 @@ joined    the segment begins in the middle of the action (after a gap, or under 
 
 from __future__ import annotations
 
+from collections.abc import Iterable
 from dataclasses import dataclass, replace
 from typing import Literal
 
@@ -41,6 +42,7 @@ class Stretch:
     speed       (n,), deviation from the mean of the usable speeds
     skip        rows at the start left out of the residuals
     straight    the command is taken as straight between samples, not held
+    began       s, the segment's first row on the record's clock
     """
 
     row0: int
@@ -51,6 +53,7 @@ class Stretch:
     start: Start
     skip: int = 0
     straight: bool = False
+    began: float = 0.0
 
     @property
     def rows(self) -> int:
@@ -74,6 +77,7 @@ class Layout:
     speed       (rows,), of the rows that enter the residuals, stretch after stretch
     target      the same, whitened by `colour`: what the sum of squares is taken of
     step        s, typical sample time: the median interval;  duration  s, of all stretches together
+    drifting    the speed drifts along a straight line that the command does not explain: one more nuisance
     """
 
     stretches: tuple[Stretch, ...]
@@ -84,6 +88,7 @@ class Layout:
     duration: float
     colour: Colour
     target: Floats
+    drifting: bool = False
 
     @property
     def rows(self) -> int:
@@ -105,6 +110,11 @@ class Layout:
         return replace(self, stretches=tuple(replace(s, straight=True) for s in self.stretches))
 
     @property
+    def clock(self) -> Floats:
+        """(rows,), s on the record's clock at the used rows."""
+        return np.concatenate([s.began + s.time[s.skip :] for s in self.stretches])
+
+    @property
     def straight(self) -> bool:
         """Whether the command is taken as straight between samples."""
         return any(s.straight for s in self.stretches)
@@ -120,7 +130,7 @@ class Layout:
             stop = s.skip + own
             kept.append(replace(s, time=s.time[:stop], command=s.command[:stop], speed=s.speed[:stop]))
             taken += own
-        return (levelled(tuple(kept), self.command_level, self.speed_level), taken) if kept else (None, 0)
+        return (self._of(kept), taken) if kept else (None, 0)
 
     def whitened(self, colour: Colour) -> Layout:
         """The same rows, their residuals to be whitened by a colour."""
@@ -139,37 +149,25 @@ class Layout:
 
     def skipping(self, dead_time: float) -> Layout:
         """The same stretches, not whitened, each joined one without the rows within `dead_time` of its start."""
-        return levelled(
-            tuple(
-                replace(
-                    s,
-                    skip=int(np.searchsorted(s.time, dead_time, side="right")) if s.start == "joined" else 0,
-                )
-                for s in self.stretches
-            ),
-            self.command_level,
-            self.speed_level,
+        return self._of(
+            replace(s, skip=int(np.searchsorted(s.time, dead_time, side="right")) if s.start == "joined" else 0)
+            for s in self.stretches
         )
 
     def evened(self) -> Layout:
         """Every stretch on the typical step: command held, speed interpolated. For start values only."""
         if self.uniform:
             return self
-        return levelled(
-            tuple(s if s.step is not None else _even(s, self.step) for s in self.stretches),
-            self.command_level,
-            self.speed_level,
-        )
+        return self._of(s if s.step is not None else _even(s, self.step) for s in self.stretches)
 
     def thinned(self, blocks: int) -> Layout:
         """Block means of `blocks` rows of uniform stretches. For start values only."""
         if blocks == 1:
             return self
-        return levelled(
-            tuple(_thin(s, blocks) for s in self.stretches if s.rows >= 2 * blocks),
-            self.command_level,
-            self.speed_level,
-        )
+        return self._of(_thin(s, blocks) for s in self.stretches if s.rows >= 2 * blocks)
+
+    def _of(self, stretches: Iterable[Stretch]) -> Layout:
+        return replace(levelled(tuple(stretches), self.command_level, self.speed_level), drifting=self.drifting)
 
 
 def lay_out(record: LoopRecord) -> Layout:
@@ -202,12 +200,13 @@ def _stretch(record: LoopRecord, segment: Segment, *, first: bool, levels: tuple
         start = "free"
     elif first and len(moves) < RICH_MOVES:
         start = "settled"
-    time = record.time[segment.slice]
-    time = time - time[0]
+    began = float(record.time[segment.start])
+    time = record.time[segment.slice] - began
     if segment.step is not None:
         # Stamps are rounded by the logger; the clock behind them is not.
         time = np.asarray(segment.step * np.arange(segment.rows), dtype=np.float64)
-    return Stretch(segment.start, time, segment.step, command, record.speed[segment.slice] - levels[1], start)
+    speed = record.speed[segment.slice] - levels[1]
+    return Stretch(segment.start, time, segment.step, command, speed, start, began=began)
 
 
 def _even(stretch: Stretch, step: float) -> Stretch:

@@ -33,6 +33,7 @@ def findings(
         *_integrating(layout, at, parameters, derived),
         *_set_aside(found),
         *_straight(layout),
+        *_drift(layout, at),
         *up_and_down(found),
         *_widths(parameters),
         *_residuals(figures),
@@ -87,6 +88,18 @@ def _straight(layout: Layout) -> Iterator[Finding]:
             "The command changes smoothly and was taken as straight between its samples, not held. If the controller "
             "does hold it over the log's own sample time, the dead time is half a sample shorter: say so.",
             {"sample_time_s": layout.step},
+        )
+
+
+def _drift(layout: Layout, at: Point) -> Iterator[Finding]:
+    if layout.drifting:
+        slope = float(at.nuisance[1])
+        yield Finding(
+            "slow-drift",
+            "warning",
+            f"The speed drifts by {slope * layout.duration:.3g} over this log along a straight line that the command "
+            "does not explain (warming, a load that fills, a supply that sags). The line was fitted beside the model.",
+            {"slope_per_s": slope, "over_log": slope * layout.duration},
         )
 
 

@@ -16,6 +16,7 @@ from ident.estimate.fit import DeadTimeProfile
 from ident.estimate.layout import Layout
 from ident.estimate.point import Point
 from ident.estimate.search import around
+from ident.estimate.slow_drift import without_drift
 from ident.evidence.colour import WHITE, Colour, coloured_covariance
 from ident.evidence.estimates import NORMAL_95, Covariance, Estimate
 from ident.record.segments import Floats
@@ -86,7 +87,7 @@ def dead_time_profile(layout: Layout, at: Point, known: Uncertainty) -> DeadTime
         return None
     h = layout.step
     reach = max(1, min(math.ceil(4.5 * std / h), PROFILE_CELLS))
-    window = around(layout, at.shape.lags, at.L, reach)
+    window = around(without_drift(layout, at), at.shape.lags, at.L, reach)
     low = max(at.L - 4.5 * std, window.first * h)
     high = min(at.L + 4.5 * std, (window.first + len(window.gram)) * h)
     L = np.unique(np.concatenate((np.linspace(low, high, PROFILE_POINTS), [at.L])))
