@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 import math
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from typing import Literal
 
 import numpy as np
@@ -15,6 +15,7 @@ from ident.estimate.point import Point
 from ident.estimate.refine import refine
 from ident.estimate.search import search, settle
 from ident.estimate.slow_drift import allow_drift
+from ident.estimate.unseen import seen
 from ident.evidence.colour import Colour, noise_colour
 from ident.evidence.feedback import feedback
 from ident.record import LoopRecord
@@ -28,16 +29,22 @@ WORTH = 2.0
 MOVING = 0.5  # share of rows with a move, above which a command may be smooth
 SMOOTH = 0.7  # mean square of the second differences over that of the first; 2 for noise and for steps
 TOLERATED = 1.3  # times the held sum of squares, for a smooth command
+PLAIN = 0.1  # share of the speed's power left unexplained, below which the whole log is of one plant
+AGREE = 2.0  # times the share that the better part of a log leaves unexplained, for more of it to be of the same plant
 CLEARLY = 10.0  # fall of n ln(sum of squares) that decides between held and straight
 
 
 @dataclass(frozen=True, slots=True, eq=False)
 class Ground:
-    """The layout of a record without the rows that answer to an unknown past, and its plain first-order point."""
+    """The layout of a record without the rows that answer to an unknown past, and its plain first-order point.
+
+    unseen   s of the record from and to which the command moved faster than the log shows, left out
+    """
 
     record: LoopRecord
     layout: Layout
     first: Point
+    unseen: tuple[float, float] | None = None
 
     @property
     def closed(self) -> bool:
@@ -57,6 +64,7 @@ class Found:
     at: Point
     colour: Colour
     set_aside: bool = False
+    unseen: tuple[float, float] | None = None
 
 
 def ground(record: LoopRecord, hold: Hold | None = None) -> Ground:
@@ -66,6 +74,33 @@ def ground(record: LoopRecord, hold: Hold | None = None) -> Ground:
 
     Raises NotIdentifiable.
     """
+    base = _ground(record, hold)
+    return base if hold == "zero-order" or _unexplained(base) < PLAIN else _where_seen(record, base, hold)
+
+
+def _where_seen(record: LoopRecord, whole: Ground, hold: Hold | None) -> Ground:
+    """The ground of the rows whose command is seen, where they say plainly more than the whole log.
+
+    Rows on both sides of the unseen ones are used together where they agree on the plant, else the better side alone.
+    """
+    tries = [whole]
+    for shorter in seen(record):
+        try:
+            base = _ground(shorter, hold)
+        except NotIdentifiable:
+            continue
+        left = shorter.excluded[len(record.excluded)]
+        span = (float(record.time[left.start]), float(record.time[left.stop - 1]))
+        tries.append(replace(base, unseen=span))
+    best = min(_unexplained(b) for b in tries)
+    return next(b for b in tries if _unexplained(b) <= AGREE * best)
+
+
+def _unexplained(base: Ground) -> float:
+    return base.first.rss / _spread(base.layout.speed)
+
+
+def _ground(record: LoopRecord, hold: Hold | None) -> Ground:
     layout = lay_out(record)
     _require_movement(record, layout)
     at = search(layout)
@@ -83,11 +118,11 @@ def with_noise(base: Ground, at: Point) -> Found:
     """
     colour = noise_colour(base.layout.parts(at.raw))
     if colour.white or not base.closed:
-        return Found(base.layout, at, colour)
+        return Found(base.layout, at, colour, unseen=base.unseen)
     layout, white = coloured(base.layout, at)
     if _spread(white.raw) > WORTH * _spread(at.raw):
-        return Found(base.layout, at, colour, set_aside=True)
-    return Found(layout, white, layout.colour)
+        return Found(base.layout, at, colour, set_aside=True, unseen=base.unseen)
+    return Found(layout, white, layout.colour, unseen=base.unseen)
 
 
 def on_record(base: Ground, at: Point) -> Floats:

@@ -33,6 +33,7 @@ def findings(
         *_integrating(layout, at, parameters, derived),
         *_set_aside(found),
         *_straight(layout),
+        *_unseen(found),
         *_drift(layout, at),
         *up_and_down(found),
         *_widths(parameters),
@@ -88,6 +89,18 @@ def _straight(layout: Layout) -> Iterator[Finding]:
             "The command changes smoothly and was taken as straight between its samples, not held. If the controller "
             "does hold it over the log's own sample time, the dead time is half a sample shorter: say so.",
             {"sample_time_s": layout.step},
+        )
+
+
+def _unseen(found: Found) -> Iterator[Finding]:
+    if found.unseen is not None:
+        start, end = found.unseen
+        yield Finding(
+            "command-faster-than-the-log",
+            "warning",
+            f"From {start:.4g} to {end:.4g} s the command moves with fewer than seven samples a period: the log does "
+            "not show what the motor was told there, and those rows were left out. Log faster, or sweep slower.",
+            {"start_s": start, "end_s": end, "sample_time_s": found.layout.step},
         )
 
 
