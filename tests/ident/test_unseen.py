@@ -28,7 +28,7 @@ def sweep(top: float) -> ident.LoopRecord:
 def test_a_sweep_past_half_the_sample_rate_is_used_up_to_where_it_is_seen() -> None:
     fit = ident.fit(sweep(120.0), "fopdt")
     found = next(f for f in fit.findings if f.code == "command-faster-than-the-log")
-    # Seven samples a period, 100/7 Hz, are reached at this share of the sweep; a window of rows finds it a little early.
+    # Seven samples a period, 100/7 Hz, are reached at this share of the sweep; a window finds it a little early.
     assert found.evidence["start_s"] == pytest.approx(100.0 / 7.0 / 120.0 * 10.0, abs=0.2)
     assert np.isnan(fit.simulated[300:900]).all()
     # Straight lines between four to ten samples a period cost some percent of amplitude.
@@ -53,6 +53,6 @@ def test_brushless_motor_swept_past_the_log(shared: Path) -> None:
     record = ident.read_csv(shared / "datasets" / "bldc_chirp.csv")
     fit = ident.fit(record, "fopdt")
     assert fit.model.K == pytest.approx(18.02, rel=0.05)
-    # Sampled at 4.5 to 10 ms, the motor's 3 ms cannot be told from a dead time: their sum can, to a fraction of a sample.
+    # Sampled at 4.5 to 10 ms, the motor's 3 ms cannot be told from a dead time: their sum can.
     assert fit.model.T + fit.model.L == pytest.approx(0.003, abs=0.001)
     assert "command-faster-than-the-log" in codes(fit)
