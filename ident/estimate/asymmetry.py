@@ -8,7 +8,8 @@ import numpy as np
 
 from ident.estimate.columns import columns
 from ident.estimate.ground import Found
-from ident.evidence.colour import WHITE, Colour, coloured_covariance
+from ident.evidence.colour import coloured_covariance, inverse_gram
+from ident.evidence.normal import solve_normal
 from ident.findings import Finding
 
 CLEAR = 4.0  # standard deviations of the difference
@@ -25,17 +26,22 @@ def up_and_down(found: Found) -> Iterator[Finding]:
     at, layout = found.at, found.layout
     if at.log_count != 1:
         return
-    slope = at.K * columns(layout, at.shape, at.L).slopes[0]
+    # Not whitened, and without a start's own transient where there is one.
+    plain = layout.colour.white and len(at.nuisance) == 1
+    slope = at.jacobian[1] if plain else at.K * columns(layout, at.shape, at.L).slopes[0]
     # Past the corner the speed lags behind: a slope in log T below zero means that it is on its way up.
     up = slope < 0.0
     power = float(slope @ slope)
-    if power == 0.0 or not SHARE < float(slope[up] @ slope[up]) / power < 1.0 - SHARE:
+    rising = np.where(up, slope, 0.0)
+    if power == 0.0 or not SHARE < float(rising @ rising) / power < 1.0 - SHARE:
         return
-    split = layout.whiten(np.stack((np.where(up, slope, 0.0), np.where(up, 0.0, slope))))
-    rows = np.vstack((split, np.delete(at.jacobian, 1, axis=0)))
-    steps = np.linalg.lstsq(rows.T, at.residual, rcond=None)[0]
-    left = found.colour if layout.colour.white else Colour(WHITE.predictors, found.colour.variances[-1:])
-    covariance = coloured_covariance(rows, left)[:2, :2]
+    rows = np.vstack((layout.whiten(np.stack((rising, slope - rising))), at.jacobian[:1], at.jacobian[2:]))
+    gram = rows @ rows.T
+    steps = solve_normal(gram, rows @ at.residual)
+    if found.colour.white or not layout.colour.white:
+        covariance = found.colour.variance * inverse_gram(gram)
+    else:
+        covariance = coloured_covariance(rows, found.colour)
     difference = float(steps[0] - steps[1])
     std = float(np.sqrt(max(covariance[0, 0] + covariance[1, 1] - 2.0 * covariance[0, 1], 1e-300)))
     if abs(difference) < max(CLEAR * std, NOTABLE):

@@ -19,14 +19,13 @@ import numpy as np
 from numpy.typing import NDArray
 from scipy.signal import lfilter
 
+from ident.estimate.columns import FORGOTTEN
 from ident.estimate.layout import Layout, Stretch
 from ident.evidence.normal import RIDGE, solve_normal
 from ident.plants.hold import lag_gap, lag_gap_slope
 from ident.record.segments import Floats
 
 Ints = NDArray[np.int64]
-
-FORGOTTEN = 40.0  # time constants after which a transient is below rounding
 
 
 @dataclass(frozen=True, slots=True, eq=False)

@@ -10,22 +10,42 @@ from ident.estimate.layout import Layout
 from ident.estimate.shape import Shape
 from ident.record.segments import Floats
 
+FORGOTTEN = 40.0  # time constants after which a free motion is below rounding
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class Moving:
+    """Transients of one stretch, nuisances `first`..., which move with the shape at the rows from `row` on.
+
+    slopes   (k, m, few), in the shape's logarithms; 0 after those rows
+    """
+
+    first: int
+    row: int
+    slopes: Floats
+
 
 @dataclass(frozen=True, slots=True, eq=False)
 class Columns:
     """At the used rows of a layout, for one shape and L.
 
-    response          (rows,), deviation from the command level
-    slopes            (k, rows), of the response in the shape's logarithms;  slope_L  (rows,), per s
-    nuisance          (m, rows): the offset, the drift where there is one, then the transients of each freed stretch
-    nuisance_slopes   (k, m, rows)
+    response     (rows,), deviation from the command level
+    slopes       (k, rows), of the response in the shape's logarithms;  slope_L  (rows,), per s
+    nuisance     (m, rows): the offset, the drift where there is one, then the transients of each freed stretch
+    transients   the last of these again: how they move with the shape
     """
 
     response: Floats
     slopes: Floats
     slope_L: Floats
     nuisance: Floats
-    nuisance_slopes: Floats
+    transients: tuple[Moving, ...]
+
+    def add_transients(self, amplitudes: Floats, to: Floats) -> None:
+        """Add the slopes of the transients of these amplitudes (m,) to slopes (k, rows)."""
+        for own in self.transients:
+            m, few = own.slopes.shape[1:]
+            to[:, own.row : own.row + few] += np.tensordot(amplitudes[own.first : own.first + m], own.slopes, (0, 1))
 
 
 def columns(layout: Layout, shape: Shape, L: float) -> Columns:
@@ -35,28 +55,29 @@ def columns(layout: Layout, shape: Shape, L: float) -> Columns:
         response, slopes, slope_L = parts[0]
     else:
         response, slopes, slope_L = (np.concatenate(c, axis=-1) for c in zip(*parts, strict=True))
-    nuisance, nuisance_slopes = _nuisance(layout, shape)
-    return Columns(response, slopes, slope_L, nuisance, nuisance_slopes)
+    return Columns(response, slopes, slope_L, *_nuisance(layout, shape))
 
 
-def _nuisance(layout: Layout, shape: Shape) -> tuple[Floats, Floats]:
-    own = [
-        shape.transients(s.time[s.skip :] - s.time[s.skip]) if s.start != "settled" else None for s in layout.stretches
-    ]
-    some = next((o for o in own if o is not None), None)
-    first = 2 if layout.drifting else 1  # nuisances that do not move with the shape
-    k, m = some[1].shape[:2] if some is not None else (1, 0)
-    value = np.zeros((first + m * sum(o is not None for o in own), layout.rows))
-    slope = np.zeros((k, *value.shape))
-    value[0] = 1.0
+def _nuisance(layout: Layout, shape: Shape) -> tuple[Floats, tuple[Moving, ...]]:
+    moving: list[Moving] = []
+    values: list[Floats] = []
+    first = column = 2 if layout.drifting else 1  # the offset and the drift do not move with the shape
+    row = 0
+    for stretch in layout.stretches:
+        if stretch.start != "settled":
+            time = stretch.time[stretch.skip :] - stretch.time[stretch.skip]
+            few = int(np.searchsorted(time, FORGOTTEN * shape.slowest, side="right"))
+            value, slopes = shape.transients(time[:few])
+            values.append(value)
+            moving.append(Moving(column, row, slopes))
+            column += len(value)
+        row += stretch.rows - stretch.skip
+    nuisance = np.zeros((column, layout.rows))
+    nuisance[0] = 1.0
     if layout.drifting:
-        value[1] = layout.clock
-    column, row = first, 0
-    for stretch, mine in zip(layout.stretches, own, strict=True):
-        end = row + stretch.rows - stretch.skip
-        if mine is not None:
-            value[column : column + m, row:end] = mine[0]
-            slope[:, column : column + m, row:end] = mine[1]
-            column += m
-        row = end
-    return value, slope
+        nuisance[1] = layout.clock
+    at = first
+    for value, own in zip(values, moving, strict=True):
+        nuisance[at : at + len(value), own.row : own.row + value.shape[1]] = value
+        at += len(value)
+    return nuisance, tuple(moving)

@@ -26,6 +26,11 @@ class FirstOrder:
         """Sum of the time constants, s."""
         return self.T
 
+    @property
+    def slowest(self) -> float:
+        """The time constant, s."""
+        return self.T
+
     def moved(self, log_steps: Floats, layout: Layout) -> FirstOrder:
         """T after a step of log T, within what the layout can tell."""
         T = self.T * float(np.exp(np.clip(log_steps[0], -1.5, 1.5)))

@@ -6,7 +6,7 @@ from dataclasses import dataclass
 
 import numpy as np
 
-from ident.estimate.columns import Columns, columns
+from ident.estimate.columns import columns
 from ident.estimate.layout import Layout
 from ident.estimate.shape import Shape
 from ident.evidence.normal import solve_normal
@@ -24,6 +24,7 @@ class Point:
     residual      (rows,), the same whitened;  rss  its sum of squares
     jacobian      (2 + k + nuisance, rows), whitened: slopes of the model in K, the shape's logarithms, L, and the
                   nuisance parameters
+    gram, toward  products of the jacobian's rows with themselves and with the residual
     """
 
     shape: Shape
@@ -34,6 +35,8 @@ class Point:
     residual: Floats
     rss: float
     jacobian: Floats
+    gram: Floats
+    toward: Floats
 
     @property
     def log_count(self) -> int:
@@ -54,21 +57,34 @@ def point(layout: Layout, shape: Shape, L: float, side: int = 1) -> Point:
         solution = solution + solve(weighed, residual)
         residual = layout.target - solution @ weighed
     K, nuisance = float(solution[0]), solution[1:]
-    moving = np.vstack((_log_slopes(at, K, nuisance), K * slope_L))
-    raw = residual if layout.colour.white else layout.speed - solution @ linear
-    jacobian = np.vstack((weighed[:1], layout.whiten(moving), weighed[1:]))
-    return Point(shape, L, K, nuisance, raw, residual, float(residual @ residual), jacobian)
+    k = len(at.slopes)
+    jacobian = np.empty((len(linear) + k + 1, layout.rows))
+    jacobian[0], jacobian[2 + k :] = weighed[0], weighed[1:]
+    moving = jacobian[1 : 2 + k]
+    np.multiply(at.slopes, K, out=moving[:k])
+    at.add_transients(nuisance, moving[:k])
+    np.multiply(slope_L, K, out=moving[k])
+    raw = residual
+    if not layout.colour.white:
+        moving[:] = layout.whiten(moving)
+        raw = layout.speed - solution @ linear
+    return Point(
+        shape,
+        L,
+        K,
+        nuisance,
+        raw,
+        residual,
+        float(residual @ residual),
+        jacobian,
+        jacobian @ jacobian.T,
+        jacobian @ residual,
+    )
 
 
 def solve(rows: Floats, right: Floats) -> Floats:
     """Least squares of `right` (n,) on the rows (k, n)."""
     return solve_normal(rows @ rows.T, rows @ right)
-
-
-def _log_slopes(at: Columns, K: float, nuisance: Floats) -> Floats:
-    if len(nuisance) == 1:  # an offset does not move with the shape
-        return K * at.slopes
-    return np.asarray(K * at.slopes + np.einsum("m,kmn->kn", nuisance, at.nuisance_slopes))
 
 
 def _slope_below(layout: Layout, shape: Shape, L: float) -> Floats:

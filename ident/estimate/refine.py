@@ -12,8 +12,9 @@ import numpy as np
 
 from ident.estimate.first_order import FirstOrder
 from ident.estimate.layout import Layout
-from ident.estimate.point import Point, point, solve
+from ident.estimate.point import Point, point
 from ident.estimate.shape import Shape
+from ident.evidence.normal import solve_normal
 
 MOST_STEPS = 40
 MOST_HALVINGS = 8
@@ -52,12 +53,13 @@ def _descend(layout: Layout, at: Point, low: float, high: float, promise: float)
     for _ in range(MOST_STEPS):
         if at.rss <= EXACT * total:
             break
-        step = solve(at.jacobian, at.residual)
+        step = solve_normal(at.gram, at.toward)
         if (at.L >= high and step[1 + k] > 0) or (at.L <= low and step[1 + k] < 0):
             # The dead time is held at the end of its cell; the shape alone moves.
-            short = solve(np.delete(at.jacobian, 1 + k, axis=0), at.residual)
-            step = np.insert(short, 1 + k, 0.0)
-        promised = float(at.residual @ (step @ at.jacobian))
+            others = np.delete(np.arange(len(at.gram)), 1 + k)
+            step = np.zeros(len(at.gram))
+            step[others] = solve_normal(at.gram[np.ix_(others, others)], at.toward[others])
+        promised = float(step @ at.toward)
         if promised <= promise * at.rss / layout.rows:
             break
         ahead = None

@@ -32,6 +32,11 @@ class SecondOrder:
         """Sum of the time constants, s."""
         return self.S
 
+    @property
+    def slowest(self) -> float:
+        """A bound of the longest time constant, s: S for two lags, 2 P/S of the envelope of a ringing pair."""
+        return max(self.S, 2.0 * self.P / self.S)
+
     def moved(self, log_steps: Floats, layout: Layout) -> SecondOrder:
         """The shape after a step of (log S, log P), or of log S alone, within what the layout can tell."""
         steps = np.exp(np.clip(log_steps, -1.0, 1.0))

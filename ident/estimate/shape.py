@@ -18,6 +18,10 @@ class Shape(Protocol):
     def lags(self) -> float:
         """Sum of the time constants, s."""
 
+    @property
+    def slowest(self) -> float:
+        """No free motion has a longer time constant, s."""
+
     def moved(self, log_steps: Floats, layout: Layout) -> Shape:
         """The shape after a step (k,) of the logarithms, within what the layout can tell."""
 

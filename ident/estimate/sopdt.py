@@ -29,6 +29,7 @@ from ident.estimate.uncertainty import (
 )
 from ident.estimate.units import gain_rate_unit, gain_unit
 from ident.estimate.validation import validation_fit
+from ident.evidence.colour import inverse_gram
 from ident.evidence.estimates import NORMAL_95, Estimate
 from ident.plants import Sopdt, UnderdampedSopdt
 from ident.record.segments import Floats
@@ -109,7 +110,7 @@ def _equal_if_untold(base: Ground, at: Point) -> Point:
     assert isinstance(at.shape, SecondOrder)
     # How far log P is from equal lags, in its own standard deviations.
     apart = math.log(S * S / (4.0 * at.shape.P))
-    information = np.linalg.pinv(at.jacobian @ at.jacobian.T, hermitian=True)[2, 2]
+    information = inverse_gram(at.gram)[2, 2]
     if apart**2 > FAR * EQUAL * information * at.rss / base.layout.rows:
         return at
     equal = refine(base.layout, SecondOrder(S, S * S / 4.0, True), at.L)

@@ -34,13 +34,12 @@ class Start:
 
 def thinning(layout: Layout) -> int:
     """Rows per block mean: the most (a power of two) that keeps the command's variance and FEWEST_ROWS rows."""
-    command = np.concatenate([s.command for s in layout.stretches])
-    variance = float(command.var())
+    means = np.concatenate([s.command for s in layout.stretches])
+    least = KEPT_VARIANCE * float(means.var())
     blocks = 1
     while layout.rows // (2 * blocks) >= FEWEST_ROWS:
-        n = len(command) // (2 * blocks) * (2 * blocks)
-        kept = float(command[:n].reshape(-1, 2 * blocks).mean(axis=1).var())
-        if kept < KEPT_VARIANCE * variance:
+        means = 0.5 * (means[0 : len(means) // 2 * 2 : 2] + means[1::2])
+        if float(means.var()) < least:
             break
         blocks *= 2
     return blocks

@@ -17,7 +17,7 @@ from ident.estimate.layout import Layout
 from ident.estimate.point import Point
 from ident.estimate.search import around
 from ident.estimate.slow_drift import without_drift
-from ident.evidence.colour import WHITE, Colour, coloured_covariance
+from ident.evidence.colour import Colour, coloured_covariance, inverse_gram
 from ident.evidence.estimates import NORMAL_95, Covariance, Estimate
 from ident.record.segments import Floats
 
@@ -51,22 +51,25 @@ def uncertainty(layout: Layout, at: Point, colour: Colour) -> Uncertainty:
     `colour` is theirs, and widens the covariance.
     """
     k = at.log_count
-    slopes = at.jacobian.copy()
-    slopes[0] *= at.K  # log|K/T| at fixed T
-    slopes[1] += slopes[0]  # log T at fixed K/T
-    rows = slopes.shape[1]
-    plain = Colour(WHITE.predictors, np.array([at.rss / rows]))
-    white = coloured_covariance(slopes, plain)[: k + 2, : k + 2]
+    rows = at.jacobian.shape[1]
+    to_logs = np.eye(len(at.gram))  # of the model's own parameters, K first, the shape's logarithms next
+    to_logs[0, 0] = at.K  # log|K/T| at fixed T
+    to_logs[1, 0] = at.K  # log T at fixed K/T
+    variance = at.rss / rows
+    white = variance * inverse_gram(to_logs @ at.gram @ to_logs.T)[: k + 2, : k + 2]
+    known = len(at.gram)
     if not layout.colour.white:
-        slopes = np.vstack((slopes, noise_slopes(layout, at)))
-        true = coloured_covariance(slopes, plain)[: k + 2, : k + 2]
+        slopes = np.vstack((to_logs @ at.jacobian, noise_slopes(layout, at)))
+        true, known = variance * inverse_gram(slopes @ slopes.T)[: k + 2, : k + 2], len(slopes)
+    elif colour.white:
+        true = white
     else:
-        true = coloured_covariance(slopes, colour)[: k + 2, : k + 2]
-    true = true * rows / max(rows - len(slopes), 1)
-    to_logs = np.eye(k + 2)
-    to_logs[0, 1] = 1.0  # log|K| = log|K/T| + log T
+        true = coloured_covariance(to_logs @ at.jacobian, colour)[: k + 2, : k + 2]
+    true = true * rows / max(rows - known, 1)
+    back = np.eye(k + 2)
+    back[0, 1] = 1.0  # log|K| = log|K/T| + log T
     inflation = float(true[-1, -1] / white[-1, -1]) if white[-1, -1] > 0 else 1.0
-    return Uncertainty(to_logs @ true @ to_logs.T, inflation)
+    return Uncertainty(back @ true @ back.T, inflation)
 
 
 def log_estimate(value: float, std_log: float, unit: str) -> Estimate:

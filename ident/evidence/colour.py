@@ -128,12 +128,16 @@ def coloured_covariance(jacobian: Floats, colour: Colour) -> Floats:
     With residuals of covariance R it is (JJ')^-1 JRJ' (JJ')^-1, and JRJ' = variance |J passed backwards through
     1/A|^2, as R = variance (A'A)^-1 for a filter matrix A.
     """
-    gram = jacobian @ jacobian.T
-    scale = lengths(gram)
-    inverse = np.linalg.pinv(gram / (scale[:, None] * scale), rcond=1e-14, hermitian=True)
-    inverse /= scale[:, None] * scale
+    inverse = inverse_gram(jacobian @ jacobian.T)
     if colour.white:
         return np.asarray(colour.variance * inverse)
     passed = lfilter([1.0], colour.taps, jacobian[:, ::-1], axis=1)
     middle = colour.variance * (passed @ passed.T)
     return np.asarray(inverse @ middle @ inverse)
+
+
+def inverse_gram(gram: Floats) -> Floats:
+    """(k, k), the inverse of a Gram matrix of rows of very unlike size; directions that the rows lack get nothing."""
+    scale = lengths(gram)
+    inverse = np.linalg.pinv(gram / (scale[:, None] * scale), rcond=1e-14, hermitian=True)
+    return np.asarray(inverse / (scale[:, None] * scale))
