@@ -20,34 +20,33 @@ SHARE = 0.1  # of the slope's power that each direction must have to be judged
 def up_and_down(found: Found) -> Iterator[Finding]:
     """A finding where the time constants of the two directions differ by more than chance and by enough to matter.
 
-    The slope in log T is split by the direction in which the speed is moving, and one Gauss-Newton step from the
-    common fit gives each direction its own.
+    Beside the slope in log T goes its part in which the speed is rising, and one Gauss-Newton step from the common fit
+    says how much of it the rise alone asks for.
     """
     at, layout = found.at, found.layout
     if at.log_count != 1:
         return
-    # Not whitened, and without a start's own transient where there is one.
-    plain = layout.colour.white and len(at.nuisance) == 1
-    slope = at.jacobian[1] if plain else at.K * columns(layout, at.shape, at.L).slopes[0]
+    white = layout.colour.white
+    slope = at.jacobian[1] if white else at.K * columns(layout, at.shape, at.L).slopes[0]
     # Past the corner the speed lags behind: a slope in log T below zero means that it is on its way up.
-    up = slope < 0.0
+    rising = np.minimum(slope, 0.0)
     power = float(slope @ slope)
-    rising = np.where(up, slope, 0.0)
     if power == 0.0 or not SHARE < float(rising @ rising) / power < 1.0 - SHARE:
         return
-    rows = np.vstack((layout.whiten(np.stack((rising, slope - rising))), at.jacobian[:1], at.jacobian[2:]))
-    gram = rows @ rows.T
-    steps = solve_normal(gram, rows @ at.residual)
-    if found.colour.white or not layout.colour.white:
-        covariance = found.colour.variance * inverse_gram(gram)
+    rising = layout.whiten(rising)
+    across, own = at.jacobian @ rising, float(rising @ rising)
+    gram = np.block([[at.gram, across[:, None]], [across[None], np.array([[own]])]])
+    steps = solve_normal(gram, np.append(at.toward, rising @ at.residual))
+    if white and not found.colour.white:
+        variance = float(coloured_covariance(np.vstack((at.jacobian, rising)), found.colour)[-1, -1])
     else:
-        covariance = coloured_covariance(rows, found.colour)
-    difference = float(steps[0] - steps[1])
-    std = float(np.sqrt(max(covariance[0, 0] + covariance[1, 1] - 2.0 * covariance[0, 1], 1e-300)))
+        variance = found.colour.variance * float(inverse_gram(gram)[-1, -1])
+    both, difference = float(steps[1]), float(steps[-1])
+    std = float(np.sqrt(max(variance, 1e-300)))
     if abs(difference) < max(CLEAR * std, NOTABLE):
         return
     T = at.shape.lags
-    T_up, T_down = (T * float(np.exp(np.clip(step, -1.0, 1.0))) for step in steps[:2])
+    T_up, T_down = (T * float(np.exp(np.clip(step, -1.0, 1.0))) for step in (both + difference, both))
     slower = "slowing down" if T_down > T_up else "speeding up"
     yield Finding(
         "up-and-down-differ",

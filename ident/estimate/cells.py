@@ -56,12 +56,11 @@ class Cells:
         rss = np.where(inside, self.total - np.einsum("ci,ci->c", b, self.against), np.inf)
         d = self.first + np.arange(len(rss))
         L = (d + 1) * h - into
-        for end in (0.0, h):
-            at_end = np.asarray(d * h + end, dtype=np.float64)
-            rss_end, T_end = self.profile(at_end, d)
+        ends = np.stack((d * h, (d + 1) * h))
+        rss_ends, T_ends = self.profile(ends.reshape(-1), np.concatenate((d, d)))
+        for end, rss_end, T_end in zip(ends, rss_ends.reshape(2, -1), T_ends.reshape(2, -1), strict=True):
             better = rss_end < rss
-            rss, L = np.where(better, rss_end, rss), np.where(better, at_end, L)
-            T_new = np.where(better, T_end, T_new)
+            rss, L, T_new = np.where(better, rss_end, rss), np.where(better, end, L), np.where(better, T_end, T_new)
         return rss, np.asarray(T_new, dtype=np.float64), np.asarray(L, dtype=np.float64)
 
     def profile(self, L: Floats, cell: np.ndarray | None = None) -> tuple[Floats, Floats]:
@@ -76,8 +75,8 @@ class Cells:
         to_two[:, 1, 0] = E
         to_two[:, 1, 1] = E * into / self.T**2
         to_two[:, 2, 1] = E
-        gram = np.einsum("cij,cik,ckl->cjl", to_two, self.gram[i], to_two)
-        against = np.einsum("cij,ci->cj", to_two, self.against[i])
+        gram = to_two.transpose(0, 2, 1) @ self.gram[i] @ to_two
+        against = (self.against[i][:, None] @ to_two)[:, 0]
         b = solve_normal(gram, against)
         with np.errstate(all="ignore"):
             T = self.T + b[:, 1] / b[:, 0]

@@ -35,7 +35,7 @@ def fit_fopdt(base: Ground) -> Fit:
     require_known(found, known)
     T = at.shape.lags
     K_std, T_std, L_std = np.sqrt(np.maximum(np.diag(known.log_covariance), 0.0))
-    profile = dead_time_profile(layout, at, known)
+    profile = dead_time_profile(layout, at, known, base.window if at is base.first else None)
     parameters = {
         "K": log_estimate(at.K, float(K_std), gain_unit(base.record)),
         "T": log_estimate(T, float(T_std), "s"),

@@ -9,6 +9,7 @@ from typing import Literal
 import numpy as np
 
 from ident.errors import NotIdentifiable
+from ident.estimate.cells import Cells
 from ident.estimate.coloured import coloured
 from ident.estimate.layout import Layout, lay_out
 from ident.estimate.point import Point
@@ -38,12 +39,14 @@ CLEARLY = 10.0  # fall of n ln(sum of squares) that decides between held and str
 class Ground:
     """The layout of a record without the rows that answer to an unknown past, and its plain first-order point.
 
+    window   the cells about that point, at its T, where they are known
     unseen   s of the record from and to which the command moved faster than the log shows, left out
     """
 
     record: LoopRecord
     layout: Layout
     first: Point
+    window: Cells | None = None
     unseen: tuple[float, float] | None = None
 
     @property
@@ -103,12 +106,13 @@ def _unexplained(base: Ground) -> float:
 def _ground(record: LoopRecord, hold: Hold | None) -> Ground:
     layout = lay_out(record)
     _require_movement(record, layout)
-    at = search(layout)
+    at, window = search(layout)
     if any(s.start == "joined" for s in layout.stretches):
-        layout, at = _leave_out_unknown_past(layout, at)
+        layout, at, window = _leave_out_unknown_past(layout, at)
+    plain = at
     layout, at = _between_samples(layout, at, hold)
     layout, at = allow_drift(layout, at)
-    return Ground(record, layout, at)
+    return Ground(record, layout, at, window if at is plain else None)
 
 
 def with_noise(base: Ground, at: Point) -> Found:
@@ -180,13 +184,13 @@ def _require_movement(record: LoopRecord, layout: Layout) -> None:
             )
 
 
-def _leave_out_unknown_past(layout: Layout, at: Point) -> tuple[Layout, Point]:
+def _leave_out_unknown_past(layout: Layout, at: Point) -> tuple[Layout, Point, Cells | None]:
     """Without the rows that answer to a command before the log; again where L turns out longer."""
     margin = 2.0 * layout.step
     for _ in range(4):
         shorter = layout.skipping(at.L + margin)
-        at = settle(shorter, at.shape.lags, at.L)
+        at, window = settle(shorter, at.shape.lags, at.L)
         last = shorter.stretches[-1]
         if at.L <= last.time[last.skip] or last.start != "joined":
             break
-    return shorter, at
+    return shorter, at, window

@@ -47,27 +47,23 @@ class Point:
 def point(layout: Layout, shape: Shape, L: float, side: int = 1) -> Point:
     """The best model at a given shape and L; `side` -1 takes the slope in L below a kink."""
     at = columns(layout, shape, L)
-    slope_L = at.slope_L if side > 0 else _slope_below(layout, shape, L)
-    linear = np.vstack((at.response, at.nuisance))
-    weighed = layout.whiten(linear)
-    solution = solve(weighed, layout.target)
-    residual = layout.target - solution @ weighed
-    if float(residual @ residual) < NEARLY_EXACT * float(layout.target @ layout.target):
-        # Normal equations lose half the digits; without noise they are wanted back.
-        solution = solution + solve(weighed, residual)
-        residual = layout.target - solution @ weighed
+    k, rows = len(at.slopes), layout.rows
+    jacobian = np.empty((2 + k + len(at.nuisance), rows))
+    jacobian[0], jacobian[1 : 1 + k], jacobian[2 + k :] = at.response, at.slopes, at.nuisance
+    jacobian[1 + k] = at.slope_L if side > 0 else _slope_below(layout, shape, L)
+    linear = [0, *range(2 + k, len(jacobian))]
+    plain = jacobian if layout.colour.white else jacobian[linear]
+    if not layout.colour.white:
+        jacobian[linear] = layout.whiten(plain)
+    solution, residual = _linear_part(jacobian, linear, layout.target)
     K, nuisance = float(solution[0]), solution[1:]
-    k = len(at.slopes)
-    jacobian = np.empty((len(linear) + k + 1, layout.rows))
-    jacobian[0], jacobian[2 + k :] = weighed[0], weighed[1:]
     moving = jacobian[1 : 2 + k]
-    np.multiply(at.slopes, K, out=moving[:k])
+    moving *= K
     at.add_transients(nuisance, moving[:k])
-    np.multiply(slope_L, K, out=moving[k])
     raw = residual
     if not layout.colour.white:
         moving[:] = layout.whiten(moving)
-        raw = layout.speed - solution @ linear
+        raw = layout.speed - solution @ plain
     return Point(
         shape,
         L,
@@ -80,6 +76,18 @@ def point(layout: Layout, shape: Shape, L: float, side: int = 1) -> Point:
         jacobian @ jacobian.T,
         jacobian @ residual,
     )
+
+
+def _linear_part(jacobian: Floats, linear: list[int], target: Floats) -> tuple[Floats, Floats]:
+    """Least squares of the target on the jacobian's rows `linear`, and what it leaves."""
+    rows = jacobian[linear]
+    solution = solve(rows, target)
+    residual = target - solution @ rows
+    if float(residual @ residual) < NEARLY_EXACT * float(target @ target):
+        # Normal equations lose half the digits; without noise they are wanted back.
+        solution = solution + solve(rows, residual)
+        residual = target - solution @ rows
+    return solution, residual
 
 
 def solve(rows: Floats, right: Floats) -> Floats:

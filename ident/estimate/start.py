@@ -11,9 +11,9 @@ from dataclasses import dataclass
 
 import numpy as np
 from scipy import fft
+from scipy.signal import lfilter
 
 from ident.estimate.layout import Layout, Stretch
-from ident.plants.hold import lag_gap
 from ident.record.segments import Floats
 
 FEWEST_ROWS = 1000  # never thin below
@@ -55,7 +55,7 @@ def starts(layout: Layout) -> tuple[Start, ...]:
     delays = max(int(LONGEST_DEAD_TIME * longest), 1)
     grid = np.geomspace(0.3 * h, 2.0 * longest * h, GRID)
     crossed = [_command_against_speed(s) for s in layout.stretches]
-    explained = np.stack([_explained(layout, crossed, T, delays) for T in grid])
+    explained = _explained(layout, crossed, grid, delays)
     best_T = explained.argmax(axis=0)
     over_L = explained.max(axis=0)
     rises = over_L >= np.concatenate(([-1.0], over_L[:-1]))
@@ -76,22 +76,25 @@ def _command_against_speed(stretch: Stretch) -> Floats:
     return np.asarray(product[:n], dtype=np.float64)
 
 
-def _explained(layout: Layout, crossed: list[Floats], T: float, delays: int) -> Floats:
-    """Share of the speed's variance explained at each dead time 0..delays-1 in steps."""
-    x_sum, x_square, x_y = (np.zeros(delays) for _ in range(3))
+def _explained(layout: Layout, crossed: list[Floats], grid: Floats, delays: int) -> Floats:
+    """Share of the speed's variance explained, (T of the grid, dead times 0..delays-1 in steps)."""
+    x_sum, x_square, x_y = (np.zeros((len(grid), delays)) for _ in range(3))
+    decays = np.exp(-layout.step / grid)
     for stretch, command_speed in zip(layout.stretches, crossed, strict=True):
         n, level = stretch.rows, float(stretch.command[0])
         some = min(delays, n)
-        moved = lag_gap(stretch.command, stretch.intervals, T) + stretch.command - level
         # The lag's answer is zero before the first row, so filtering the command and filtering its products
         # with the speed (backwards in d) give the same sums, and the transform is needed once for all T.
-        reverse = command_speed[::-1]
-        x_y[:some] += (lag_gap(reverse, layout.step, T) + reverse)[n - some :][::-1]
+        last = float(command_speed[-1])
+        both = np.stack((stretch.command - level, command_speed[::-1] - last))
+        answers = np.stack([lfilter([0.0, 1.0 - a], [1.0, -a], both) for a in decays])
+        moved = answers[:, 0]
+        x_y[:, :some] += (answers[:, 1, n - some :] + last)[:, ::-1]
         # Delayed by d, the last d rows of the answer have not come by yet.
-        moved_sum = np.cumsum(moved)[n - some :][::-1]
-        moved_square = np.cumsum(moved * moved)[n - some :][::-1]
-        x_sum[:some] += moved_sum
-        x_square[:some] += moved_square + 2.0 * level * moved_sum
+        moved_sum = np.cumsum(moved, axis=1)[:, n - some :][:, ::-1]
+        moved_square = np.cumsum(moved * moved, axis=1)[:, n - some :][:, ::-1]
+        x_sum[:, :some] += moved_sum
+        x_square[:, :some] += moved_square + 2.0 * level * moved_sum
         # Where the level is not the reference, it adds to every dead time alike.
         x_y += level * float(stretch.speed.sum())
         x_sum += n * level
@@ -100,6 +103,6 @@ def _explained(layout: Layout, crossed: list[Floats], T: float, delays: int) -> 
     covariance = x_y - x_sum * (float(y.sum()) / len(y))
     x_variance = x_square - x_sum**2 / len(y)
     y_variance = float(y @ y) - float(y.sum()) ** 2 / len(y)
-    floor = 1e-12 * float(x_square.max()) + 1e-300
+    floor = 1e-12 * x_square.max(axis=1, keepdims=True) + 1e-300
     share = np.where(x_variance > floor, covariance**2 / np.maximum(x_variance * y_variance, 1e-300), 0.0)
     return np.asarray(share, dtype=np.float64)

@@ -11,11 +11,12 @@ from dataclasses import dataclass
 
 import numpy as np
 
+from ident.estimate.cells import Cells
 from ident.estimate.coloured import noise_slopes
 from ident.estimate.fit import DeadTimeProfile
 from ident.estimate.layout import Layout
 from ident.estimate.point import Point
-from ident.estimate.search import around
+from ident.estimate.search import NEIGHBOURS, around
 from ident.estimate.slow_drift import without_drift
 from ident.evidence.colour import Colour, coloured_covariance, inverse_gram
 from ident.evidence.estimates import NORMAL_95, Covariance, Estimate
@@ -83,14 +84,20 @@ def log_estimate(value: float, std_log: float, unit: str) -> Estimate:
     return Estimate(value, size * std_log if std_log <= OPEN else None, ci, unit)
 
 
-def dead_time_profile(layout: Layout, at: Point, known: Uncertainty) -> DeadTimeProfile | None:
-    """The profile over the cells around the minimum; None where rows are off one grid or fit exactly."""
+def dead_time_profile(
+    layout: Layout, at: Point, known: Uncertainty, window: Cells | None = None
+) -> DeadTimeProfile | None:
+    """The profile over the cells around the minimum, `window` where it is wide enough.
+
+    None where rows are off one grid or fit exactly.
+    """
     std = math.sqrt(known.log_covariance[-1, -1])
     if not layout.uniform or layout.straight or at.rss <= 1e-20 * float(layout.target @ layout.target) or std == 0.0:
         return None
     h = layout.step
     reach = max(1, min(math.ceil(4.5 * std / h), PROFILE_CELLS))
-    window = around(without_drift(layout, at), at.shape.lags, at.L, reach)
+    if window is None or reach > NEIGHBOURS:
+        window = around(without_drift(layout, at), at.shape.lags, at.L, reach)
     low = max(at.L - 4.5 * std, window.first * h)
     high = min(at.L + 4.5 * std, (window.first + len(window.gram)) * h)
     L = np.unique(np.concatenate((np.linspace(low, high, PROFILE_POINTS), [at.L])))

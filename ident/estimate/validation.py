@@ -10,9 +10,11 @@ from ident.estimate.layout import Layout
 from ident.estimate.point import Point
 from ident.estimate.refine import refine
 from ident.evidence.criteria import fit_percent
+from ident.evidence.normal import solve_normal
 
 TRAINED = 0.7  # share of the rows that the model is fitted on
 ROUGHLY = 1e-2  # of one residual's variance: a tenth of a standard deviation is enough here
+SHORT = 0.2  # of a time constant or of a sample's dead time: within it the slopes tell what a refit would
 MOVES = 0.2  # of the command's whole span: what each part must move
 
 
@@ -21,7 +23,12 @@ def validation_fit(layout: Layout, at: Point) -> float | None:
 
     None where one of the two parts does not move enough to say anything.
     """
-    train, row = layout.leading(int(TRAINED * layout.rows))
+    row = int(TRAINED * layout.rows)
+    if layout.colour.white and _moves(layout, row):
+        near = _linearised(layout, at, row)
+        if near is not None:
+            return near
+    train, row = layout.leading(row)
     if train is None or not _moves(layout, row):
         return None
     try:
@@ -38,6 +45,16 @@ def validation_fit(layout: Layout, at: Point) -> float | None:
         rest = layout.speed - base
         base = base + float(transient @ rest) / float(transient @ transient) * transient
     return fit_percent(layout.speed[row:], base[row:])
+
+
+def _linearised(layout: Layout, at: Point, row: int) -> float | None:
+    """The same by one Gauss-Newton step from the fit of all rows; None where that step is too long to be trusted."""
+    k, known = at.log_count, at.jacobian[:, :row]
+    step = solve_normal(known @ known.T, known @ at.residual[:row])
+    if max(np.abs(step[1 : 1 + k]).max(), abs(float(step[1 + k])) / layout.step) > SHORT:
+        return None
+    left = at.raw[row:] - step @ at.jacobian[:, row:]
+    return fit_percent(layout.speed[row:], layout.speed[row:] - left)
 
 
 def _moves(layout: Layout, row: int) -> bool:
