@@ -9,9 +9,9 @@ from typing import Any
 import numpy as np
 from numpy.typing import NDArray
 
+from ident.loop.controller import Controller
 from ident.loop.held_plant import Complex, held_plant
 from ident.loop.nyquist import is_stable
-from ident.loop.settings import PidSettings
 from ident.loop.sweep import Floats, OpenLoop, Sweep, sweep
 from ident.loop.zoom import maxima, roots
 
@@ -49,7 +49,7 @@ class Peaks:
     supremum: float
 
 
-def margins(plant: Any, settings: PidSettings, *, period: float = 0.0, compute_delay: float = 0.0) -> Margins:
+def margins(plant: Any, settings: Controller, *, period: float = 0.0, compute_delay: float = 0.0) -> Margins:
     """Robustness of plant and controller in one loop, P C F exp(-s (period/2 + compute_delay)).
 
     plant          a fit, a model, or anything with frequency_response(w), taken to be stable or integrating;

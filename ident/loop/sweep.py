@@ -9,8 +9,8 @@ import numpy as np
 from numpy.typing import NDArray
 
 from ident.errors import Refused
+from ident.loop.controller import Controller
 from ident.loop.held_plant import Complex, HeldPlant
-from ident.loop.settings import PidSettings
 
 Floats = NDArray[np.float64]
 
@@ -30,7 +30,7 @@ class OpenLoop:
     """L(jw) = P C F exp(-jw lag)."""
 
     plant: HeldPlant
-    settings: PidSettings
+    settings: Controller
 
     def __call__(self, w: Floats) -> Complex:
         response: Complex = self.plant(w) * self.settings.frequency_response(w)
