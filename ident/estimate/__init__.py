@@ -4,6 +4,7 @@ from ident.estimate.dispatch import fit_all
 from ident.estimate.fit import DeadTimeProfile, Fit
 from ident.estimate.friction import Friction
 from ident.estimate.ground import Hold
+from ident.estimate.installed import Recovered, recover
 from ident.estimate.plausible import plausible
 
-__all__ = ["DeadTimeProfile", "Fit", "Friction", "Hold", "fit_all", "plausible"]
+__all__ = ["DeadTimeProfile", "Fit", "Friction", "Hold", "Recovered", "fit_all", "plausible", "recover"]

@@ -28,7 +28,7 @@ from ident.record.segments import Flags, Floats
 from ident.record.segments import spans as runs_of
 
 MOST_ROWS = 20_000  # searched for the structure; the gains come from all rows
-UNEXPLAINED = 0.1  # of what the proportional part moves; more is another law, or another error than r - y
+UNEXPLAINED = 0.03  # of what the proportional part moves; more is another law, or another error than r - y
 ZERO = 3.0  # standard deviations within which a proportional part is none
 CLEAR = 10.0  # standard deviations that Kp and ki must stand from zero: known to 10 % or not at all
 SAME_WEIGHT = 0.02  # a setpoint weight this close to 1 is 1
@@ -103,7 +103,7 @@ def recover(record: LoopRecord, by_hand: Flags | None = None) -> tuple[Recovered
     R2 = 1.0 - law.left / law.total
     figures: dict[str, float | int | str | bool | None] = {"R2": R2, "unexplained": unexplained, "rows": law.rows}
     if unexplained > UNEXPLAINED:
-        reason = f"the closest PI or PID explains only {100.0 * max(R2, 0.0):.1f} % of the command's movement"
+        reason = f"the closest PI or PID leaves too much of the command's movement unexplained (R² {R2:.3f})"
         return None, (_hidden(reason, figures),)
     if q > 0.0 and (moved := _moved_by_rounding(spans, law, q)) > MOVED:
         figures["moved_by_rounding"] = moved
@@ -177,13 +177,19 @@ def _gains(law: Law) -> dict[str, float]:
 
 
 def _quality(spans: tuple[Answers, ...], law: Law, rounding: float) -> tuple[Floats, float]:
-    """Covariance of the gains (then of pole and shape, where there are), and what is left unexplained beyond rounding,
-    over what the proportional part moves."""
+    """Covariance of the gains (then of pole and shape, where there are), and what is left beyond rounding over what the
+    proportional part moves from row to row.
+
+    Where the controller saw another noise than was logged, that share is also how far Kp comes out too small.
+    """
     at = slopes(spans, law)
     covariance = coloured_covariance(at.jacobian, noise_colour(np.split(at.left, np.cumsum(at.runs)[:-1])))
-    proportional = float(np.sum((law.gains[1] * at.jacobian[1]) ** 2))
-    beyond = max(float(at.left @ at.left) - (1.0 if law.summed else 2.0) * law.rows * rounding, 0.0)
-    return covariance, beyond / proportional if proportional else np.inf
+    moved = law.gains[1] * parts(law.form, moves(spans, law.structure).columns)[1]
+    proportional = float(moved @ moved) / (2.0 if law.summed else 1.0)
+    # Squares of uniform rounding scatter by 0.8 of their mean squared.
+    own = rounding * (1.0 if law.summed else 2.0) * (law.rows + 3.0 * np.sqrt(0.8 * law.rows))
+    beyond = max(float(at.left @ at.left) - own, 0.0)
+    return covariance, float(beyond / proportional) if proportional else np.inf
 
 
 def _read(span: Answers, law: Law, covariance: Floats, *, moving: bool) -> Recovered:
@@ -233,14 +239,16 @@ def _noticed(record: LoopRecord, span: Answers, law: Law, found: Recovered, *, m
         yield Finding(
             "setpoint-ramped",
             "info",
-            f"Between the logged setpoint and the error the controller ramps it, at {structure.shape:.4g} {unit} per s.",
+            f"The controller does not follow the logged setpoint at once: it ramps it, at {structure.shape:.4g} {unit} "
+            "per s.",
             {"rate_per_s": structure.shape},
         )
     if structure.shaping == "lag":
         yield Finding(
             "setpoint-filtered",
             "info",
-            f"Between the logged setpoint and the error lies a first-order lag of {structure.shape:.4g} s.",
+            f"The controller does not follow the logged setpoint at once: it sees it through a lag of "
+            f"{structure.shape:.4g} s.",
             {"time_constant_s": structure.shape},
         )
     if span.held > 1:

@@ -103,4 +103,4 @@ def _right_signs(form: str, gains: Floats) -> bool:
     if gains[1] == 0.0 or gains[0] * gains[1] <= 0.0:
         return False
     share = dict(zip(names(form), gains / gains[1], strict=True))
-    return share.get("kd", 0.0) >= 0.0 and -0.1 <= share.get("Kp b", 1.0) <= 2.0
+    return bool(share.get("kd", 0.0) >= 0.0 and -0.1 <= share.get("Kp b", 1.0) <= 2.0)

@@ -12,6 +12,7 @@ coarse steps, as its rounding does not add up.
 from __future__ import annotations
 
 from dataclasses import dataclass, replace
+from itertools import pairwise
 from typing import Literal
 
 import numpy as np
@@ -132,7 +133,7 @@ def _ramped(setpoint: Floats, time: Floats, step: float, rate: float) -> Floats:
     out = np.empty(len(setpoint))
     edges = [0, *(np.flatnonzero(np.diff(setpoint)) + 1).tolist(), len(setpoint)]
     level = float(setpoint[0])
-    for start, stop in zip(edges[:-1], edges[1:], strict=True):
+    for start, stop in pairwise(edges):
         goal = float(setpoint[start])
         after = time[start:stop] - time[start] + step
         left = np.maximum(abs(goal - level) - rate * after, 0.0)

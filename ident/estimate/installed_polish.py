@@ -4,6 +4,7 @@ from __future__ import annotations
 
 from collections.abc import Callable, Iterable
 from dataclasses import dataclass, replace
+from typing import TypeAlias
 
 import numpy as np
 
@@ -17,6 +18,9 @@ NUDGE = 1e-4
 SETTLED = 1e-4  # relative fall of the sum of squares
 QUICKEST = 2.0  # periods that a ramp or lag of the setpoint lasts at least
 FASTEST, SLOWEST = 0.01, 0.995  # poles
+
+# The gains of a structure, in one of these forms, of these kinds (summed or not).
+Solve: TypeAlias = Callable[[Structure, Iterable[str], tuple[bool, ...]], Law | None]
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -40,19 +44,18 @@ def slopes(spans: tuple[Answers, ...], law: Law) -> Slopes:
     gains = np.array(law.gains)
     rows, command, runs = explained(law.structure)
     jacobian, free = [rows], []
-    for name, there in (("pole", law.structure.filter_on), ("shape", law.structure.shaping)):
+    at = law.structure
+    for name, there, step, moved in (
+        ("pole", at.filter_on, NUDGE, replace(at, pole=at.pole + NUDGE)),
+        ("shape", at.shaping, NUDGE * at.shape, replace(at, shape=at.shape * (1.0 + NUDGE))),
+    ):
         if there != "none":
-            value = getattr(law.structure, name)
-            step = NUDGE * (value if name == "shape" else 1.0)
-            moved = explained(replace(law.structure, **{name: value + step}))[0]
-            jacobian.append((gains @ (moved - rows) / step)[None])
+            jacobian.append((gains @ (explained(moved)[0] - rows) / step)[None])
             free.append(name)
     return Slopes(np.vstack(jacobian), command - gains @ rows, tuple(free), runs)
 
 
-def polish(
-    spans: tuple[Answers, ...], law: Law | None, fitted: Callable[[Structure, Iterable[str], tuple[bool, ...]], Law | None]
-) -> Law | None:
+def polish(spans: tuple[Answers, ...], law: Law | None, fitted: Solve) -> Law | None:
     """The nearest minimum in pole and shape; `fitted` solves the gains of a structure."""
     if law is None:
         return None
@@ -64,7 +67,8 @@ def polish(
         step = np.linalg.lstsq((at.jacobian / size[:, None]).T, at.left, rcond=1e-12)[0] / size
         ahead = None
         for halving in range(HALVINGS):
-            trial = fitted(_moved(law.structure, at.free, 0.5**halving * step[-len(at.free) :], limit), (law.form,), (law.summed,))
+            structure = _moved(law.structure, at.free, 0.5**halving * step[-len(at.free) :], limit)
+            trial = fitted(structure, (law.form,), (law.summed,))
             if trial is not None and trial.left < law.left:
                 ahead = trial
                 break
@@ -78,15 +82,14 @@ def polish(
 
 def _moved(structure: Structure, free: tuple[str, ...], step: Floats, limit: float) -> Structure:
     """After a step, within what can be told from no filter at all and from an integrator."""
+    pole, shape = structure.pole, structure.shape
     for name, by in zip(free, step.tolist(), strict=True):
-        value = getattr(structure, name)
         if name == "pole":
-            value = float(np.clip(value + np.clip(by, -0.2, 0.2), FASTEST, SLOWEST))
+            pole = float(np.clip(pole + np.clip(by, -0.2, 0.2), FASTEST, SLOWEST))
         else:
-            value = float(value * np.exp(np.clip(by / value, -0.7, 0.7)))
-            value = max(value, limit) if structure.shaping == "lag" else min(value, limit)
-        structure = replace(structure, **{name: value})
-    return structure
+            shape *= float(np.exp(np.clip(by / shape, -0.7, 0.7)))
+            shape = max(shape, limit) if structure.shaping == "lag" else min(shape, limit)
+    return replace(structure, pole=pole, shape=shape)
 
 
 def shortest(spans: tuple[Answers, ...], structure: Structure) -> float:

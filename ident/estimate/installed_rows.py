@@ -42,9 +42,7 @@ def answers(record: LoopRecord, by_hand: Flags) -> tuple[Answers, ...]:
     if record.setpoint is None:
         return ()
     known = ~np.isnan(record.setpoint) & ~by_hand
-    parts = [
-        (s.start + a, s.start + b, s.step) for s in record.segments for a, b in spans(known[s.slice]).tolist()
-    ]
+    parts = [(s.start + a, s.start + b, s.step) for s in record.segments for a, b in spans(known[s.slice]).tolist()]
     # A limit may be touched for a single row. Rows at the extremes cost nothing where they are no limit.
     every = np.concatenate([record.command[a:b] for a, b, _ in parts]) if parts else np.zeros(1)
     limits = (float(every.min()), float(every.max()))
@@ -65,7 +63,11 @@ def _span(record: LoopRecord, start: int, stop: int, step: float | None, limits:
     back = np.maximum(rows[None, :] - np.arange(1 + LATEST)[:, None], start)
     period = n * (step or float(np.median(np.diff(record.time[start:stop]))))
     # Rounded stamps of an even clock would only add noise to the integral.
-    time = period * np.arange(len(rows)) if step is not None else record.time[rows] - record.time[rows[0]]
+    time = (
+        np.asarray(period * np.arange(len(rows)), dtype=np.float64)
+        if step is not None
+        else record.time[rows] - record.time[rows[0]]
+    )
     return Answers(time, command, record.speed[back], record.setpoint[back], usable, period, n)
 
 

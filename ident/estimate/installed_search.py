@@ -44,7 +44,8 @@ class Search:
     ) -> Law | None:
         """The best form of one structure; of a coarse command only the command itself will do, not its moves."""
         kinds = (True,) if self.coarse else kinds
-        return best_form(moves(self.spans, structure), structure, self.rounding, moving=self.moving, kinds=kinds, only=only)
+        found = moves(self.spans, structure)
+        return best_form(found, structure, self.rounding, moving=self.moving, kinds=kinds, only=only)
 
     def law(self) -> Law | None:
         """The best law, or None where no form has gains of the right signs."""

@@ -13,9 +13,11 @@ from typing import Literal
 import numpy as np
 from numpy.typing import ArrayLike, NDArray
 
-from ident.loop.margins import Margins, margins
+from ident.loop.held_plant import held_plant
+from ident.loop.margins import Margins, loop_margins
 from ident.loop.settings import PidSettings
 from ident.loop.simulate import zero_order
+from ident.loop.sweep import OpenLoop
 from ident.plants import Arx
 from ident.plants.steps import Lagged
 
@@ -90,11 +92,16 @@ class HoldEquivalent:
         )
 
 
-def law_margins(plant: Lagged | Arx, law: ControlLaw) -> Margins:
-    """Margins of the sampled loop of a plant and a difference equation, at z = exp(jwh) up to pi/h.
+def law_loop(plant: Lagged | Arx, law: ControlLaw) -> OpenLoop:
+    """The sampled loop of a plant and a difference equation, at z = exp(jwh) up to pi/h.
 
     An Arx plant holds its own sampling; where the controller is slower, half the difference is added as delay.
     """
     if isinstance(plant, Arx):
-        return margins(plant, law, compute_delay=max(law.h - plant.h, 0.0) / 2.0)
-    return margins(HoldEquivalent(plant, law.h), law)
+        return OpenLoop(held_plant(plant, compute_delay=max(law.h - plant.h, 0.0) / 2.0), law)
+    return OpenLoop(held_plant(HoldEquivalent(plant, law.h)), law)
+
+
+def law_margins(plant: Lagged | Arx, law: ControlLaw) -> Margins:
+    """Margins of that loop. Raises Refused low-frequency-unclear."""
+    return loop_margins(law_loop(plant, law))

@@ -60,7 +60,12 @@ def margins(plant: Any, settings: Controller, *, period: float = 0.0, compute_de
     Raises Refused: period-out-of-range, plant-without-response, plant-response-unusable,
     low-frequency-unclear.
     """
-    run = sweep(OpenLoop(held_plant(plant, period, compute_delay), settings))
+    return loop_margins(OpenLoop(held_plant(plant, period, compute_delay), settings))
+
+
+def loop_margins(loop: OpenLoop) -> Margins:
+    """The same of a loop as it stands."""
+    run = sweep(loop)
     if not is_stable(run):
         return UNSTABLE
     phase_margin, delay_margin = _phase_and_delay(run)

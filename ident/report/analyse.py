@@ -7,12 +7,14 @@ from importlib.metadata import PackageNotFoundError, version
 import numpy as np
 
 from ident.errors import NotIdentifiable, Refused
-from ident.estimate import Fit, Hold, fit_all, plausible
+from ident.estimate import Fit, Hold, Recovered, fit_all, plausible, recover
 from ident.findings import Finding
 from ident.judge import CrossChecks, advice, choose, cross_check, excitation
+from ident.loop import PidSettings
 from ident.record import LoopRecord
 from ident.report.cautions import CAUTIONS
 from ident.report.curves import curves
+from ident.report.installed import installed_loop, installed_report
 from ident.report.log import log_info, record_info
 from ident.report.shape import FitReport, Report, TuningReport
 from ident.tune import Proposals, propose, worst_case
@@ -32,6 +34,7 @@ def analyse(
     compute_delay: float = 0.0,
     seed: int = 0,
     subspace: bool = True,
+    installed: PidSettings | None = None,
 ) -> Report:
     """Everything one record says: model, proposals, margins, predicted outcome.
 
@@ -39,10 +42,12 @@ def analyse(
     hold           what the command did between samples: zero-order, linear, or None to let the data choose
     Ms             robustness target: max(Ms, Mt) of a proposal is at most this
     form, goal     pi; integral (the largest ki)
-    period         s, of the controller; None: the log's sample time, with a finding; 0 for an analogue controller
+    period         s, of the controller; None: as seen in the log, else its sample time,
+                   with a finding; 0 for an analogue controller
     compute_delay  s, from reading the speed to writing the command
     seed           of every random draw: the same record and options give the same report
     subspace       cross-check the model by a subspace method too, which is slow to load the first time
+    installed      settings told to be in the machine; compared with those that a closed-loop log shows
 
     A record with too little in it gives a report without fits that says so. Raises Refused for options without
     an answer.
@@ -61,7 +66,8 @@ def analyse(
     fits, refused = _fit(record, model, hold)
     choice = choose(fits) if fits else None
     fitted = fits[choice.index] if choice else None
-    held, assumed = _period(record, period)
+    recovered, seen = recover(record)
+    held, assumed = _period(record, period, recovered)
     proposal: Proposals | None = None
     checked = CrossChecks((), ())
     if fitted is not None:
@@ -72,6 +78,8 @@ def analyse(
     else:
         assert refused is not None
         found.append(Finding(refused.code, "error", refused.message, refused.evidence))
+    in_machine, compared = installed_report(recovered, installed, fitted, period=held, compute_delay=compute_delay)
+    found += [*seen, *compared]
     moved = excitation(record, refused)
     drawn = plausible(fitted, np.random.default_rng(seed), PLANTS) if fitted else ()
     tunings = tuple(
@@ -96,11 +104,18 @@ def analyse(
         fits=tuple(_fit_report(f) for f in fits),
         selected=choice.index if choice else None,
         selected_because=choice.because if choice else "",
-        installed=None,
+        installed=in_machine,
         tunings=tunings,
         recommended=proposal.recommended if proposal else None,
         recommended_because=proposal.because if proposal else "",
-        curves=curves(record, fitted, tunings, period=held, compute_delay=compute_delay),
+        curves=curves(
+            record,
+            fitted,
+            tunings,
+            period=held,
+            compute_delay=compute_delay,
+            installed=installed_loop(recovered, installed, fitted, period=held, compute_delay=compute_delay),
+        ),
         findings=tuple(found),
         cautions=CAUTIONS,
         cross_checks=checked.checks,
@@ -115,11 +130,21 @@ def _fit(record: LoopRecord, model: str, hold: Hold | None) -> tuple[tuple[Fit, 
         return (), error
 
 
-def _period(record: LoopRecord, period: float | None) -> tuple[float, list[Finding]]:
+def _period(record: LoopRecord, period: float | None, recovered: Recovered | None) -> tuple[float, list[Finding]]:
     if period is not None:
         if not 0.0 <= period < float("inf"):
             raise Refused("period-out-of-range", f"The controller's period is a time in s, 0 or more; not {period}.")
         return period, []
+    if recovered is not None:
+        seen = recovered.period_s
+        return seen, [
+            Finding(
+                "period-seen",
+                "info",
+                f"The controller's period was not given: {seen:.4g} s, at which the log shows it to answer, was taken.",
+                {"period_s": seen},
+            )
+        ]
     step = record.sample_time or float(record.time[-1] - record.time[0]) / max(record.rows - 1, 1)
     return step, [
         Finding(

@@ -27,18 +27,27 @@ def curves(
     *,
     period: float,
     compute_delay: float,
+    installed: OpenLoop | None = None,
 ) -> Curves:
-    """All curves of a report; without a fit the trend alone."""
+    """All curves of a report; without a fit the trend alone.
+
+    installed   the loop of the fitted plant with the controller in the machine, where that is known
+    """
     if fit is None:
         return Curves(_trend(record, None))
+    plant = held_plant(fit.model, period, compute_delay)
     residual = (record.speed - fit.simulated)[~np.isnan(fit.simulated)]
     return Curves(
         trend=_trend(record, fit),
         autocorrelation=_autocorrelation(residual),
         profile=_profile(fit),
         loci=tuple(
-            _locus(i, fit, tuning, period=period, compute_delay=compute_delay) for i, tuning in enumerate(tunings)
+            _locus(i, fit, OpenLoop(plant, tuning.settings), period=period, compute_delay=compute_delay)
+            for i, tuning in enumerate(tunings)
         ),
+        installed=None
+        if installed is None
+        else _locus(None, fit, installed, period=period, compute_delay=compute_delay),
     )
 
 
@@ -101,13 +110,12 @@ def _profile(fit: Fit) -> Profile | None:
     return Profile("L", _series(fit.profile.L), _series(fit.profile.ratio, 9), fit.profile.limit, "s")
 
 
-def _locus(index: int, fit: Fit, tuning: TuningReport, *, period: float, compute_delay: float) -> Locus:
+def _locus(index: int | None, fit: Fit, loop: OpenLoop, *, period: float, compute_delay: float) -> Locus:
     """P C F with hold and delay, from well below to well above the frequency where it crosses 1."""
-    loop = OpenLoop(held_plant(fit.model, period, compute_delay), tuning.settings)
     delay = fit.model.dead_time + period / 2.0 + compute_delay
     residence = _residence(fit) + period / 2.0 + compute_delay
     centre = 1.0 / max(min(residence, 2.0 * delay), 1e-3 * residence)
-    w = np.geomspace(1e-2 * centre, 1e2 * centre, LOCUS_POINTS)
+    w = np.geomspace(1e-2 * centre, min(1e2 * centre, loop.plant.w_max), LOCUS_POINTS)
     response = loop(w)
     return Locus(
         index,

@@ -87,11 +87,29 @@ class TuningReport:
 
 @dataclass(frozen=True, slots=True)
 class Installed:
-    """The controller recovered from a closed-loop log."""
+    """The controller in the machine, as the log shows it, or as told where the log does not.
+
+    settings    trapezoidal reading; what is not seen is 0 (b: 1) with std None
+    margins     of the recovered difference equation on the selected plant; None without one
+    source      log | told;  form  PI | PID | PI-D (derivative of the speed alone)
+    filter_on   what the filter Tf acts on: none | derivative | speed | speed, second order
+    readings    Kp and Ti of the same controller summing by the backward and the forward rule
+    period_s    of the controller;  late_s  from a logged speed to the command that answers to it
+    R2          share of the command's movement that the settings explain, over so many rows
+    """
 
     settings: PidSettings
     std: dict[str, float | None]
-    margins: Margins
+    margins: Margins | None
+    source: str = "log"
+    form: str = "PI"
+    filter_on: str = "none"
+    readings: dict[str, dict[str, float]] = field(default_factory=dict)
+    period_s: float | None = None
+    late_s: float | None = None
+    R2: float | None = None
+    rows: int | None = None
+    reading: str = "trapezoidal"
 
 
 @dataclass(frozen=True, slots=True)
@@ -131,9 +149,9 @@ class Profile:
 
 @dataclass(frozen=True, slots=True)
 class Locus:
-    """The loop transfer function of one tuning along frequency."""
+    """The loop transfer function along frequency, of one tuning or (None) of the installed controller."""
 
-    tuning: int
+    tuning: int | None
     w: Series
     real: Series
     imag: Series
@@ -148,6 +166,7 @@ class Curves:
     autocorrelation: Autocorrelation | None = None
     profile: Profile | None = None
     loci: tuple[Locus, ...] = ()
+    installed: Locus | None = None
 
 
 @dataclass(frozen=True, slots=True)

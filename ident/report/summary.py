@@ -7,7 +7,7 @@ from collections.abc import Iterator
 
 from ident.evidence import Estimate
 from ident.findings import Finding
-from ident.report.shape import FitReport, Report, TuningReport
+from ident.report.shape import FitReport, Installed, Report, TuningReport
 
 
 def summary(report: Report) -> str:
@@ -32,6 +32,8 @@ def _lines(report: Report) -> Iterator[str]:
         yield from _model(report.fits[report.selected], report)
     for i, tuning in enumerate(report.tunings):
         yield from _tuning(tuning, report, recommended=i == report.recommended)
+    if report.installed:
+        yield from _installed(report.installed, report)
     if report.recommended_because:
         yield ""
         yield f"Why         {report.recommended_because}"
@@ -96,6 +98,21 @@ def _tuning(tuning: TuningReport, report: Report, *, recommended: bool) -> Itera
             f"  setpoint step: overshoot {step.overshoot_percent:.1f} %, settled in {_number(step.settling_time_s)} s; "
             f"unit load step: peak {load.peak_deviation:.4g} {report.log.speed_unit}, "
             f"back in {_number(load.recovery_time_s)} s"
+        )
+
+
+def _installed(one: Installed, report: Report) -> Iterator[str]:
+    s, m = one.settings, one.margins
+    unit = f"{report.log.command_unit or 'command'}/{report.log.speed_unit or 'speed'}"
+    yield ""
+    yield f"Installed   {one.form}, {'as the log shows' if one.source == 'log' else 'as told'}"
+    yield f"  Kp {s.Kp:.5g} {unit}   Ti {s.Ti:.5g} s   Td {s.Td:.5g} s   Tf {s.Tf:.5g} s   b {s.b:.3g}"
+    if m is not None:
+        yield (
+            f"  Ms {_number(m.Ms)}   Mt {_number(m.Mt)}   gain margin {_number(m.gain_margin)}   "
+            f"phase margin {_number(m.phase_margin_deg)} deg"
+            if m.stable
+            else "  unstable on the fitted plant"
         )
 
 

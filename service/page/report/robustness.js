@@ -25,9 +25,12 @@ export function robustness(report) {
   const loci = report.curves.loci
     .map((one) => ({ ...one, name: word(METHODS, report.tunings[one.tuning].method), mark: lineOf(one.tuning, report.recommended), peak: closest(one) }))
     .sort((a, b) => order(a.tuning) - order(b.tuning));
+  const { installed } = report.curves;
+  if (installed) loci.push({ ...installed, name: "Installed", mark: "line installed", peak: report.installed.margins?.stable ? closest(installed) : null });
   if (!loci.length) return null;
   const target = typeof report.options.Ms === "number" ? report.options.Ms : null;
-  const said = `${loci[0].name}: closest to −1 at ${significant(loci[0].peak.w, 3)} rad/s, where the sensitivity is ${fixed(loci[0].peak.Ms, 2)}.`;
+  const said = loci.map(({ name, peak }) => (peak
+    ? `${name}: closest to −1 at ${significant(peak.w, 3)} rad/s, where the sensitivity is ${fixed(peak.Ms, 2)}.` : `${name}: unstable on this plant.`)).join(" ");
   return section("robustness", "Robustness", "The loop transfer function from low frequencies (far out) to high (towards 0). A loop that keeps outside the shaded circle around −1 keeps the target.",
     legend([...loci, { name: "closest to −1", mark: "dot" }, target && { name: `target, Ms = ${exact(target)}`, mark: "forbidden" }].filter(Boolean)),
     h("p", { class: "note" }, said),
