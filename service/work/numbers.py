@@ -119,7 +119,7 @@ def parse(report: bytes) -> dict[str, Any]:
 
 def _period(report: Mapping[str, Any]) -> float | None:
     """What was asked for, or what was taken for it."""
-    assumed = [f["evidence"]["period_s"] for f in report["findings"] if f["code"] == "period-assumed"]
+    assumed = [f["evidence"]["period_s"] for f in report["findings"] if f["code"] in ("period-assumed", "period-seen")]
     period: float | None = assumed[0] if assumed else report["options"]["period"]
     return period
 
