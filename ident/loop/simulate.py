@@ -137,19 +137,19 @@ def _controller(settings: PidSettings, clock: Clock) -> tuple[Floats, Floats]:
         slope = difference / h
         filtered = np.array([1.0, 0.0, 0.0])
         filtered[:2] += Tf * slope
-        filtered += Tf**2 / 2 * np.polymul(slope, slope)
+        filtered += Tf**2 / 2 * np.convolve(slope, slope)
         lead = np.array([1.0, 0.0]) + Td * slope
-        num = Kp * (np.polymul(difference, lead) + np.append(total, 0.0))
-        return np.asarray(num, np.float64), np.asarray(np.polymul(difference, filtered), np.float64)
+        num = Kp * (np.convolve(difference, lead) + np.append(total, 0.0))
+        return np.asarray(num, np.float64), np.asarray(np.convolve(difference, filtered), np.float64)
     minus, plus = np.array([2.0, -2.0]) / h, np.array([1.0, 1.0])
     if Tf == 0:
         raise Refused(
             "derivative-without-filter", "A derivative without filter cannot be simulated: give Tf, say Td/10."
         )
-    twice, mixed, squared = np.polymul(plus, plus), np.polymul(minus, plus), np.polymul(minus, minus)
+    twice, mixed, squared = np.convolve(plus, plus), np.convolve(minus, plus), np.convolve(minus, minus)
     num = Kp / Ti * (twice + Ti * mixed + Ti * Td * squared)
-    den = np.polymul(minus, twice + Tf * mixed + Tf**2 / 2 * squared)
-    return np.asarray(np.polymul(num, plus), np.float64), np.asarray(den, np.float64)
+    den = np.convolve(minus, twice + Tf * mixed + Tf**2 / 2 * squared)
+    return np.asarray(np.convolve(num, plus), np.float64), np.asarray(den, np.float64)
 
 
 def _feedback(settings: PidSettings, clock: Clock, speed: Floats) -> Floats:
@@ -161,7 +161,7 @@ def _close(plant: Lagged, settings: PidSettings, clock: Clock, open_speed: Float
     """y = y_open - P C y."""
     delay, plant_num, plant_den = (zero_order if clock.digital else first_order)(plant, clock.step)
     c_num, c_den = _controller(settings, clock)
-    num, den = np.polymul(plant_num, c_num), np.polymul(plant_den, c_den)
+    num, den = np.convolve(plant_num, c_num), np.convolve(plant_den, c_den)
     if delay < FEW:
         closed = np.zeros(max(len(den), len(num) + delay))
         closed[: len(den)] = den

@@ -32,16 +32,20 @@ def choose_setpoint_weight(
     Where even b = 0 overshoots more, b = 0 and a finding `setpoint-ramp-advised` with the shortest of a few
     ramp times that does not.
     """
-    rehearsal = Rehearsal(plant, replace(settings, b=0.0), period, compute_delay)
+    rehearsal = Rehearsal(plant, settings, period, compute_delay)
     rehearsal.check()
-    without, full = rehearsal.setpoint(0.0), rehearsal.setpoint(1.0)
-    # The loop is linear: the response for any b lies on the line through these two.
+    b, finding = weight_of(rehearsal, overshoot_percent)
+    return replace(settings, b=b), finding
+
+
+def weight_of(rehearsal: Rehearsal, overshoot_percent: float = OVERSHOOT) -> tuple[float, Finding | None]:
+    """The same b and finding, of a loop simulated already."""
     for b in WEIGHTS:
-        speed = without.speed + b * (full.speed - without.speed)
-        if _overshoot(speed) <= overshoot_percent:
-            return replace(settings, b=float(b)), None
+        if _overshoot(rehearsal.setpoint(float(b)).speed) <= overshoot_percent:
+            return float(b), None
+    without = rehearsal.setpoint(0.0)
     ramp = _ramp_time(without, overshoot_percent)
-    return replace(settings, b=0.0), Finding(
+    return 0.0, Finding(
         "setpoint-ramp-advised",
         "info",
         f"Even with setpoint weight 0 a setpoint step overshoots by {_overshoot(without.speed):.0f} %: "

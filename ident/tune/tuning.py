@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from typing import Any
 
 from ident.errors import Refused
@@ -12,9 +12,9 @@ from ident.loop.held_plant import held_plant
 from ident.tune.band import find_band
 from ident.tune.largest_ki import largest_ki
 from ident.tune.largest_ki_pid import largest_ki_pid
-from ident.tune.predict import lagged, predict
+from ident.tune.predict import Rehearsal, lagged
 from ident.tune.predicted import Predicted
-from ident.tune.setpoint_weight import choose_setpoint_weight
+from ident.tune.setpoint_weight import weight_of
 
 FORMS = ("pi", "pid")
 GOALS = ("integral", "load", "setpoint")
@@ -84,13 +84,13 @@ def rehearse(
     model = lagged(plant)
     if model is None:
         return settings, None, ()
-    timing = {"period": period, "compute_delay": compute_delay}
     try:
-        settings, advice = choose_setpoint_weight(model, settings, **timing)
-        predicted = predict(model, settings, **timing)
+        rehearsal = Rehearsal(model, settings, period, compute_delay)
+        rehearsal.check()
+        b, advice = weight_of(rehearsal)
     except Refused as error:
         return settings, None, (Finding(error.code, "error", error.message),)
-    return settings, predicted, (advice,) if advice else ()
+    return replace(settings, b=b), rehearsal.predicted(b), (advice,) if advice else ()
 
 
 def check_request(Ms: float, form: str, goal: str) -> None:
