@@ -9,6 +9,7 @@ from ident.estimate.arx import fit_arx
 from ident.estimate.fit import Fit
 from ident.estimate.fopdt import fit_fopdt
 from ident.estimate.ground import Hold, ground
+from ident.estimate.second_lag import nothing_left
 from ident.estimate.sopdt import fit_sopdt
 from ident.record import LoopRecord
 
@@ -20,8 +21,8 @@ def fit_all(
 ) -> tuple[Fit, ...]:
     """Fits of a record, the simplest first.
 
-    model   "fopdt", "sopdt" or "arx" for that one alone; "auto" for the first two, the second where the record
-            carries it
+    model   "fopdt", "sopdt" or "arx" for that one alone; "auto" for the first two, the second where the first leaves
+            something and the record carries it
     orders  (na, nb, delay) of an ARX model; None: searched
     hold    "zero-order" or "linear": what the command did between samples; None: as the data have it
 
@@ -40,7 +41,7 @@ def fit_all(
     if model == "sopdt":
         return (fit_sopdt(base),)
     first = fit_fopdt(base)
-    if model == "fopdt":
+    if model == "fopdt" or nothing_left(base, first.statistics):
         return (first,)
     try:
         return first, fit_sopdt(base)

@@ -20,12 +20,14 @@ class Choice:
     because: str
 
 
-def choose(fits: Sequence[Fit]) -> Choice:
+def choose(fits: Sequence[Fit], searched: bool = False) -> Choice:
     """The simplest model, unless a richer one is clearly better by AICc, no worse on held-out rows, and itself known.
 
-    Fits in order of complexity, the first the simplest; one at least.
+    Fits in order of complexity, the first the simplest; one at least.  searched  richer models were allowed
     """
     best, because = 0, f"{NAMES[fits[0].name].capitalize()}: the only model fitted."
+    if len(fits) == 1 and searched:
+        because = f"{NAMES[fits[0].name].capitalize()}: nothing in its residuals asks for a richer model."
     if len(fits) > 1:
         because = f"{NAMES[fits[0].name].capitalize()}: no richer model describes the log clearly better."
     for i, fit in enumerate(fits[1:], start=1):

@@ -64,7 +64,7 @@ def analyse(
     }
     found: list[Finding] = []
     fits, refused = _fit(record, model, hold)
-    choice = choose(fits) if fits else None
+    choice = choose(fits, model == "auto") if fits else None
     fitted = fits[choice.index] if choice else None
     recovered, seen = recover(record)
     held, assumed = _period(record, period, recovered)
