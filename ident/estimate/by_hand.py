@@ -9,7 +9,7 @@ from __future__ import annotations
 import numpy as np
 
 from ident.record import LoopRecord
-from ident.record.segments import Flags, Floats
+from ident.record.segments import Flags, Floats, spans
 
 SELDOM = 0.2  # share of periods with a move, below which nobody closes a loop with the command
 PERIODS, ROWS = 10, 15  # a stand lasts this many typical intervals and so many rows on top
@@ -29,6 +29,23 @@ def hand_rows(record: LoopRecord) -> Flags:
     for s in record.segments:
         by_hand[s.slice] = _stands(record.command[s.slice], PERIODS * usual + ROWS, usual)
     return by_hand
+
+
+def automatic(record: LoopRecord) -> list[tuple[Floats, Floats, Floats | None]]:
+    """(command, speed, setpoint) of the runs that are not by hand, one row per period of the controller."""
+    by_hand = hand_rows(record)
+    found = [s.start + spans(~by_hand[s.slice]) for s in record.segments]
+    return [controlled(record, start, stop) for edges in found for start, stop in edges.tolist()]
+
+
+def controlled(record: LoopRecord, start: int, stop: int) -> tuple[Floats, Floats, Floats | None]:
+    """(command, speed, setpoint) of rows start..stop-1, one per period; the setpoint None where it is not known."""
+    n, phase = held_rows(record.command[start:stop])
+    rows = slice(start + phase, stop, n)
+    setpoint = None if record.setpoint is None else record.setpoint[rows]
+    if setpoint is not None and np.isnan(setpoint).any():
+        setpoint = None
+    return record.command[rows], record.speed[rows], setpoint
 
 
 def held_rows(command: Floats) -> tuple[int, int]:

@@ -9,6 +9,7 @@ from typing import Literal
 import numpy as np
 
 from ident.errors import NotIdentifiable
+from ident.estimate.by_hand import automatic
 from ident.estimate.cells import Cells
 from ident.estimate.coloured import coloured
 from ident.estimate.layout import Layout, lay_out
@@ -51,9 +52,9 @@ class Ground:
 
     @property
     def closed(self) -> bool:
-        """Whether the command answers to the speed."""
-        stretches = self.layout.stretches
-        return feedback([s.command for s in stretches], [s.speed for s in stretches])
+        """Whether the command answers to the speed, where it is not set by hand."""
+        runs = automatic(self.record)
+        return bool(runs) and feedback(*map(list, zip(*runs, strict=True)))
 
 
 @dataclass(frozen=True, slots=True, eq=False)

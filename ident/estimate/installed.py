@@ -58,6 +58,7 @@ class Recovered:
     period_s     of the controller;  late_s  from the logged speed to the command that answers to it
     R2           share of the command's movement that the law explains;  rows  used for it
     law          the difference equation, for margins
+    step         of the grid on which the command is written down; 0: none to speak of
     """
 
     settings: PidSettings
@@ -71,6 +72,7 @@ class Recovered:
     R2: float
     rows: int
     law: ControlLaw
+    step: float
 
 
 def recover(record: LoopRecord, by_hand: Flags | None = None) -> tuple[Recovered | None, tuple[Finding, ...]]:
@@ -110,7 +112,7 @@ def recover(record: LoopRecord, by_hand: Flags | None = None) -> tuple[Recovered
         return None, (_hidden("the command is written down in steps too coarse for how little it moves", figures),)
     if np.any(np.abs(law.gains[:2]) < CLEAR * spread[:2]):
         return None, (_hidden("the log moves too little to tell its gains from zero", figures),)
-    found = _read(spans[0], law, covariance, moving=moving)
+    found = _read(spans[0], law, covariance, q, moving=moving)
     return found, tuple(_noticed(record, spans[0], law, found, moving=moving))
 
 
@@ -192,7 +194,7 @@ def _quality(spans: tuple[Answers, ...], law: Law, rounding: float) -> tuple[Flo
     return covariance, float(beyond / proportional) if proportional else np.inf
 
 
-def _read(span: Answers, law: Law, covariance: Floats, *, moving: bool) -> Recovered:
+def _read(span: Answers, law: Law, covariance: Floats, q: float, *, moving: bool) -> Recovered:
     gain, structure, h = _gains(law), law.structure, span.step
     ki, Kp = gain["ki"], gain["Kp"]
     known = [*names(law.form), *(["pole"] if structure.filter_on != "none" else [])]
@@ -225,6 +227,7 @@ def _read(span: Answers, law: Law, covariance: Floats, *, moving: bool) -> Recov
         1.0 - law.left / law.total,
         law.rows,
         ControlLaw(settings, h, structure.late * h / span.held, structure.filter_on),
+        q,
     )
 
 

@@ -16,21 +16,24 @@ CLEARLY = 1e-6
 LAGS = 3
 
 
-def feedback(commands: list[Floats], speeds: list[Floats]) -> bool:
-    """Whether the command's moves follow from present and past speeds beyond its own past.
+def feedback(commands: list[Floats], speeds: list[Floats], setpoints: list[Floats | None] | None = None) -> bool:
+    """Whether the command's moves follow from present and past speeds beyond its own past and the setpoint.
 
     In an open loop the speed answers to earlier commands only, so given those it says nothing of the next move
-    (Granger 1969, Econometrica 37, 424-438). Runs of rows without a gap, (n,) each.
+    (Granger 1969, Econometrica 37, 424-438). Runs of rows without a gap, (n,) each; a setpoint where it is known.
     """
     moves = np.concatenate([np.diff(u) for u in commands])
     if not np.any(moves) or float(np.mean(moves != 0.0)) <= SELDOM:
         return False
     own, answer, target = [], [], []
-    for u, y in zip(commands, speeds, strict=True):
+    for u, y, r in zip(commands, speeds, setpoints or [None] * len(commands), strict=True):
         n = len(u)
         if n <= 4 * LAGS:
             continue
         past = [u[LAGS - i : n - i] for i in range(1, LAGS + 1)]
+        # A setpoint may drive the command without any feedback, and its steps would hide what the speed adds.
+        told = np.zeros(n) if r is None else r
+        past += [told[LAGS - i : n - i] for i in range(LAGS + 1)]
         own.append(np.stack([np.ones(n - LAGS), *past]))
         answer.append(np.stack([y[LAGS - i : n - i] for i in range(LAGS + 1)]))
         target.append(np.diff(u)[LAGS - 1 :])

@@ -3,7 +3,7 @@
 from ident.judge.choice import Choice, choose, fit
 from ident.judge.crosscheck import CrossCheck, CrossChecks, cross_check
 from ident.judge.excitation import Advice, Excitation, advice, excitation
-from ident.judge.operation import Operation, operation
+from ident.judge.operation import Operated, Operation, mixed, operation, operations
 
 __all__ = [
     "Advice",
@@ -11,11 +11,14 @@ __all__ = [
     "CrossCheck",
     "CrossChecks",
     "Excitation",
+    "Operated",
     "Operation",
     "advice",
     "choose",
     "cross_check",
     "excitation",
     "fit",
+    "mixed",
     "operation",
+    "operations",
 ]

@@ -9,7 +9,7 @@ import numpy as np
 from ident.errors import NotIdentifiable, Refused
 from ident.estimate import Fit, Hold, Recovered, fit_all, plausible, recover
 from ident.findings import Finding
-from ident.judge import CrossChecks, advice, choose, cross_check, excitation
+from ident.judge import CrossChecks, advice, choose, cross_check, excitation, mixed, operations
 from ident.loop import PidSettings
 from ident.record import LoopRecord
 from ident.report.cautions import CAUTIONS
@@ -79,7 +79,8 @@ def analyse(
         assert refused is not None
         found.append(Finding(refused.code, "error", refused.message, refused.evidence))
     in_machine, compared = installed_report(recovered, installed, fitted, period=held, compute_delay=compute_delay)
-    found += [*seen, *compared]
+    operated = operations(record, recovered)
+    found += [*mixed(record, operated), *seen, *compared]
     moved = excitation(record, refused)
     drawn = plausible(fitted, np.random.default_rng(seed), PLANTS) if fitted else ()
     tunings = tuple(
@@ -100,7 +101,7 @@ def analyse(
     return Report(
         engine_version=_engine(),
         log=log_info(record),
-        record=record_info(record, moved, None if moved.sufficient else advice(record)),
+        record=record_info(record, moved, None if moved.sufficient else advice(record), operated),
         fits=tuple(_fit_report(f) for f in fits),
         selected=choice.index if choice else None,
         selected_because=choice.because if choice else "",

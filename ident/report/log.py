@@ -4,7 +4,7 @@ from __future__ import annotations
 
 from datetime import UTC, datetime, timedelta
 
-from ident.judge import Advice, Excitation, operation
+from ident.judge import Advice, Excitation, Operated, operation
 from ident.record import LoopRecord
 from ident.report.shape import LogInfo, RecordInfo, Span
 
@@ -27,15 +27,18 @@ def log_info(record: LoopRecord) -> LogInfo:
     )
 
 
-def record_info(record: LoopRecord, moved: Excitation, advice: Advice | None) -> RecordInfo:
+def record_info(
+    record: LoopRecord, moved: Excitation, advice: Advice | None, operated: tuple[Operated, ...]
+) -> RecordInfo:
     """Segments, spans left out, kind of operation and whether there is enough to learn from."""
     return RecordInfo(
-        operation=operation(record) if record.segments else "unknown",
+        operation=operation(operated),
         excitation=moved,
         advice=advice,
         segments=tuple(
             _span(record, s.start, s.stop, "uniform" if s.step is not None else "irregular") for s in record.segments
         ),
+        operations=tuple(_span(record, s.start, s.stop, s.operation) for s in operated),
         excluded=tuple(_span(record, e.start, e.stop, e.reason) for e in record.excluded),
     )
 

@@ -49,12 +49,16 @@ class Span:
 
 @dataclass(frozen=True, slots=True)
 class RecordInfo:
-    """What kind of record the log became."""
+    """What kind of record the log became.
+
+    operation    of the whole: closed-loop where any part is;  operations  part by part, the `note` saying which
+    """
 
     operation: Operation
     excitation: Excitation
     advice: Advice | None
     segments: tuple[Span, ...]
+    operations: tuple[Span, ...]
     excluded: tuple[Span, ...]
 
 

@@ -21,6 +21,9 @@ def _lines(report: Report) -> Iterator[str]:
     yield f"Log         {log.rows} rows, {log.duration_s:.6g} s, {step}, {report.record.operation}"
     if log.start:
         yield f"            {log.start} to {log.end}"
+    if len(report.record.operations) > 1:
+        parts = (f"{s.note} {s.start_s:.4g} to {s.end_s:.4g} s" for s in report.record.operations)
+        yield f"            {', '.join(parts)}"
     for role, header in log.columns.items():
         yield f"            {role:<9} from column {header!r}"
     if report.selected is None:

@@ -19,6 +19,7 @@ export function log(report, name) {
     ["Duration", duration(read.duration_s)],
     ["Sample time", read.sample_time_s === null ? "uneven" : withUnit(exact(read.sample_time_s), "s")],
     ["Operation", word(OPERATIONS, record.operation)],
+    (record.operations ?? []).length > 1 && ["Part by part", spans(record.operations.map((one) => ({ ...one, note: word(OPERATIONS, one.note).toLowerCase() })))],
     record.excitation.sufficient && ["Movement", record.excitation.reason],
     ["Columns", h("ul", { class: "plain" }, Object.entries(read.columns).map(([role, header]) => h("li", {}, `${word(ROLES, role)}: “${header}”`)))],
     ["Units", `speed ${read.speed_unit || "not stated"}, command ${read.command_unit || "not stated"}`],
