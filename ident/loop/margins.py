@@ -83,23 +83,28 @@ def sensitivity(run: Sweep) -> Peaks:
     """Peaks of abs(S) of a stable loop."""
     at_ends = [abs(1.0 / (1.0 + run.gain))] if run.order == 0 else []
     at_ends.append(1.0 / (1.0 - run.tail) if run.end is None else abs(1.0 / (1.0 + run.end)))
-    return _peaks(run, lambda loop: 1.0 / np.abs(1.0 + loop), at_ends)
+    return _peaks(run, lambda _, loop: 1.0 / np.abs(1.0 + loop), at_ends)
 
 
 def complementary(run: Sweep) -> Peaks:
     """Peaks of abs(T) of a stable loop; integral action makes T(0) = 1."""
     at_ends = [abs(run.gain / (1.0 + run.gain)) if run.order == 0 else 1.0 if run.order > 0 else 0.0]
     at_ends.append(run.tail / (1.0 - run.tail) if run.end is None else abs(run.end / (1.0 + run.end)))
-    return _peaks(run, lambda loop: np.abs(loop / (1.0 + loop)), at_ends)
+    return _peaks(run, lambda _, loop: np.abs(loop / (1.0 + loop)), at_ends)
 
 
-def _peaks(run: Sweep, size: Callable[[Complex], Floats], at_ends: list[float]) -> Peaks:
-    values = size(run.loop)
+def control_sensitivity(run: Sweep, settings: Controller) -> Peaks:
+    """Peaks of abs(C F S): by how much the command answers to measurement noise, command unit per speed unit."""
+    return _peaks(run, lambda w, loop: np.abs(settings.frequency_response(w) / (1.0 + loop)), [])
+
+
+def _peaks(run: Sweep, size: Callable[[Floats, Complex], Floats], at_ends: list[float]) -> Peaks:
+    values = size(run.w, run.loop)
     inner, floor = values[1:-1], values[1:-1] * (1.0 - ROUNDING)
     rise = (inner >= values[:-2]) & (inner >= values[2:]) & ((floor > values[:-2]) | (floor > values[2:]))
     # Neighbours are so close in angle that a bump this much lower cannot hide the highest peak.
     bumps = np.flatnonzero(rise & (inner > 0.93 * values.max())) + 1
-    w, height = maxima(lambda w: size(run.evaluate(w)), run.w[bumps - 1], run.w[bumps + 1])
+    w, height = maxima(lambda w: size(w, run.evaluate(w)), run.w[bumps - 1], run.w[bumps + 1])
     return Peaks(w, height, float(max([*at_ends, *height, values[-1]])))
 
 

@@ -38,6 +38,12 @@ class Band:
     plant: Complex
     residence: float
 
+    @property
+    def turning(self) -> float:
+        """rad/s where the plant has turned 180 degrees, or nearly as far as it ever does."""
+        lag = -np.unwrap(np.angle(self.plant))
+        return float(self.w[np.argmax(lag > min(np.pi, lag.max() * 0.999))])
+
     def with_points(self, w: Floats) -> Band:
         """The same band with further frequencies in it."""
         w = np.setdiff1d(w, self.w)

@@ -2,6 +2,8 @@
 
 from __future__ import annotations
 
+from dataclasses import dataclass
+
 import numpy as np
 from numpy.typing import NDArray
 
@@ -10,10 +12,24 @@ from ident.errors import Refused
 FILTER = 10.0  # Td/Tf
 
 
-def not_found(M: float) -> Refused:
+@dataclass(frozen=True, slots=True)
+class Limits:
+    """What a loop must keep: abs(S), abs(T) <= M and, where given, abs(C F S) <= noise; with Tf = Td/ratio.
+
+    noise   command unit per speed unit: the most by which the command answers to noise of one frequency
+    """
+
+    M: float
+    noise: float | None = None
+    ratio: float = FILTER
+
+
+def not_found(limits: Limits) -> Refused:
+    noise = "" if limits.noise is None else f" and the command's answer to noise at or below {limits.noise:.4g}"
     return Refused(
         "no-settings-found",
-        f"No settings that keep Ms and Mt at or below {M:g} were found for this plant; try another target.",
+        f"No settings that keep Ms and Mt at or below {limits.M:g}{noise} were found for this plant: "
+        "try another target.",
     )
 
 

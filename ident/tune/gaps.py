@@ -12,7 +12,7 @@ from numpy.typing import NDArray
 
 from ident.loop.settings import PidSettings
 from ident.tune.band import Band
-from ident.tune.ellipses import FILTER, circles, largest_gain
+from ident.tune.ellipses import Limits, circles, largest_gain
 
 Floats = NDArray[np.float64]
 
@@ -21,38 +21,54 @@ GAINS, LOWEST, HIGHEST = 40, 0.01, 5.0  # grid over Kp, in terms of the gain tha
 DEEPEST = 6  # gaps looked into from the top
 
 
-def best_in_gaps(band: Band, M: float, Td: float) -> PidSettings | None:
-    """Stable settings near the best ki at a given Td (Tf = Td/10), sign of the plant taken out; None: no gap."""
+def best_in_gaps(band: Band, limits: Limits, Td: float) -> PidSettings | None:
+    """Stable settings near the best ki at a given Td, sign of the plant taken out; None: no gap."""
+    Kp, ki = tops(band, limits, Td)
+    if len(Kp) == 0:
+        return None
+    k = int(np.argmax(ki))
+    return PidSettings(float(Kp[k]), float(Kp[k] / ki[k]), Td, Td / limits.ratio)
+
+
+def tops(band: Band, limits: Limits, Td: float, gains: int = GAINS) -> tuple[Floats, Floats]:
+    """(Kp, ki) just below the top of the highest stable gap at each of some Kp, at a given Td; sign taken out."""
+    M = limits.M
     w, plant = band.w[::EVERY], band.plant[::EVERY]
     s = 1j * w
-    Tf = Td / FILTER
-    filtered = plant / (1.0 + s * Tf + (s * Tf) ** 2 / 2.0)
+    Tf = Td / limits.ratio
+    slow = 1.0 / (1.0 + s * Tf + (s * Tf) ** 2 / 2.0)
+    filtered = plant * slow
     inverse = 1.0 / filtered
     top = min(largest_gain(inverse / (1.0 + s * Td), c, r) for c, r in circles(M))
+    if limits.noise is not None:
+        # Beyond the plant's own frequencies S is 1.
+        beyond = w[-1] if Td == 0 else np.sqrt(2.0) / Tf
+        top = min(top, limits.noise / abs(PidSettings(1.0, np.inf, Td, Tf).frequency_response(beyond)) / LOWEST**0.5)
     if not np.isfinite(top):
-        return None
-    Kp = top * np.geomspace(LOWEST, HIGHEST, GAINS)
+        return np.empty(0), np.empty(0)
+    Kp = top * np.geomspace(LOWEST, HIGHEST, gains)
     low, high = _forbidden(w, inverse, Kp, Td, M)
     order = np.argsort(low, axis=1)
     low, high = np.take_along_axis(low, order, 1), np.take_along_axis(high, order, 1)
     covered = np.maximum.accumulate(np.column_stack([np.zeros(len(Kp)), high[:, :-1]]), axis=1)
     gap = np.isfinite(low) & (low > covered)
-    best: tuple[float, float] | None = None
+    best = np.zeros(len(Kp))
     for _ in range(DEEPEST):
         rows = np.flatnonzero(gap.any(axis=1))
         last = low.shape[1] - 1 - np.argmax(gap[rows, ::-1], axis=1)
         # A little inside the gap, where the turn count is clear of the edge.
         ki = 0.98 * low[rows, last] + 0.02 * covered[rows, last]
-        C = Kp[rows, None] * (1.0 + s * Td) + ki[:, None] / s
-        stable = _stable(filtered * C)
-        for k in np.flatnonzero(stable):
-            if best is None or ki[k] > best[1]:
-                best = float(Kp[rows[k]]), float(ki[k])
+        controller = Kp[rows, None] * (1.0 + s * Td) + ki[:, None] / s
+        loop = filtered * controller
+        good = _stable(loop)
+        if limits.noise is not None:
+            good &= np.max(np.abs(controller * slow / (1.0 + loop)), axis=1) <= limits.noise
+        best[rows[good]] = ki[good]
         gap[rows, last] = False
-        gap[rows[stable]] = False
+        gap[rows[good]] = False
         if not gap.any():
             break
-    return PidSettings(best[0], best[0] / best[1], Td, Tf) if best else None
+    return Kp[best > 0], best[best > 0]
 
 
 def _forbidden(w: Floats, inverse: NDArray[np.complex128], Kp: Floats, Td: float, M: float) -> tuple[Floats, Floats]:

@@ -20,7 +20,7 @@ from ident.loop.settings import PidSettings
 from ident.loop.sweep import OpenLoop, sweep
 from ident.tune.band import Band
 from ident.tune.climb import climb
-from ident.tune.ellipses import circles, largest_gain, not_found
+from ident.tune.ellipses import Limits, circles, largest_gain, not_found
 from ident.tune.gaps import best_in_gaps
 
 Floats = NDArray[np.float64]
@@ -34,18 +34,18 @@ WORTH = 1.002  # a start this much better than what was found is worth climbing 
 EXCESS = 1e-7  # relative, left above the limit
 
 
-def largest_ki(band: Band, M: float) -> PidSettings:
-    """PI settings with the largest ki that keep the loop stable and abs(S), abs(T) <= M.
+def largest_ki(band: Band, limits: Limits) -> PidSettings:
+    """PI settings with the largest ki that keep the loop stable and within the limits.
 
     Raises Refused: unbounded, no-settings-found.
     """
-    found = _exchange(band, M)
+    found = _exchange(band, limits.M) if limits.noise is None else None
     # On a resonating plant a better answer may lie in a gap above some ellipse.
-    start = best_in_gaps(band, M, 0.0)
+    start = best_in_gaps(band, limits, 0.0)
     if start and (found is None or start.ki > found.ki * WORTH):
-        found = max(filter(None, [climb(band, M, start), found]), key=lambda s: s.ki, default=None)
+        found = max(filter(None, [climb(band, limits, start), found]), key=lambda s: s.ki, default=None)
     if found is None:
-        raise not_found(M)
+        raise not_found(limits)
     return found
 
 

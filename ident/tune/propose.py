@@ -46,7 +46,7 @@ def propose(
     if _sound(best, Ms):
         return Proposals((best, rule), 0, _compare(best, rule, Ms))
     if _sound(rule, Ms):
-        return Proposals((best, rule), 1, f"The sampled loop does not settle with the largest ki; {rule.because}")
+        return Proposals((best, rule), 1, f"The sampled loop does not settle with the optimum; {rule.because}")
     return Proposals((best, rule), None, "Neither proposal settles at this period within the target.")
 
 
@@ -105,6 +105,8 @@ def _missed(found: Margins, Ms: float) -> Finding:
 
 
 def _compare(best: Tuning, rule: Tuning, Ms: float) -> str:
+    if best.method != "largest-ki":
+        return best.because
     if not _sound(rule, Ms):
         return (
             f"It has the largest integral gain, {best.settings.ki:.4g}, with Ms and Mt at most {Ms:g}; "

@@ -10,14 +10,17 @@ from ident.findings import Finding
 from ident.loop import Margins, PidSettings, margins
 from ident.loop.held_plant import held_plant
 from ident.tune.band import find_band
+from ident.tune.ellipses import Limits
 from ident.tune.largest_ki import largest_ki
 from ident.tune.largest_ki_pid import largest_ki_pid
+from ident.tune.least_iae import least_iae
 from ident.tune.predict import Rehearsal, lagged
 from ident.tune.predicted import Predicted
 from ident.tune.setpoint_weight import weight_of
 
 FORMS = ("pi", "pid")
 GOALS = ("integral", "load", "setpoint")
+METHODS = {"integral": "largest-ki", "load": "least-iae-load", "setpoint": "least-iae-setpoint"}
 LOOSEST = 5.0  # beyond, a loop is so close to unstable that no target means anything
 
 
@@ -25,7 +28,7 @@ LOOSEST = 5.0  # beyond, a loop is so close to unstable that no target means any
 class Tuning:
     """One proposal.
 
-    method     largest-ki | simc
+    method     largest-ki | least-iae-load | least-iae-setpoint | simc
     form       pi | pid
     margins    of the loop with half the controller's period and the computing delay in it
     predicted  None where the plant is not one that is simulated
@@ -54,33 +57,33 @@ def tune(
 
     plant          a fit, a model, or anything with frequency_response(w), taken to be stable, gain of any sign
     Ms             target, 1 to 5; sensible 1.2 (calm) to 2 (sharp)
-    goal           integral: the largest ki
+    goal           integral: the largest ki; load, setpoint: the least IAE after a unit step of either
     period         controller sample time, s, 0 for analogue: half of it is dead time;  compute_delay  s
     For a plant of one or two lags the setpoint weight is chosen and both step responses are predicted; else b is 1.
-    Raises Refused: target-out-of-range, unbounded, not-offered, no-settings-found and those of `margins`.
+    Raises Refused: target-out-of-range, unbounded, not-offered, no-settings-found, not-simulated (load, setpoint: a
+    response too long to follow) and those of `margins`.
     """
     check_request(Ms, form, goal)
     held = held_plant(plant, period, compute_delay)
-    best = largest_ki if form == "pi" else largest_ki_pid
-    settings = best(find_band(held, form), Ms)
+    band, limits = find_band(held, form), Limits(Ms)
+    settings = (largest_ki if form == "pi" else largest_ki_pid)(band, limits)
+    if goal != "integral":
+        settings = least_iae(band, limits, goal, settings)
     timing = {"period": period, "compute_delay": compute_delay}
     found = margins(held.plant, settings, **timing)
     settings, predicted, findings = rehearse(plant, settings, period, compute_delay)
-    return Tuning(
-        "largest-ki",
-        form,
-        settings,
-        found,
-        predicted,
-        findings,
-        f"The largest integral gain, {settings.ki:.4g}, with Ms and Mt at most {Ms:g}.",
-    )
+    because = {
+        "integral": f"The largest integral gain, {settings.ki:.4g}, with Ms and Mt at most {Ms:g}.",
+        "load": f"The least integrated absolute error after a load step, with Ms and Mt at most {Ms:g}.",
+        "setpoint": f"The least integrated absolute error after a setpoint step, with Ms and Mt at most {Ms:g}.",
+    }[goal]
+    return Tuning(METHODS[goal], form, settings, found, predicted, findings, because)
 
 
 def rehearse(
     plant: Any, settings: PidSettings, period: float, compute_delay: float
 ) -> tuple[PidSettings, Predicted | None, tuple[Finding, ...]]:
-    """Setpoint weight and predicted steps of a stable loop; none for a plant that is not simulated."""
+    """Setpoint weight, at most the one given, and predicted steps of a stable loop; none for a plant not simulated."""
     model = lagged(plant)
     if model is None:
         return settings, None, ()
@@ -88,6 +91,7 @@ def rehearse(
         rehearsal = Rehearsal(model, settings, period, compute_delay)
         rehearsal.check()
         b, advice = weight_of(rehearsal)
+        b = min(b, settings.b)
     except Refused as error:
         return settings, None, (Finding(error.code, "error", error.message),)
     return replace(settings, b=b), rehearsal.predicted(b), (advice,) if advice else ()
@@ -104,5 +108,3 @@ def check_request(Ms: float, form: str, goal: str) -> None:
         raise Refused(
             "not-offered", f"form is one of {', '.join(FORMS)}; goal one of {', '.join(GOALS)}; got {form}, {goal}."
         )
-    if goal != "integral":
-        raise Refused("not-offered", f'The goal "{goal}" is not offered yet: use goal="integral".')

@@ -145,7 +145,7 @@ def test_brute_force_on_random_plants() -> None:
         (Fopdt(1, 1, 1), {"Ms": 1.0}, "target-out-of-range"),
         (Fopdt(1, 1, 1), {"Ms": float("nan")}, "target-out-of-range"),
         (Fopdt(1, 1, 1), {"Ms": 5.1}, "target-out-of-range"),
-        (Fopdt(1, 1, 1), {"goal": "load"}, "not-offered"),
+        (Fopdt(1, 1, 1), {"goal": "noise"}, "not-offered"),
         (Fopdt(1, 1, 1), {"form": "pi-d"}, "not-offered"),
     ],
 )

@@ -39,6 +39,8 @@ export const GOALS = { integral: "Largest integral gain", load: "Least error aft
 
 export const METHODS = {
   "largest-ki": "Largest integral gain within the target",
+  "least-iae-load": "Smallest error after a load step within the target",
+  "least-iae-setpoint": "Smallest error after a setpoint step within the target",
   simc: "SIMC rule",
 };
 
