@@ -127,6 +127,7 @@ class LoopSettings(Part):
             "date_order": self.date_order,
             "counts_per_rev": self.counts_per_rev,
             "period": self.period,
+            "installed": None if self.installed is None else ",".join(map(repr, self.installed.model_dump().values())),
             **{role: getattr(self.columns, role) for role in ROLES},
             **self.defaults.model_dump(),
         }

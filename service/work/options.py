@@ -3,11 +3,12 @@
 from __future__ import annotations
 
 import json
+import math
 from collections.abc import Sequence
 from datetime import datetime
 from typing import Any, Literal
 
-from pydantic import BaseModel, ConfigDict, Field, ValidationError
+from pydantic import BaseModel, ConfigDict, Field, ValidationError, field_validator
 
 from service.errors import Problem, Value
 
@@ -30,6 +31,16 @@ def _unit(role: str) -> Any:
         max_length=30,
         description=f"Unit of the {role}, where its header has none.",
     )
+
+
+def numbers(told: str) -> tuple[float, ...]:
+    """Kp, Ti and, where told, Td, Tf, b. Raises ValueError with what is wrong."""
+    found = tuple(float(number) for number in told.split(","))
+    if len(found) not in (2, 5) or not all(math.isfinite(number) for number in found):
+        raise ValueError("give two or five numbers: Kp,Ti or Kp,Ti,Td,Tf,b")
+    if found[0] == 0.0 or found[1] <= 0.0 or min(found[2:4], default=0.0) < 0.0:
+        raise ValueError("Kp must not be 0, Ti must be above 0, Td and Tf not below 0")
+    return found
 
 
 class Options(BaseModel):
@@ -56,6 +67,11 @@ class Options(BaseModel):
         le=86_400.0,
         allow_inf_nan=False,
         description="Period of the controller in seconds, 0 if analogue; unset: the log's sample time.",
+    )
+    installed: str | None = Field(
+        default=None,
+        max_length=150,
+        description="Settings in the machine, to compare the log with: Kp,Ti or Kp,Ti,Td,Tf,b.",
     )
     zone: str | None = Field(
         default=None,
@@ -88,6 +104,13 @@ class Options(BaseModel):
         """{role: header or position} of the columns that were named, None if none was."""
         named = {role: getattr(self, role) for role in ROLES if getattr(self, role) is not None}
         return {role: int(name) if name.isdecimal() else name for role, name in named.items()} or None
+
+    @field_validator("installed")
+    @classmethod
+    def _checked(cls, told: str | None) -> str | None:
+        if told is not None:
+            numbers(told)
+        return told
 
     def text(self) -> str:
         """JSON of what differs from the defaults: equal for equal options, and still so when options are added."""

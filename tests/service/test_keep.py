@@ -168,6 +168,23 @@ def test_what_is_known_of_a_loop_comes_back_and_goes_again(service: TestClient) 
     assert emptied.json()["installed"] is None
 
 
+def test_the_settings_told_are_compared_with_those_that_the_log_shows(service: TestClient) -> None:
+    # sample_logs/README.md: the panel's PI has Kp = 0.075 %/rpm, Ti = 2.3 s.
+    log = (ROOT / "sample_logs" / "setpoint_change.csv").read_bytes()
+    for loop, Kp, differs in (("pan", 0.075, False), ("pot", 0.06, True)):
+        service.put(f"/v1/loops/{loop}", json={"installed": {"Kp": Kp, "Ti": 2.3}})
+        report = service.get(f"/v1/reports/{keep(service, log, loop)['report_id']}").json()
+        assert report["installed"]["source"] == "log"
+        assert report["installed"]["settings"]["Kp"] == pytest.approx(0.075, rel=1e-3)
+        assert ("installed-differs" in {finding["code"] for finding in report["findings"]}) is differs
+
+
+@pytest.mark.parametrize("told", ["1", "0,2", "1,-1", "a,b", "1,2,3"])
+def test_installed_settings_that_make_no_sense_are_refused(service: TestClient, told: str, step_test: bytes) -> None:
+    response = service.post("/v1/reports", params={"installed": told}, content=step_test)
+    assert "installed" in expect.answer(response, expected=422, code="invalid-option")["evidence"]
+
+
 @pytest.mark.parametrize(
     ("body", "at"),
     [

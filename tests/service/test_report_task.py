@@ -70,6 +70,7 @@ def test_every_option_reaches_ident(monkeypatch: pytest.MonkeyPatch) -> None:
             "form": "pid",
             "goal": "load",
             "period": "0",
+            "installed": "0.1,2",
             "zone": "Europe/Zurich",
             "date_order": "mdy",
             "start": "2026-03-01T06:00:00Z",
@@ -92,4 +93,5 @@ def test_every_option_reaches_ident(monkeypatch: pytest.MonkeyPatch) -> None:
         "form": "pid",
         "goal": "load",
         "period": 0.0,
+        "installed": ident.PidSettings(0.1, 2.0),
     }
