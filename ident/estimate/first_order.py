@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import math
 from dataclasses import dataclass
 
 import numpy as np
@@ -30,6 +31,11 @@ class FirstOrder:
     def slowest(self) -> float:
         """The time constant, s."""
         return self.T
+
+    def reach(self, layout: Layout) -> tuple[Floats, Floats]:
+        """The least and most that one step may take of log T, (1,) each, within what the layout can tell."""
+        least = max(math.log(SHORTEST_T * layout.step / self.T), -1.5)
+        return np.array([least]), np.array([min(math.log(LONGEST_T * layout.duration / self.T), 1.5)])
 
     def moved(self, log_steps: Floats, layout: Layout) -> FirstOrder:
         """T after a step of log T, within what the layout can tell."""

@@ -15,6 +15,7 @@ from ident.estimate.layout import Layout
 from ident.estimate.point import Point, point
 from ident.estimate.shape import Shape
 from ident.evidence.normal import solve_normal
+from ident.record.segments import Floats
 
 MOST_STEPS = 40
 MOST_HALVINGS = 8
@@ -53,13 +54,8 @@ def _descend(layout: Layout, at: Point, low: float, high: float, promise: float)
     for _ in range(MOST_STEPS):
         if at.rss <= EXACT * total:
             break
-        step = solve_normal(at.gram, at.toward)
-        if (at.L >= high and step[1 + k] > 0) or (at.L <= low and step[1 + k] < 0):
-            # The dead time is held at the end of its cell; the shape alone moves.
-            others = np.delete(np.arange(len(at.gram)), 1 + k)
-            step = np.zeros(len(at.gram))
-            step[others] = solve_normal(at.gram[np.ix_(others, others)], at.toward[others])
-        promised = float(step @ at.toward)
+        step = _bounded_step(at, *at.shape.reach(layout), low - at.L, high - at.L)
+        promised = float(2.0 * step @ at.toward - step @ at.gram @ step)
         if promised <= promise * at.rss / layout.rows:
             break
         ahead = None
@@ -77,3 +73,22 @@ def _descend(layout: Layout, at: Point, low: float, high: float, promise: float)
             break
         at = ahead
     return at
+
+
+def _bounded_step(at: Point, least: Floats, most: Floats, back: float, ahead: float) -> Floats:
+    """The Gauss-Newton step within bounds of the shape's logarithms (k,) and of L; what meets its bound is held there
+    and the others are solved for again."""
+    k, all_of = at.log_count, np.arange(len(at.gram))
+    lows, highs = np.full(len(all_of), -np.inf), np.full(len(all_of), np.inf)
+    lows[1 : 2 + k], highs[1 : 2 + k] = [*least, back], [*most, ahead]
+    step = solve_normal(at.gram, at.toward)
+    held = np.zeros(len(all_of), dtype=np.bool_)
+    while True:
+        beyond = ~held & ((step < lows) | (step > highs))
+        if not beyond.any():
+            return step
+        held |= beyond
+        step = np.where(held, np.clip(step, lows, highs), 0.0)
+        free = all_of[~held]
+        toward = at.toward[free] - at.gram[np.ix_(free, all_of[held])] @ step[held]
+        step[free] = solve_normal(at.gram[np.ix_(free, free)], toward)

@@ -2,18 +2,49 @@
 
 from __future__ import annotations
 
+import math
 from dataclasses import dataclass
 
 import numpy as np
+from scipy.signal import lfilter
 
 from ident.estimate.first_order import LONGEST_T, SHORTEST_T
 from ident.estimate.layout import Layout, Stretch
 from ident.estimate.shape import delayed
-from ident.plants.second_hold import motion, pair_states
+from ident.plants.second_hold import Taps, motion, pair_states, pair_taps
 from ident.record.segments import Floats
 
 SHORTEST_LAG = 0.1  # steps
 NUDGE = 1e-6  # of a logarithm, for slopes: the answer is smooth in S and P, and slopes only steer and weigh
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class _Arrived:
+    """The command as it has arrived after a dead time, on a uniform grid: the same for every shape.
+
+    held     (used rows,), at the sample before the instant asked for, `since` s later
+    moves    (rows,), from that sample to the next;  slope  (used rows,), per s, of a straight command, else None
+    """
+
+    step: float
+    since: float
+    skip: int
+    held: Floats
+    moves: Floats
+    slope: Floats | None
+
+
+def _arrived(stretch: Stretch, L: float) -> _Arrived:
+    assert stretch.step is not None
+    u, n, skip = stretch.command, stretch.rows, stretch.skip
+    shift = min(int(L / stretch.step) + 1, n)
+    held = np.concatenate((np.full(shift, u[0]), u[: n - shift]))
+    moves = np.zeros(n)
+    moves[shift : n - 1] = np.diff(u)[: n - 1 - shift] if shift < n - 1 else 0.0
+    slope = None
+    if stretch.straight:
+        slope = np.concatenate((np.zeros(shift), stretch.rates[: n - shift]))[skip:]
+    return _Arrived(stretch.step, (int(L / stretch.step) + 1) * stretch.step - L, skip, held[skip:], moves, slope)
 
 
 @dataclass(frozen=True, slots=True)
@@ -37,6 +68,22 @@ class SecondOrder:
         """A bound of the longest time constant, s: S for two lags, 2 P/S of the envelope of a ringing pair."""
         return max(self.S, 2.0 * self.P / self.S)
 
+    def reach(self, layout: Layout) -> tuple[Floats, Floats]:
+        """The least and most that one step may take of the logarithms, (k,) each, within what the layout can tell."""
+        least = max(math.log(SHORTEST_T * layout.step / self.S), -1.0)
+        most = min(math.log(LONGEST_T * layout.duration / self.S), 1.0)
+        if self.equal:
+            return np.array([least]), np.array([most])
+        smallest, largest = self._products(self.S, layout)
+        return (
+            np.array([least, max(smallest / self.P - 1.0, -0.7)]),
+            np.array([most, min(largest / self.P - 1.0, 2.0)]),
+        )
+
+    def _products(self, S: float, layout: Layout) -> tuple[float, float]:
+        """Bounds of P: from a second lag that sampling cannot show to a damping ratio of 0.05."""
+        return min(SHORTEST_LAG * layout.step * S, 0.2 * S * S), 100.0 * S * S
+
     def moved(self, log_steps: Floats, layout: Layout) -> SecondOrder:
         """The shape after a step of (log S, log P), or of log S alone, within what the layout can tell."""
         steps = np.exp(np.clip(log_steps, -1.0, 1.0))
@@ -44,14 +91,15 @@ class SecondOrder:
         S = float(np.clip(self.S * steps[0], shortest, longest))
         if self.equal:
             return SecondOrder(S, S * S / 4.0, True)
-        # From a second lag that sampling cannot show to a damping ratio of 0.05.
-        least = min(SHORTEST_LAG * layout.step * S, 0.2 * S * S)
         # A small second lag acts like dead time, linearly: its step is taken in P itself, not in log P.
         product = self.P * (1.0 + float(np.clip(log_steps[1], -0.7, 2.0)))
-        return SecondOrder(S, float(np.clip(product, least, 100.0 * S * S)))
+        return SecondOrder(S, float(np.clip(product, *self._products(S, layout))))
 
     def response(self, stretch: Stretch, L: float) -> tuple[Floats, Floats]:
         """The answer at the used rows and its slope in L, both (n,)."""
+        if stretch.step is not None:
+            came = _arrived(stretch, L)
+            return self._through(came), -self._rate_through(came)
         u, straight = stretch.command, stretch.straight
         q, r = pair_states(u, stretch.intervals, self.S, self.P, straight=straight)
         at = delayed(stretch, L, (u, q, r, stretch.rates) if straight else (u, q, r))
@@ -64,9 +112,27 @@ class SecondOrder:
 
     def answer(self, stretch: Stretch, L: float) -> tuple[Floats, Floats, Floats]:
         """At the used rows: answer (n,), slopes in the logarithms (k, n), slope in L (n,)."""
-        here, slope_L = self.response(stretch, L)
-        slopes = [(near.response(stretch, L)[0] - here) / NUDGE for near in self._nearby()]
+        if stretch.step is not None:
+            came = _arrived(stretch, L)
+            here, slope_L = self._through(came), -self._rate_through(came)
+            slopes = [(near._through(came) - here) / NUDGE for near in self._nearby()]
+        else:
+            here, slope_L = self.response(stretch, L)
+            slopes = [(near.response(stretch, L)[0] - here) / NUDGE for near in self._nearby()]
         return here, np.stack(slopes), slope_L
+
+    def _through(self, came: _Arrived) -> Floats:
+        taps = self._taps(came)
+        answer = came.held + lfilter(taps.speed, taps.poles, came.moves)[came.skip :]
+        return np.asarray(answer if came.slope is None else answer + taps.by_slope * came.slope)
+
+    def _rate_through(self, came: _Arrived) -> Floats:
+        taps = self._taps(came)
+        rate = lfilter(taps.rate, taps.poles, came.moves)[came.skip :]
+        return np.asarray(rate if came.slope is None else rate + taps.rate_by_slope * came.slope)
+
+    def _taps(self, came: _Arrived) -> Taps:
+        return pair_taps(came.step, came.since, self.S, self.P, straight=came.slope is not None)
 
     def transients(self, time: Floats) -> tuple[Floats, Floats]:
         """Free motions from t = 0, (2, n), the second in units of the lags; slopes (k, 2, n)."""

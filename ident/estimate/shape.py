@@ -22,6 +22,9 @@ class Shape(Protocol):
     def slowest(self) -> float:
         """No free motion has a longer time constant, s."""
 
+    def reach(self, layout: Layout) -> tuple[Floats, Floats]:
+        """The least and most (k,) that one step may take of the logarithms, within what the layout can tell."""
+
     def moved(self, log_steps: Floats, layout: Layout) -> Shape:
         """The shape after a step (k,) of the logarithms, within what the layout can tell."""
 

@@ -41,7 +41,7 @@ RATIOS = (0.05, 0.2, 0.5, 2.0)
 TRIED = 2  # best starts descended
 ROUGHLY = 1e-2  # of one residual's variance: enough to choose between them
 EQUAL = 3.84  # of a residual's variance: less than this in the sum of squares does not tell lags from equal ones
-FAR = 10.0  # times EQUAL, by the slopes alone: plainly not equal
+FAR = 4.0  # times EQUAL, by the slopes alone: plainly not equal
 CLOSELY = 1e-4  # of one residual's variance: a hundredth of a standard deviation
 ANGLES = 720
 
@@ -86,13 +86,15 @@ def _search(base: Ground) -> Point:
     """The best of a few starts around the first-order fit, descended on block means before the full record."""
     total = base.first.shape.lags + base.first.L
     even = base.layout.evened()
-    coarse = even.thinned(thinning(even))
+    blocks = thinning(even)
+    coarse = even.thinned(blocks)
     delays = sorted({delay * base.first.L for delay in DELAYS})
     starts = [(SecondOrder(total - L, ratio * (total - L) ** 2), L) for L in delays for ratio in RATIOS]
     starts.sort(key=lambda start: _unexplained(coarse, *start))
     descended = [refine(coarse, shape, L, ROUGHLY) for shape, L in starts[:TRIED]]
     best = min(descended, key=lambda p: p.rss)
-    return refine(base.layout, best.shape, best.L, CLOSELY)
+    # A mean of rows stands half a block later than its first row, at which its command begins.
+    return refine(base.layout, best.shape, best.L + 0.5 * (blocks - 1) * even.step, CLOSELY)
 
 
 def _unexplained(layout: Layout, shape: SecondOrder, L: float) -> float:
@@ -108,8 +110,9 @@ def _equal_if_untold(base: Ground, at: Point) -> Point:
     """Equal lags in place of nearly equal or faintly ringing ones that the sum of squares does not tell from them."""
     S = at.shape.lags
     assert isinstance(at.shape, SecondOrder)
-    # How far log P is from equal lags, in its own standard deviations.
-    apart = math.log(S * S / (4.0 * at.shape.P))
+    # How far P is from equal lags, in the units of its logarithm's standard deviation; a small P acts linearly.
+    ratio = S * S / (4.0 * at.shape.P)
+    apart = ratio - 1.0 if ratio > 1.0 else math.log(ratio)
     information = inverse_gram(at.gram)[2, 2]
     if apart**2 > FAR * EQUAL * information * at.rss / base.layout.rows:
         return at

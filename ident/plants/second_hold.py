@@ -13,6 +13,7 @@ samples both follow from the moves of the command by one second-order recursion 
 from __future__ import annotations
 
 import math
+from dataclasses import dataclass
 
 import numpy as np
 from numpy.typing import NDArray
@@ -40,6 +41,42 @@ def motion(S: float, P: float, since: float | Floats) -> tuple[Floats, Floats, F
         c1 = decay * t * np.sinc(omega * t / np.pi)
         even = decay * np.cos(omega * t)
     return np.asarray(even + sigma * c1), np.asarray(c1), np.asarray(even - sigma * c1)
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class Taps:
+    """The answer at one instant between samples, as filters of the command's moves on a uniform grid.
+
+    `since` s after a sample: y - u is the moves through speed/poles, plus by_slope times the command's slope per s;
+    dy/dt the moves through rate/poles, plus rate_by_slope times it.
+    """
+
+    poles: Floats
+    speed: Floats
+    rate: Floats
+    by_slope: float
+    rate_by_slope: float
+
+
+def pair_taps(step: float, since: float, S: float, P: float, *, straight: bool = False) -> Taps:
+    """Taps of 1/(P s^2 + S s + 1), the move from row j to j + 1 given at row j;  step, since, S  s;  P  s^2."""
+    c0, c1, c2 = (float(c) for c in motion(S, P, step))
+    g_q, g_r = _left_by_a_move(step, S, P, straight)
+    q = np.array([0.0, g_q, c1 * g_r - c2 * g_q])
+    r = np.array([0.0, g_r, -c1 / P * g_q - c0 * g_r])
+    e0, e1, e2 = (float(c) for c in motion(S, P, since))
+    by_slope = since - S + e0 * S - e1 if straight else 0.0
+    rate_by_slope = 1.0 - e1 * S / P - e2 if straight else 0.0
+    poles = np.array([1.0, -(c0 + c2), math.exp(-S / P * step)])
+    return Taps(poles, e0 * q + e1 * r, e2 * r - e1 / P * q, by_slope, rate_by_slope)
+
+
+def _left_by_a_move(step: float, S: float, P: float, straight: bool) -> tuple[float, float]:
+    """What a move of the command by 1 leaves in q and r at the next sample."""
+    if not straight:
+        return -1.0, 0.0
+    c0, c1, c2 = (float(c) for c in motion(S, P, step))
+    return (-S * (1.0 - c0) - c1) / step, (1.0 - c2 - c1 * S / P) / step
 
 
 def pair_states(

@@ -15,6 +15,8 @@ from scipy.optimize import curve_fit
 from scipy.signal import lfilter, lsim
 
 import ident
+from ident.estimate.diagnostics import statistics
+from ident.estimate.ground import ground, with_noise
 from tests.reference.held_fopdt import respond
 
 ROWS, H = 10_000, 0.01
@@ -58,13 +60,26 @@ def general_purpose(record: ident.LoopRecord) -> None:
     curve_fit(simulate, t, record.speed, p0=(1.5, 0.4, 0.08, 0.0))
 
 
+def residual_tests(record: ident.LoopRecord) -> float:
+    """Processor time of what the fit spends on its residuals' tests, s."""
+    base = ground(record)
+    found = with_noise(base, base.first)
+    return cost(lambda: statistics(found.layout, found.at, found.colour, None))
+
+
 def main() -> None:
     print(f"{ROWS} rows; passes of scipy.signal.lfilter([0, b], [1, -a]) over the same rows")
+    print("bars: fopdt 100, its residual tests 40 more; sopdt 250; analyse, subspace left out, 1,000")
     for name, record in records().items():
         one_pass = cost(lambda r=record: lfilter([0.0, 0.1], [1.0, -0.9], r.command), number=200)
         fopdt = cost(lambda r=record: ident.fit(r, "fopdt"))
+        tests = residual_tests(record)
         sopdt = cost(lambda r=record: ident.fit(r, "sopdt"), repeat=3, number=3)
-        print(f"  {name:30} fopdt {fopdt / one_pass:6.0f}   sopdt {sopdt / one_pass:6.0f}")
+        whole = cost(lambda r=record: ident.analyse(r, period=H, subspace=False), repeat=3, number=2)
+        print(
+            f"  {name:30} fopdt {(fopdt - tests) / one_pass:5.0f} + {tests / one_pass:3.0f}   "
+            f"sopdt {sopdt / one_pass:5.0f}   analyse {whole / one_pass:5.0f}"
+        )
     record = records()["random binary, 25 rows a bit"]
     reference = cost(lambda: general_purpose(record), repeat=2, number=1)
     print(f"curve_fit with lsim over ident.fit: {reference / cost(lambda: ident.fit(record, 'fopdt')):.0f}")
