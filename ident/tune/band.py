@@ -53,9 +53,10 @@ class Band:
         return Band(self.source, self.sign, both[order], plant[order], self.residence)
 
 
-def find_band(plant: HeldPlant, form: str) -> Band:
+def find_band(plant: HeldPlant, form: str, *, bounded: bool = False) -> Band:
     """Scan all decades for the phase between EARLY and LATE, then grid it finely.
 
+    bounded   something else than dead time limits the gain
     Raises Refused: unbounded (no delay and too little lag), plant-without-gain, plant-response-unusable.
     """
     # One scan from nanoseconds to decades; a stated delay moves its centre, so that time scales out.
@@ -71,7 +72,13 @@ def find_band(plant: HeldPlant, form: str) -> Band:
     sign = float(np.sign(asymptote))
     scan, response = _follow(plant, scan, response)
     lag = _lag(sign * response, order)
-    if plant.known_delay == 0 and np.isinf(plant.w_max) and lag[-1] < UNBOUNDED_LAG[form] and _settled(plant, top):
+    if (
+        not bounded
+        and plant.known_delay == 0
+        and np.isinf(plant.w_max)
+        and lag[-1] < UNBOUNDED_LAG[form]
+        and _settled(plant, top)
+    ):
         raise _unbounded()
     late = np.flatnonzero(lag > LATE)
     last = int(late[0]) if len(late) else int(np.argmax(lag > lag.max() - 0.02))
@@ -120,5 +127,5 @@ def _unbounded() -> Refused:
     return Refused(
         "unbounded",
         "Without dead time, hold or computing delay this plant takes any gain, so no largest gain exists: "
-        "give the controller's period, the computing delay, or a model with dead time.",
+        "give the controller's period, the computing delay, a model with dead time, or a limit on noise.",
     )

@@ -18,7 +18,7 @@ from ident.loop.nyquist import is_stable
 from ident.loop.settings import PidSettings
 from ident.loop.sweep import OpenLoop, sweep
 from ident.tune.band import Band
-from ident.tune.ellipses import Limits, circles
+from ident.tune.ellipses import Limits
 
 Floats = NDArray[np.float64]
 # x = log (Kp, ki[, Td]), the plant's sign taken out, to a value to be made least and its gradient.
@@ -64,8 +64,10 @@ def climb(
         moved = float(np.max(np.abs(tried - x)))
         x = tried
         peaks = [(sensitivity(run), limits.M), (complementary(run), limits.M)]
+        beyond: list[Floats] = []
         if limits.noise is not None:
             peaks.append((control_sensitivity(run, settings), limits.noise))
+            beyond = [run.w[-1:]]  # where a PI may answer the most
         if all(p.supremum <= limit * (1.0 + EXCESS) for p, limit in peaks):
             value = objective(x)[0]
             if best is not None and value > best[0] - precision:
@@ -74,7 +76,7 @@ def climb(
             if moved < 1e-9:
                 return settings
         else:
-            band = band.with_points(np.concatenate([p.w[p.height > limit] for p, limit in peaks]))
+            band = band.with_points(np.concatenate([p.w[p.height > limit] for p, limit in peaks] + beyond))
     return best[1] if best else None
 
 
@@ -129,7 +131,7 @@ def _constraints(w: Floats, plant: NDArray[np.complex128], limits: Limits, x: Fl
     ]
     loop = plant * controller
     values, slopes = [], []
-    for c, r in circles(limits.M):
+    for c, r in limits.circles:
         away = loop + c
         size = np.abs(away)
         values.append(size / r - 1.0)

@@ -12,12 +12,13 @@ from numpy.typing import NDArray
 
 from ident.loop.settings import PidSettings
 from ident.tune.band import Band
-from ident.tune.ellipses import Limits, circles, largest_gain
+from ident.tune.ellipses import Limits, largest_gain
 
 Floats = NDArray[np.float64]
 
 EVERY = 3  # of the band's frequencies: a start need not be exact
 GAINS, LOWEST, HIGHEST = 40, 0.01, 5.0  # grid over Kp, in terms of the gain that a circle allows without ki
+QUIETER = (1.0, 0.5, 0.25, 0.1, 0.04)  # shares of ki that may keep a limit on noise where the gap's top does not
 DEEPEST = 6  # gaps looked into from the top
 
 
@@ -32,22 +33,22 @@ def best_in_gaps(band: Band, limits: Limits, Td: float) -> PidSettings | None:
 
 def tops(band: Band, limits: Limits, Td: float, gains: int = GAINS) -> tuple[Floats, Floats]:
     """(Kp, ki) just below the top of the highest stable gap at each of some Kp, at a given Td; sign taken out."""
-    M = limits.M
     w, plant = band.w[::EVERY], band.plant[::EVERY]
     s = 1j * w
     Tf = Td / limits.ratio
     slow = 1.0 / (1.0 + s * Tf + (s * Tf) ** 2 / 2.0)
     filtered = plant * slow
     inverse = 1.0 / filtered
-    top = min(largest_gain(inverse / (1.0 + s * Td), c, r) for c, r in circles(M))
+    top = min(largest_gain(inverse / (1.0 + s * Td), c, r) for c, r in limits.circles)
     if limits.noise is not None:
         # Beyond the plant's own frequencies S is 1.
-        beyond = w[-1] if Td == 0 else np.sqrt(2.0) / Tf
-        top = min(top, limits.noise / abs(PidSettings(1.0, np.inf, Td, Tf).frequency_response(beyond)) / LOWEST**0.5)
+        turn = 1j * np.sqrt(2.0)
+        most = abs((1.0 + turn * limits.ratio) / (1.0 + turn + turn**2 / 2.0)) if Td > 0 else 1.0
+        top = min(top, limits.noise / most / LOWEST**0.5)
     if not np.isfinite(top):
         return np.empty(0), np.empty(0)
     Kp = top * np.geomspace(LOWEST, HIGHEST, gains)
-    low, high = _forbidden(w, inverse, Kp, Td, M)
+    low, high = _forbidden(w, inverse, Kp, Td, limits)
     order = np.argsort(low, axis=1)
     low, high = np.take_along_axis(low, order, 1), np.take_along_axis(high, order, 1)
     covered = np.maximum.accumulate(np.column_stack([np.zeros(len(Kp)), high[:, :-1]]), axis=1)
@@ -58,12 +59,15 @@ def tops(band: Band, limits: Limits, Td: float, gains: int = GAINS) -> tuple[Flo
         last = low.shape[1] - 1 - np.argmax(gap[rows, ::-1], axis=1)
         # A little inside the gap, where the turn count is clear of the edge.
         ki = 0.98 * low[rows, last] + 0.02 * covered[rows, last]
-        controller = Kp[rows, None] * (1.0 + s * Td) + ki[:, None] / s
-        loop = filtered * controller
-        good = _stable(loop)
-        if limits.noise is not None:
-            good &= np.max(np.abs(controller * slow / (1.0 + loop)), axis=1) <= limits.noise
-        best[rows[good]] = ki[good]
+        good = np.zeros(len(rows), dtype=bool)
+        for share in (1.0,) if limits.noise is None else QUIETER:
+            controller = Kp[rows, None] * (1.0 + s * Td) + share * ki[:, None] / s
+            loop = filtered * controller
+            fits = _stable(loop) & ~good
+            if limits.noise is not None:
+                fits &= np.max(np.abs(controller * slow / (1.0 + loop)), axis=1) <= limits.noise
+            best[rows[fits]] = share * ki[fits]
+            good |= fits
         gap[rows, last] = False
         gap[rows[good]] = False
         if not gap.any():
@@ -71,10 +75,12 @@ def tops(band: Band, limits: Limits, Td: float, gains: int = GAINS) -> tuple[Flo
     return Kp[best > 0], best[best > 0]
 
 
-def _forbidden(w: Floats, inverse: NDArray[np.complex128], Kp: Floats, Td: float, M: float) -> tuple[Floats, Floats]:
+def _forbidden(
+    w: Floats, inverse: NDArray[np.complex128], Kp: Floats, Td: float, limits: Limits
+) -> tuple[Floats, Floats]:
     """(gains, 2n) lower and upper ends of the ki that each frequency and circle forbids; inf, -inf where none."""
     lows, highs = [], []
-    for c, r in circles(M):
+    for c, r in limits.circles:
         half = (r * np.abs(inverse)) ** 2 - (Kp[:, None] + c * inverse.real) ** 2
         root = np.sqrt(np.maximum(half, 0.0))
         middle = c * inverse.imag + Kp[:, None] * (w * Td)

@@ -38,14 +38,15 @@ def least_iae(band: Band, limits: Limits, goal: str, fastest: PidSettings) -> Pi
     for start in [own, *_starts(band, limits, objective, own)]:
         found = climb(band, limits, start, objective, PRECISION)
         if found is not None:
-            candidates.append((objective(_log(found))[0], found))
+            candidates.append((objective(logarithms(found))[0], found))
     best = min(candidates, key=lambda c: c[0])[1] if candidates else fastest
     if goal == "setpoint":
-        return PidSettings(best.Kp, best.Ti, best.Td, best.Tf, objective.response(_log(best)).b)
+        return PidSettings(best.Kp, best.Ti, best.Td, best.Tf, objective.response(logarithms(best)).b)
     return best
 
 
-def _log(settings: PidSettings) -> Floats:
+def logarithms(settings: PidSettings) -> Floats:
+    """log (Kp, ki[, Td]), as the search knows settings."""
     free = [abs(settings.Kp), settings.ki] + ([settings.Td] if settings.Td > 0 else [])
     return np.asarray(np.log(free), dtype=np.float64)
 
@@ -59,11 +60,11 @@ def _starts(band: Band, limits: Limits, objective: Iae, own: PidSettings) -> lis
                 if ki * 3.0 < own.ki:
                     continue
                 settings = PidSettings(float(one), float(one / ki), float(Td), float(Td) / limits.ratio)
-                found.append((objective(_log(settings))[0], settings))
+                found.append((objective(logarithms(settings))[0], settings))
     found.sort(key=lambda f: f[0])
     starts: list[PidSettings] = []
     for _, settings in found:
-        if all(np.max(np.abs(_log(settings) - _log(other))) > APART for other in [own, *starts]):
+        if all(np.max(np.abs(logarithms(settings) - logarithms(other))) > APART for other in [own, *starts]):
             starts.append(settings)
         if len(starts) == STARTS:
             break

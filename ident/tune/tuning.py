@@ -5,23 +5,28 @@ from __future__ import annotations
 from dataclasses import dataclass, replace
 from typing import Any
 
+import numpy as np
+
 from ident.errors import Refused
 from ident.findings import Finding
 from ident.loop import Margins, PidSettings, margins
-from ident.loop.held_plant import held_plant
-from ident.tune.band import find_band
-from ident.tune.ellipses import Limits
+from ident.loop.held_plant import HeldPlant, held_plant
+from ident.tune.band import Band, find_band
+from ident.tune.ellipses import FILTER, Limits
+from ident.tune.iae import find_iae
 from ident.tune.largest_ki import largest_ki
 from ident.tune.largest_ki_pid import largest_ki_pid
-from ident.tune.least_iae import least_iae
+from ident.tune.least_iae import least_iae, logarithms
 from ident.tune.predict import Rehearsal, lagged
 from ident.tune.predicted import Predicted
-from ident.tune.setpoint_weight import weight_of
+from ident.tune.setpoint_weight import OVERSHOOT, weight_of
+from ident.tune.target import Target, solve
 
 FORMS = ("pi", "pid")
 GOALS = ("integral", "load", "setpoint")
 METHODS = {"integral": "largest-ki", "load": "least-iae-load", "setpoint": "least-iae-setpoint"}
-LOOSEST = 5.0  # beyond, a loop is so close to unstable that no target means anything
+DEFAULT_MS = 1.6
+LONGER = (4.0, 2.0, 1.0)  # Td/Tf tried where noise is limited
 
 
 @dataclass(frozen=True, slots=True)
@@ -47,41 +52,101 @@ class Tuning:
 def tune(
     plant: Any,
     *,
-    Ms: float = 1.6,
+    Ms: float | None = None,
     form: str = "pi",
     goal: str = "integral",
     period: float = 0.0,
     compute_delay: float = 0.0,
+    gain_margin: float | None = None,
+    phase_margin_deg: float | None = None,
+    closed_loop_s: float | None = None,
+    noise_peak: float | None = None,
+    command_noise_std: float | None = None,
+    speed_noise_std: float | None = None,
+    filter_ratio: float = FILTER,
+    overshoot_percent: float = OVERSHOOT,
 ) -> Tuning:
     """Settings that are best for a goal while the loop is stable and max(Ms, Mt) stays at the target.
 
     plant          a fit, a model, or anything with frequency_response(w), taken to be stable, gain of any sign
-    Ms             target, 1 to 5; sensible 1.2 (calm) to 2 (sharp)
+    Ms             target, 1 to 5; sensible 1.2 (calm) to 2 (sharp); 1.6 unless another target is given
+    gain_margin, phase_margin_deg, closed_loop_s, noise_peak, command_noise_std, speed_noise_std: see `Target`
+    filter_ratio   Td/Tf; a limit on noise takes a smaller one where that serves the goal
+    overshoot_percent  allowed after a setpoint step, by the choice of the setpoint weight
     goal           integral: the largest ki; load, setpoint: the least IAE after a unit step of either
     period         controller sample time, s, 0 for analogue: half of it is dead time;  compute_delay  s
     For a plant of one or two lags the setpoint weight is chosen and both step responses are predicted; else b is 1.
-    Raises Refused: target-out-of-range, unbounded, not-offered, no-settings-found, not-simulated (load, setpoint: a
-    response too long to follow) and those of `margins`.
+    Raises Refused: target-out-of-range, target-unreachable, unbounded, not-offered, no-settings-found, not-simulated
+    (load, setpoint: a response too long to follow) and those of `margins`.
     """
-    check_request(Ms, form, goal)
+    check_request(form, goal)
+    asked = (gain_margin, phase_margin_deg, closed_loop_s)
+    target = Target(
+        Ms=(None if any(a is not None for a in asked) else DEFAULT_MS) if Ms is None else Ms,
+        gain_margin=gain_margin,
+        phase_margin_deg=phase_margin_deg,
+        closed_loop_s=closed_loop_s,
+        noise_peak=noise_peak,
+        command_noise_std=command_noise_std,
+        speed_noise_std=speed_noise_std,
+    )
     held = held_plant(plant, period, compute_delay)
-    band, limits = find_band(held, form), Limits(Ms)
-    settings = (largest_ki if form == "pi" else largest_ki_pid)(band, limits)
-    if goal != "integral":
-        settings = least_iae(band, limits, goal, settings)
-    timing = {"period": period, "compute_delay": compute_delay}
-    found = margins(held.plant, settings, **timing)
-    settings, predicted, findings = rehearse(plant, settings, period, compute_delay)
-    because = {
-        "integral": f"The largest integral gain, {settings.ki:.4g}, with Ms and Mt at most {Ms:g}.",
-        "load": f"The least integrated absolute error after a load step, with Ms and Mt at most {Ms:g}.",
-        "setpoint": f"The least integrated absolute error after a setpoint step, with Ms and Mt at most {Ms:g}.",
+    settings, _ = optimum(held, target, form, goal, filter_ratio)
+    found = margins(held.plant, settings, period=period, compute_delay=compute_delay)
+    settings, predicted, findings = rehearse(plant, settings, period, compute_delay, overshoot_percent)
+    return Tuning(METHODS[goal], form, settings, found, predicted, findings, _because(goal, settings, target))
+
+
+def optimum(held: HeldPlant, target: Target, form: str, goal: str, ratio: float) -> tuple[PidSettings, Limits]:
+    """The best settings for a goal under a target, and the limits on abs(S), abs(T) and abs(C F S) that they keep."""
+    band = find_band(held, form, bounded=target.bounds)
+
+    def best(limits: Limits) -> PidSettings:
+        settings = (largest_ki if form == "pi" else largest_ki_pid)(band, limits)
+        return settings if goal == "integral" else least_iae(band, limits, goal, settings)
+
+    gain = float(abs(band.plant[0]))
+    if form == "pi" or not target.bounds:
+        return solve(target, held, gain, ratio, best)
+    found = []
+    # A limit on noise may be met best by a longer filter.
+    ratios = [ratio, *(r for r in LONGER if r < ratio)]
+    refused: Refused | None = None
+    for one in ratios:
+        try:
+            settings, limits = solve(target, held, gain, one, best)
+            found.append((_worth(band, settings, goal, one), settings, limits))
+        except Refused as error:
+            refused = error
+    if not found:
+        assert refused is not None
+        raise refused
+    _, settings, limits = max(found, key=lambda f: f[0])
+    return settings, limits
+
+
+def _worth(band: Band, settings: PidSettings, goal: str, ratio: float) -> float:
+    """What a goal makes of settings, more is better."""
+    if goal == "integral":
+        return float(np.log(settings.ki))
+    return -find_iae(band, settings, goal, ratio)(logarithms(settings))[0]
+
+
+def _because(goal: str, settings: PidSettings, target: Target) -> str:
+    what = {
+        "integral": f"The largest integral gain, {settings.ki:.4g}",
+        "load": "The least integrated absolute error after a load step",
+        "setpoint": "The least integrated absolute error after a setpoint step",
     }[goal]
-    return Tuning(METHODS[goal], form, settings, found, predicted, findings, because)
+    return f"{what}, with {target.says}."
 
 
 def rehearse(
-    plant: Any, settings: PidSettings, period: float, compute_delay: float
+    plant: Any,
+    settings: PidSettings,
+    period: float,
+    compute_delay: float,
+    overshoot_percent: float = OVERSHOOT,
 ) -> tuple[PidSettings, Predicted | None, tuple[Finding, ...]]:
     """Setpoint weight, at most the one given, and predicted steps of a stable loop; none for a plant not simulated."""
     model = lagged(plant)
@@ -90,20 +155,15 @@ def rehearse(
     try:
         rehearsal = Rehearsal(model, settings, period, compute_delay)
         rehearsal.check()
-        b, advice = weight_of(rehearsal)
+        b, advice = weight_of(rehearsal, overshoot_percent)
         b = min(b, settings.b)
     except Refused as error:
         return settings, None, (Finding(error.code, "error", error.message),)
     return replace(settings, b=b), rehearsal.predicted(b), (advice,) if advice else ()
 
 
-def check_request(Ms: float, form: str, goal: str) -> None:
-    """Refuse a target, form or goal that has no answer here."""
-    if not 1.0 < Ms <= LOOSEST:
-        raise Refused(
-            "target-out-of-range",
-            f"Ms must be above 1 and at most {LOOSEST:g}; 1.2 (calm) to 2 (sharp) is sensible. Got {Ms:g}.",
-        )
+def check_request(form: str, goal: str) -> None:
+    """Refuse a form or goal that has no answer here."""
     if form not in FORMS or goal not in GOALS:
         raise Refused(
             "not-offered", f"form is one of {', '.join(FORMS)}; goal one of {', '.join(GOALS)}; got {form}, {goal}."
