@@ -5,7 +5,8 @@ from ident.estimate import Fit
 from ident.findings import Finding
 from ident.judge import fit
 from ident.loop import Margins, PidSettings, margins
-from ident.plants import Arx, Fopdt, Sopdt, UnderdampedSopdt
+from ident.plants import Arx, Fopdt, Motor, Sopdt, UnderdampedSopdt, from_nameplate
+from ident.realise import CardReport, CardScale, Limits, Parts, Realisations, card_as_found, choose_card, realise
 from ident.record import LoopRecord, Preview, preview, read_csv
 from ident.report import Report, TuningReport, analyse, summary
 from ident.tune import Proposals, Tuning, propose, tune
@@ -13,22 +14,28 @@ from ident.watch import Drift, MarginDrift, Night, ParameterDrift, PracticalSize
 
 __all__ = [
     "Arx",
+    "CardReport",
+    "CardScale",
     "Drift",
     "Finding",
     "Fit",
     "Fopdt",
     "IdentError",
+    "Limits",
     "LoopRecord",
     "MarginDrift",
     "Margins",
+    "Motor",
     "Night",
     "NotIdentifiable",
     "ParameterDrift",
+    "Parts",
     "PidSettings",
     "PracticalSize",
     "Preview",
     "Proposals",
     "ReadError",
+    "Realisations",
     "Refused",
     "Report",
     "Sopdt",
@@ -36,13 +43,17 @@ __all__ = [
     "TuningReport",
     "UnderdampedSopdt",
     "analyse",
+    "card_as_found",
+    "choose_card",
     "drift",
     "drift_history",
     "fit",
+    "from_nameplate",
     "margins",
     "preview",
     "propose",
     "read_csv",
+    "realise",
     "summary",
     "tune",
 ]

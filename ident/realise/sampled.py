@@ -1,0 +1,63 @@
+"""Sampled: the margins that a digital controller really has, and what sampling and rounding cost."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass, replace
+from typing import Any
+
+from ident.errors import Refused
+from ident.loop import Margins, PidSettings, margins
+from ident.loop.controller import Controller
+from ident.loop.held_plant import held_plant
+from ident.loop.law import HoldEquivalent
+from ident.loop.margins import loop_margins
+from ident.loop.sweep import OpenLoop
+from ident.plants import Arx, Fopdt, Sopdt, UnderdampedSopdt
+
+
+@dataclass(frozen=True, slots=True)
+class Cost:
+    """What sampling costs.
+
+    continuous   the settings on the plant, without hold or computing delay
+    add_half     the same with h/2 and the computing delay as dead time
+    exact        the difference equation on the plant behind its hold; None where `because` says why
+    Ms_lost      exact Ms less continuous Ms
+    """
+
+    continuous: Margins
+    add_half: Margins
+    exact: Margins | None
+    Ms_lost: float | None
+    because: str
+
+
+def sampling_cost(plant: Any, settings: PidSettings, feedback: Controller, h: float, compute_delay: float) -> Cost:
+    """Margins without sampling, with the rule of thumb, and of the exact sampled loop; h, compute_delay in s."""
+    continuous = margins(plant, settings)
+    add_half = margins(plant, settings, period=h, compute_delay=compute_delay)
+    try:
+        exact = sampled_margins(plant, feedback, h, compute_delay)
+    except Refused as error:
+        return Cost(continuous, add_half, None, None, error.message)
+    lost = None if exact.Ms is None or continuous.Ms is None else exact.Ms - continuous.Ms
+    return Cost(continuous, add_half, exact, lost, "")
+
+
+def sampled_margins(plant: Any, feedback: Controller, h: float, compute_delay: float = 0.0) -> Margins:
+    """Margins of C(z) with the plant behind a zero-order hold, exact for lags with dead time.
+
+    plant  Fopdt, Sopdt, UnderdampedSopdt, an Arx sampled at h, or a fit of one
+    Raises Refused sampled-plant-unknown.
+    """
+    model = plant if hasattr(plant, "frequency_response") else getattr(plant, "model", plant)
+    if isinstance(model, Fopdt | Sopdt | UnderdampedSopdt):
+        held = HoldEquivalent(replace(model, L=model.L + compute_delay), h)
+        return loop_margins(OpenLoop(held_plant(held), feedback))
+    if isinstance(model, Arx) and abs(model.h - h) <= 1e-9 * h:
+        return loop_margins(OpenLoop(held_plant(model, compute_delay=compute_delay), feedback))
+    raise Refused(
+        "sampled-plant-unknown",
+        "The exact sampled loop is known for plants of one or two lags, and for a difference equation at the "
+        "controller's own period; use the margins with half a period added.",
+    )
