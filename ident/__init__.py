@@ -9,7 +9,7 @@ from ident.plants import Arx, Fopdt, Motor, Sopdt, UnderdampedSopdt, from_namepl
 from ident.realise import CardReport, CardScale, Limits, Parts, Realisations, card_as_found, choose_card, realise
 from ident.record import LoopRecord, Preview, preview, read_csv
 from ident.report import Report, TuningReport, analyse, summary
-from ident.tune import Proposals, Tuning, propose, tune
+from ident.tune import Proposals, Rule, Tuning, propose, tune
 from ident.watch import Drift, MarginDrift, Night, ParameterDrift, PracticalSize, drift, drift_history
 
 __all__ = [
@@ -38,6 +38,7 @@ __all__ = [
     "Realisations",
     "Refused",
     "Report",
+    "Rule",
     "Sopdt",
     "Tuning",
     "TuningReport",

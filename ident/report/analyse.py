@@ -17,7 +17,7 @@ from ident.report.curves import curves
 from ident.report.installed import installed_loop, installed_report
 from ident.report.log import log_info, record_info
 from ident.report.shape import FitReport, Report, TuningReport
-from ident.tune import Proposals, propose, worst_case
+from ident.tune import Cloud, Proposals, cloud, propose
 
 PLANTS = 200  # drawn from the fit for the worst case
 
@@ -32,6 +32,7 @@ def analyse(
     goal: str = "integral",
     period: float | None = None,
     compute_delay: float = 0.0,
+    robust: bool | None = None,
     seed: int = 0,
     subspace: bool = True,
     installed: PidSettings | None = None,
@@ -45,6 +46,8 @@ def analyse(
     period         s, of the controller; None: as seen in the log, else its sample time,
                    with a finding; 0 for an analogue controller
     compute_delay  s, from reading the speed to writing the command
+    robust         True: settings that hold the target on 95 % of the plants that the log allows; None: where the log
+                   leaves the plant open (95 % of them stay only below 1.1 times the target); False: never
     seed           of every random draw: the same record and options give the same report
     subspace       cross-check the model by a subspace method too, which is slow to load the first time
     installed      settings told to be in the machine; compared with those that a closed-loop log shows
@@ -60,6 +63,7 @@ def analyse(
         "goal": goal,
         "period": period,
         "compute_delay": compute_delay,
+        "robust": robust,
         "seed": seed,
     }
     found: list[Finding] = []
@@ -69,11 +73,18 @@ def analyse(
     recovered, seen = recover(record)
     held, assumed = _period(record, period, recovered)
     proposal: Proposals | None = None
+    allowed: Cloud | None = None
     checked = CrossChecks((), ())
     if fitted is not None:
         checked = cross_check(record, fitted, subspace=subspace)
         found += [*assumed, *checked.findings]
-        proposal, untunable = _propose(fitted, Ms=Ms, form=form, goal=goal, period=held, delay=compute_delay)
+        timing = {"period": held, "compute_delay": compute_delay}
+        drawn = plausible(fitted, np.random.default_rng(seed), PLANTS)
+        lag = float(getattr(fitted.model, "T", 0.0) or getattr(fitted.model, "T1", 0.0) or held)
+        allowed = cloud(drawn, delay=fitted.model.dead_time, lag=lag, **timing)
+        proposal, untunable = _propose(
+            fitted, Ms=Ms, form=form, goal=goal, period=held, delay=compute_delay, allowed=allowed, robust=robust
+        )
         found += untunable
     else:
         assert refused is not None
@@ -82,16 +93,13 @@ def analyse(
     operated = operations(record, recovered)
     found += [*mixed(record, operated), *seen, *compared]
     moved = excitation(record, refused)
-    drawn = plausible(fitted, np.random.default_rng(seed), PLANTS) if fitted else ()
     tunings = tuple(
         TuningReport(
             t.method,
             t.form,
             t.settings,
             t.margins,
-            worst_case(drawn, t.settings, delay=fitted.model.dead_time, period=held, compute_delay=compute_delay)
-            if fitted and t.margins.stable
-            else None,
+            allowed.worst_case(t.settings) if allowed and t.margins.stable else None,
             t.predicted,
             {},
             t.findings,
@@ -121,6 +129,7 @@ def analyse(
         cautions=CAUTIONS,
         cross_checks=checked.checks,
         options=options,
+        rules=proposal.rules if proposal else (),
     )
 
 
@@ -159,12 +168,29 @@ def _period(record: LoopRecord, period: float | None, recovered: Recovered | Non
 
 
 def _propose(
-    fitted: Fit, *, Ms: float, form: str, goal: str, period: float, delay: float
+    fitted: Fit,
+    *,
+    Ms: float,
+    form: str,
+    goal: str,
+    period: float,
+    delay: float,
+    allowed: Cloud | None,
+    robust: bool | None,
 ) -> tuple[Proposals | None, list[Finding]]:
     try:
-        return propose(fitted.model, Ms=Ms, form=form, goal=goal, period=period, compute_delay=delay), []
+        return propose(
+            fitted.model,
+            Ms=Ms,
+            form=form,
+            goal=goal,
+            period=period,
+            compute_delay=delay,
+            allowed=allowed,
+            robust=robust,
+        ), []
     except Refused as error:
-        if error.code != "unbounded":
+        if error.code not in ("unbounded", "target-unreachable"):
             raise
         # A property of this plant, not of the request: the model still stands.
         return None, [Finding(error.code, "warning", error.message, error.evidence)]

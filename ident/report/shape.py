@@ -13,7 +13,7 @@ from ident.evidence import Covariance, Estimate, Statistics
 from ident.findings import Finding
 from ident.judge import Advice, CrossCheck, Excitation, Operation
 from ident.loop import Margins, PidSettings
-from ident.tune import Predicted, WorstCase
+from ident.tune import Predicted, Rule, WorstCase
 
 REPORT_VERSION = "1"
 
@@ -192,4 +192,5 @@ class Report:
     cautions: tuple[str, ...]
     cross_checks: tuple[CrossCheck, ...] = ()
     options: dict[str, float | int | str | None] = field(default_factory=dict)
+    rules: tuple[Rule, ...] = ()
     report_version: str = REPORT_VERSION

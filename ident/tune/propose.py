@@ -1,57 +1,189 @@
-"""Propose: the optimum beside the rule that people know, one of them recommended, and why."""
+"""Propose: the optimum beside the rules that people know, one of them recommended, and why."""
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from typing import Any
 
+from ident.errors import Refused
 from ident.findings import Finding
-from ident.loop import Margins, margins
+from ident.loop import Margins, PidSettings, margins
+from ident.loop.held_plant import held_plant
 from ident.plants import Fopdt, Sopdt
+from ident.tune.band import find_band
+from ident.tune.ellipses import FILTER, Limits
+from ident.tune.hold import hold, wide
+from ident.tune.no_cliff import no_cliff
+from ident.tune.predicted import Predicted
+from ident.tune.rules import Rule, published
+from ident.tune.setpoint_weight import OVERSHOOT
 from ident.tune.simc import simc
-from ident.tune.tuning import Tuning, rehearse, tune
-
-TOLERANCE = 0.005  # above the target, in Ms or Mt
+from ident.tune.target import TOLERANCE, Target, target_of
+from ident.tune.tuning import Tuning, optimum, rehearse, tune
+from ident.tune.worst_case import Cloud
 
 
 @dataclass(frozen=True, slots=True)
 class Proposals:
-    """Tunings of one plant, the index of the one to take (None: no tuning at all), and one sentence why."""
+    """Tunings of one plant, the index of the one to take (None: no tuning at all), and one sentence why.
+
+    rules   published rules for the same form, for comparison
+    """
 
     tunings: tuple[Tuning, ...]
     recommended: int | None
     because: str
+    rules: tuple[Rule, ...] = ()
+
+
+@dataclass(frozen=True, slots=True)
+class _Asked:
+    """What every proposal for one request shares."""
+
+    plant: Any
+    target: Target
+    form: str
+    goal: str
+    period: float
+    compute_delay: float
+    overshoot_percent: float
+
+    @property
+    def timing(self) -> dict[str, float]:
+        return {"period": self.period, "compute_delay": self.compute_delay}
+
+    def rehearse(self, settings: PidSettings) -> tuple[PidSettings, Predicted | None, tuple[Finding, ...]]:
+        """Setpoint weight and predicted steps."""
+        return rehearse(self.plant, settings, self.period, self.compute_delay, self.overshoot_percent)
 
 
 def propose(
     plant: Any,
     *,
-    Ms: float = 1.6,
+    Ms: float | None = None,
     form: str = "pi",
     goal: str = "integral",
     period: float = 0.0,
     compute_delay: float = 0.0,
+    filter_ratio: float = FILTER,
+    overshoot_percent: float = OVERSHOOT,
+    allowed: Cloud | None = None,
+    robust: bool | None = None,
+    **wanted: float | None,
 ) -> Proposals:
-    """The settings best for the goal under the target and, for a plant of real lags, SIMC with its margins.
+    """The settings best for the goal under the target, SIMC (for a plant of real lags) and other published rules.
 
-    Arguments and errors as for `tune`. What misses the target is shown with a finding, never recommended.
+    Arguments and errors as for `tune`; wanted: its other targets. For a PID of the largest ki the settings without the
+    derivative cliff stand first and are preferred. With the plants that the log allows (`allowed`), settings that hold
+    the target on 95 % of them come before all: robust True; None: where 95 % stay only below 1.1 times the target.
+    What misses the target is shown with a finding, never recommended.
     """
-    best = tune(plant, Ms=Ms, form=form, goal=goal, period=period, compute_delay=compute_delay)
-    model = getattr(plant, "model", plant)
-    reduced = half_rule(model)
+    target = target_of(Ms, **wanted)
+    asked = _Asked(getattr(plant, "model", plant), target, form, goal, period, compute_delay, overshoot_percent)
+    best = tune(
+        plant,
+        Ms=Ms,
+        form=form,
+        goal=goal,
+        period=period,
+        compute_delay=compute_delay,
+        filter_ratio=filter_ratio,
+        overshoot_percent=overshoot_percent,
+        **wanted,
+    )
+    calm = _no_cliff(asked, best, filter_ratio)
+    held = _held(asked, calm or best, filter_ratio, allowed, robust)
+    first = [found for found in (held, calm, best) if found]
+    reduced = half_rule(asked.plant)
     if reduced is None:
-        sound = _sound(best, Ms)
-        return Proposals((best,), 0 if sound else None, best.because if sound else "The only proposal does not settle.")
-    rule = _simc(model, reduced, Ms, period, compute_delay)
-    if _sound(best, Ms):
-        return Proposals((best, rule), 0, _compare(best, rule, Ms))
-    if _sound(rule, Ms):
-        return Proposals((best, rule), 1, f"The sampled loop does not settle with the optimum; {rule.because}")
-    return Proposals((best, rule), None, "Neither proposal settles at this period within the target.")
+        k = next((k for k, one in enumerate(first) if _sound(one, target)), None)
+        return Proposals(tuple(first), k, first[k].because if k is not None else "The only proposal does not settle.")
+    rules = published(asked.plant, reduced, target.Ms or _reached(best), form, **asked.timing)
+    try:
+        rule = _simc(asked, reduced)
+    except Refused:  # no dead time at all: the rule needs some
+        k = next((k for k, one in enumerate(first) if _sound(one, target)), None)
+        return Proposals(tuple(first), k, first[k].because if k is not None else "No proposal settles.", rules)
+    tunings = (*first, rule)
+    k = next((k for k, one in enumerate(tunings) if _sound(one, target)), None)
+    if k is None:
+        return Proposals(tunings, None, "No proposal settles at this period within the target.", rules)
+    if tunings[k] is rule:
+        because = f"The sampled loop does not settle with the optimum; {rule.because}"
+    else:
+        because = _compare(tunings[k], rule, target)
+    return Proposals(tunings, k, because, rules)
 
 
-def _sound(tuning: Tuning, Ms: float) -> bool:
-    return meets(tuning.margins, Ms) and not any(f.severity == "error" for f in tuning.findings)
+def _reached(best: Tuning) -> float:
+    return max(best.margins.Ms or 1.0, best.margins.Mt or 1.0)
+
+
+def _no_cliff(asked: _Asked, best: Tuning, ratio: float) -> Tuning | None:
+    """The same PID with less derivative action, where a little more of it would cost the margin."""
+    if asked.form != "pid" or asked.goal != "integral" or asked.target.Ms is None or asked.target.bounds:
+        return None
+    held = held_plant(asked.plant, **asked.timing)
+    settings = no_cliff(find_band(held, "pid"), Limits(asked.target.Ms, ratio=ratio), best.settings)
+    if settings is None:
+        return None
+    share = 100.0 * (1.0 - settings.ki / best.settings.ki)
+    found = margins(asked.plant, settings, **asked.timing)
+    settings, predicted, findings = rehearse(
+        asked.plant, settings, asked.period, asked.compute_delay, asked.overshoot_percent
+    )
+    return Tuning(
+        "largest-ki-calm-derivative",
+        "pid",
+        settings,
+        found,
+        predicted,
+        findings,
+        f"It gives up {share:.0f} % of the integral gain for a loop that keeps its margin where the derivative acts a "
+        f"little more than meant, with {asked.target.says}.",
+    )
+
+
+def _held(asked: _Asked, nominal: Tuning, ratio: float, allowed: Cloud | None, robust: bool | None) -> Tuning | None:
+    """Settings that hold the target on 95 % of the allowed plants; None where not wanted or not needed."""
+    target = asked.target
+    if allowed is None or target.Ms is None or robust is False:
+        return None
+    M = target.Ms
+    if not (robust or wide(allowed, nominal.settings, M)):
+        return None
+    held = held_plant(asked.plant, **asked.timing)
+
+    def best(limit: float) -> PidSettings:
+        return optimum(held, replace(target, Ms=limit), asked.form, asked.goal, ratio)[0]
+
+    try:
+        settings = hold(allowed, M, best)
+    except Refused:
+        if robust:
+            raise
+        return None
+    found = margins(asked.plant, settings, **asked.timing)
+    settings, predicted, findings = rehearse(
+        asked.plant, settings, asked.period, asked.compute_delay, asked.overshoot_percent
+    )
+    share = 100.0 * (1.0 - settings.ki / nominal.settings.ki)
+    return Tuning(
+        "held-for-95-percent",
+        asked.form,
+        settings,
+        found,
+        predicted,
+        findings,
+        f"It keeps Ms and Mt at most {M:g} on 95 % of the plants that this log allows, for "
+        f"{max(share, 0.0):.0f} % less integral gain than the settings for the fitted plant alone.",
+    )
+
+
+def _sound(tuning: Tuning, target: Target) -> bool:
+    return target.kept_by(tuning.margins) and not any(
+        f.severity == "error" or f.code == "target-missed" for f in tuning.findings
+    )
 
 
 def meets(found: Margins, Ms: float) -> bool:
@@ -73,16 +205,20 @@ def half_rule(plant: Any) -> Fopdt | None:
     return None
 
 
-def _simc(model: Any, reduced: Fopdt, Ms: float, period: float, compute_delay: float) -> Tuning:
-    timing = {"period": period, "compute_delay": compute_delay}
-    settings = simc(reduced.K, reduced.T, reduced.L + period / 2.0 + compute_delay)
-    found = margins(model, settings, **timing)
+def _simc(asked: _Asked, reduced: Fopdt) -> Tuning:
+    model, target = asked.plant, asked.target
+    Tc = target.closed_loop_s
+    settings = simc(reduced.K, reduced.T, reduced.L + asked.period / 2.0 + asked.compute_delay, Tc=Tc)
+    found = margins(model, settings, **asked.timing)
     findings: tuple[Finding, ...] = ()
     predicted = None
     if found.stable:
-        settings, predicted, findings = rehearse(model, settings, period, compute_delay)
-    if not meets(found, Ms):
-        findings = (*findings, _missed(found, Ms))
+        settings, predicted, findings = rehearse(
+            model, settings, asked.period, asked.compute_delay, asked.overshoot_percent
+        )
+    if not (target.kept_by(found) and target.quiet(held_plant(model, **asked.timing), settings)):
+        findings = (*findings, _missed(found, target))
+    what = "equal to the dead time in the loop" if Tc is None else f"{Tc:g} s"
     return Tuning(
         "simc",
         "pi",
@@ -90,24 +226,26 @@ def _simc(model: Any, reduced: Fopdt, Ms: float, period: float, compute_delay: f
         found,
         predicted,
         findings,
-        "The SIMC rule with the closed-loop time constant equal to the dead time in the loop (Skogestad 2003).",
+        f"The SIMC rule with the closed-loop time constant {what} (Skogestad 2003).",
     )
 
 
-def _missed(found: Margins, Ms: float) -> Finding:
+def _missed(found: Margins, target: Target) -> Finding:
     what = f"has Ms {found.Ms:.3f} and Mt {found.Mt:.3f}" if found.stable else "is unstable"
+    asked = f"{target.Ms:g}" if target.alone else target.says
     return Finding(
         "target-missed",
         "warning",
-        f"With these settings the loop {what}; the target is {Ms:g}.",
-        {"Ms": found.Ms, "Mt": found.Mt, "target": Ms},
+        f"With these settings the loop {what}; the target is {asked}.",
+        {"Ms": found.Ms, "Mt": found.Mt, "target": target.Ms},
     )
 
 
-def _compare(best: Tuning, rule: Tuning, Ms: float) -> str:
-    if best.method != "largest-ki":
+def _compare(best: Tuning, rule: Tuning, target: Target) -> str:
+    if best.method != "largest-ki" or not target.alone:
         return best.because
-    if not _sound(rule, Ms):
+    Ms = target.Ms
+    if not _sound(rule, target):
         return (
             f"It has the largest integral gain, {best.settings.ki:.4g}, with Ms and Mt at most {Ms:g}; "
             "the SIMC rule does not on this plant."

@@ -14,11 +14,13 @@ import numpy as np
 
 from ident.errors import Refused
 from ident.loop.held_plant import HeldPlant
-from ident.loop.margins import control_sensitivity, loop_margins
+from ident.loop.margins import Margins, control_sensitivity, loop_margins
 from ident.loop.settings import PidSettings
 from ident.loop.sweep import OpenLoop, sweep
 from ident.tune.ellipses import Limits
 
+DEFAULT_MS = 1.6
+TOLERANCE = 0.005  # above the target, in Ms or Mt
 CALMEST, SHARPEST = 1.05, 3.0  # of Ms, within which other targets are looked for
 LOOSEST = 5.0  # beyond, a loop is so close to unstable that no target means anything
 TURNS, CLOSE = 40, 1e-3  # of a knob; relative
@@ -79,6 +81,34 @@ class Target:
         return self.noise_peak is not None or self.command_noise_std is not None
 
     @property
+    def alone(self) -> bool:
+        """Whether Ms is all that is asked."""
+        rest = (self.gain_margin, self.phase_margin_deg, self.closed_loop_s, self.noise_peak, self.command_noise_std)
+        return self.Ms is not None and all(one is None for one in rest)
+
+    def kept_by(self, found: Margins) -> bool:
+        """Whether a loop is stable with the margins asked for, Ms and Mt within TOLERANCE."""
+        if not found.stable or found.Ms is None or found.Mt is None:
+            return False
+        return (
+            max(found.Ms, found.Mt) <= (SHARPEST if self.Ms is None else self.Ms) + TOLERANCE
+            and (self.gain_margin is None or (found.gain_margin or np.inf) >= self.gain_margin * (1.0 - CLOSE))
+            and (
+                self.phase_margin_deg is None
+                or (found.phase_margin_deg or np.inf) >= self.phase_margin_deg * (1.0 - CLOSE)
+            )
+        )
+
+    def quiet(self, held: HeldPlant, settings: PidSettings) -> bool:
+        """Whether a stable loop keeps the limits on noise."""
+        if self.noise_peak is not None and noise_peak(held, settings) > self.noise_peak * (1.0 + CLOSE):
+            return False
+        if self.command_noise_std is None or self.speed_noise_std is None:
+            return True
+        allowed = self.command_noise_std / self.speed_noise_std
+        return noise_gain(held, settings, sample_step(held)) <= allowed * (1.0 + CLOSE)
+
+    @property
     def says(self) -> str:
         """The target in words."""
         parts = []
@@ -114,6 +144,25 @@ def solve(target: Target, held: HeldPlant, gain: float, ratio: float, best: Best
         allowed = target.command_noise_std / target.speed_noise_std
         settings, limits = _quiet(allowed, held, 1.0 / gain, limits, settings, best)
     return settings, limits
+
+
+def target_of(Ms: float | None, **wanted: float | None) -> Target:
+    """The target of a request: Ms 1.6 where neither it nor a margin nor a closed-loop time is given."""
+    others = (wanted.get(name) for name in ("gain_margin", "phase_margin_deg", "closed_loop_s"))
+    if Ms is None and all(one is None for one in others):
+        Ms = DEFAULT_MS
+    return Target(Ms, **wanted)
+
+
+def sample_step(held: HeldPlant) -> float:
+    """s between readings of the speed. Raises Refused target-out-of-range where that is not known."""
+    step = 2.0 * held.lag if held.lag > 0 else float(np.pi / held.w_max)
+    if step > 0.0:
+        return step
+    raise Refused(
+        "target-out-of-range",
+        "The noise of the command depends on how often the speed is read: give the controller's period.",
+    )
 
 
 def noise_gain(held: HeldPlant, settings: PidSettings, step: float) -> float:
@@ -175,12 +224,7 @@ def _speed_limits(Tc: float, held: HeldPlant, limits: Limits, best: Best) -> Lim
 def _quiet(
     allowed: float, held: HeldPlant, least: float, limits: Limits, settings: PidSettings, best: Best
 ) -> tuple[PidSettings, Limits]:
-    step = 2.0 * held.lag if held.lag > 0 else np.pi / held.w_max
-    if not step > 0:
-        raise Refused(
-            "target-out-of-range",
-            "The noise of the command depends on how often the speed is read: give the controller's period.",
-        )
+    step = sample_step(held)
 
     def spare(knob: float) -> float:
         return float(np.log(allowed / noise_gain(held, best(replace(limits, noise=knob)), step)))

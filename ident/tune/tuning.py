@@ -20,12 +20,11 @@ from ident.tune.least_iae import least_iae, logarithms
 from ident.tune.predict import Rehearsal, lagged
 from ident.tune.predicted import Predicted
 from ident.tune.setpoint_weight import OVERSHOOT, weight_of
-from ident.tune.target import Target, solve
+from ident.tune.target import Target, solve, target_of
 
 FORMS = ("pi", "pid")
 GOALS = ("integral", "load", "setpoint")
 METHODS = {"integral": "largest-ki", "load": "least-iae-load", "setpoint": "least-iae-setpoint"}
-DEFAULT_MS = 1.6
 LONGER = (4.0, 2.0, 1.0)  # Td/Tf tried where noise is limited
 
 
@@ -33,7 +32,8 @@ LONGER = (4.0, 2.0, 1.0)  # Td/Tf tried where noise is limited
 class Tuning:
     """One proposal.
 
-    method     largest-ki | least-iae-load | least-iae-setpoint | simc
+    method     largest-ki | largest-ki-calm-derivative | least-iae-load | least-iae-setpoint |
+               held-for-95-percent | simc
     form       pi | pid
     margins    of the loop with half the controller's period and the computing delay in it
     predicted  None where the plant is not one that is simulated
@@ -80,9 +80,8 @@ def tune(
     (load, setpoint: a response too long to follow) and those of `margins`.
     """
     check_request(form, goal)
-    asked = (gain_margin, phase_margin_deg, closed_loop_s)
-    target = Target(
-        Ms=(None if any(a is not None for a in asked) else DEFAULT_MS) if Ms is None else Ms,
+    target = target_of(
+        Ms,
         gain_margin=gain_margin,
         phase_margin_deg=phase_margin_deg,
         closed_loop_s=closed_loop_s,

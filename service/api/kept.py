@@ -18,8 +18,7 @@ from service.api.problems import documented
 from service.api.state import state
 from service.errors import Problem, ProblemError
 from service.store import KeptReport, Store
-from service.work.options import Options
-from service.work.retune import Retuned, retuned_bytes
+from service.work.retune import Retarget, Retuned, retuned_bytes
 
 router = APIRouter(prefix="/v1", tags=["reports"])
 
@@ -36,6 +35,30 @@ class Wanted(BaseModel):
     goal: Literal["integral", "load", "setpoint"] | None = None
     period: float | None = Field(
         default=None, ge=0.0, le=86_400.0, allow_inf_nan=False, description="Of the controller, s; 0 if analogue."
+    )
+    gain_margin: float | None = Field(
+        default=None, gt=1.0, le=1000.0, allow_inf_nan=False, description="At least this factor."
+    )
+    phase_margin_deg: float | None = Field(
+        default=None, gt=0.0, lt=90.0, allow_inf_nan=False, description="At least this, degrees."
+    )
+    closed_loop_s: float | None = Field(
+        default=None, gt=0.0, allow_inf_nan=False, description="Time constant of the closed loop, s."
+    )
+    noise_peak: float | None = Field(
+        default=None,
+        gt=0.0,
+        allow_inf_nan=False,
+        description="Command units per speed unit of measurement noise, at any frequency, at most.",
+    )
+    command_noise_std: float | None = Field(
+        default=None,
+        gt=0.0,
+        allow_inf_nan=False,
+        description="Standard deviation of the command, command units, at most, given the noise seen in the log.",
+    )
+    overshoot_percent: float | None = Field(
+        default=None, ge=0.0, le=100.0, allow_inf_nan=False, description="Allowed after a setpoint step."
     )
 
 
@@ -70,7 +93,7 @@ async def post_tunings(request: Request, id: str, wanted: Annotated[Wanted, Body
     service = state(request)
     with service.workers.admit():
         _, body = await asyncio.to_thread(_found, service.store, id)
-        options = Options(**wanted.model_dump(exclude_none=True))
+        options = Retarget(**wanted.model_dump(exclude_none=True))
         answer = await service.workers.run(body, options, retuned_bytes)
     if isinstance(answer, Problem):
         raise ProblemError.of(answer)

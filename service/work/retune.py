@@ -2,7 +2,9 @@
 
 from __future__ import annotations
 
+from collections.abc import Mapping
 from dataclasses import dataclass
+from typing import Any
 
 from pydantic import TypeAdapter
 
@@ -25,8 +27,11 @@ class Retuned:
     tunings: tuple[ident.TuningReport, ...]
     recommended: int | None
     recommended_because: str
+    rules: tuple[ident.Rule, ...] = ()
 
 
+INSTEAD_OF_MS = ("gain_margin", "phase_margin_deg", "closed_loop_s")
+NOT_IN_REPORT = (*INSTEAD_OF_MS, "noise_peak", "command_noise_std", "overshoot_percent")
 _retuned = TypeAdapter(Retuned)
 
 
@@ -36,6 +41,17 @@ def retuned_bytes(report: bytes, options: Options) -> bytes | Problem:
     What the options leave open is as in the report; those of reading and fitting do not count.
     """
     return told(lambda: _retuned.dump_json(_retune(report, options)))
+
+
+class Retarget(Options):
+    """Options of another proposal: targets other than Ms besides."""
+
+    gain_margin: float | None = None
+    phase_margin_deg: float | None = None
+    closed_loop_s: float | None = None
+    noise_peak: float | None = None
+    command_noise_std: float | None = None
+    overshoot_percent: float | None = None
 
 
 def _retune(report: bytes, given: Options) -> Retuned:
@@ -48,6 +64,10 @@ def _retune(report: bytes, given: Options) -> Retuned:
     }
     period = numbers_of(parsed).period_s if asked["period"] is None else asked["period"]
     delay = before["compute_delay"]
+    more: dict[str, Any] = {name: value for name in NOT_IN_REPORT if (value := getattr(given, name, None)) is not None}
+    if "Ms" not in given.model_fields_set and any(name in more for name in INSTEAD_OF_MS):
+        asked["Ms"] = None
+    noise: dict[str, Any] = {"speed_noise_std": noise_seen(parsed)} if "command_noise_std" in more else {}
     found = ident.propose(
         plant,
         Ms=asked["Ms"],
@@ -55,9 +75,17 @@ def _retune(report: bytes, given: Options) -> Retuned:
         goal=asked["goal"],
         period=period or 0.0,
         compute_delay=delay,
+        **more,
+        **noise,
     )
     tunings = tuple(
         ident.TuningReport(t.method, t.form, t.settings, t.margins, None, t.predicted, {}, t.findings)
         for t in found.tunings
     )
-    return Retuned({**asked, "compute_delay": delay}, tunings, found.recommended, found.because)
+    options = {**asked, **more, **noise, "compute_delay": delay}
+    return Retuned(options, tunings, found.recommended, found.because, found.rules)
+
+
+def noise_seen(report: Mapping[str, Any]) -> float:
+    """std of the noise of the measured speed: what the fit leaves, which holds the encoder's quantisation too."""
+    return float(report["fits"][report["selected"]]["statistics"]["rms_residual"])

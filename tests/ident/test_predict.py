@@ -274,11 +274,12 @@ def test_what_does_not_settle_when_sampled_is_not_recommended() -> None:
     # the same backward differences, the sampled loop diverges.
     plant, period = Fopdt(245.0, 0.11, 0.0), 0.01
     proposal = propose(plant, period=period, form="pid", Ms=2.0)
-    best, rule = proposal.tunings
+    best, rule = (next(t for t in proposal.tunings if t.method == method) for method in ("largest-ki", "simc"))
     assert best.margins.stable
     assert best.predicted is None
     assert [(f.code, f.severity) for f in best.findings] == [("sampled-loop-unstable", "error")]
-    assert proposal.recommended == 1
+    assert proposal.recommended is not None
+    assert proposal.tunings[proposal.recommended].predicted is not None
     assert rule.predicted is not None
 
     s, n = best.settings, 200

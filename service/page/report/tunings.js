@@ -73,8 +73,17 @@ function allowed(report) {
       rows.map(({ method, worst_case: one }) => [word(METHODS, method), fixed(one.Ms_median, 3), fixed(one.Ms_p95, 3), withUnit(fixed(100 * one.unstable_share, 1), "%"), String(one.plants)]), { class: "stack" })];
 }
 
+function knownRules(report) {
+  if (!report.rules?.length) return null;
+  const pid = report.rules.some(({ settings }) => settings.Td > 0);
+  return h("details", { "data-testid": "rules" }, h("summary", {}, "Published rules on this plant, for comparison"),
+    table("Published rules and the margins they have here", ["Rule", symbol("Kp"), [symbol("Ti"), " (s)"], ...(pid ? [[symbol("Td"), " (s)"]] : []), symbol("Ms"), symbol("Mt"), "Gain margin", "Phase margin", "Delay margin", "Target"],
+      report.rules.map(({ method, settings, margins, meets_target }) => [word(METHODS, method), significant(settings.Kp), significant(settings.Ti), ...(pid ? [significant(settings.Td)] : []),
+        ...marginCells(margins), meets_target ? "met" : "missed"]), { class: "stack" }));
+}
+
 export function tunings(report) {
   if (!report.tunings.length && !report.installed) return null;
   return section("tunings", "Proposals", report.recommended === null ? report.recommended_because : ["Recommended: ", report.recommended_because],
-    proposals(report), inMachine(report), outcome(report), allowed(report));
+    proposals(report), inMachine(report), outcome(report), allowed(report), knownRules(report));
 }

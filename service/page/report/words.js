@@ -39,9 +39,21 @@ export const GOALS = { integral: "Largest integral gain", load: "Least error aft
 
 export const METHODS = {
   "largest-ki": "Largest integral gain within the target",
+  "largest-ki-calm-derivative": "Largest integral gain that forgives the derivative",
+  "held-for-95-percent": "Keeps the target on 95 % of the plants that the log allows",
   "least-iae-load": "Smallest error after a load step within the target",
   "least-iae-setpoint": "Smallest error after a setpoint step within the target",
   simc: "SIMC rule",
+  "improved-simc": "Improved SIMC",
+  amigo: "AMIGO",
+  lambda: "Lambda tuning",
+  imc: "IMC",
+  "ziegler-nichols-step": "Ziegler–Nichols, step response",
+  "ziegler-nichols-ultimate": "Ziegler–Nichols, ultimate gain",
+  "cohen-coon": "Cohen–Coon",
+  "chien-hrones-reswick-setpoint": "Chien–Hrones–Reswick, setpoint, no overshoot",
+  "chien-hrones-reswick-load": "Chien–Hrones–Reswick, load, no overshoot",
+  "tyreus-luyben": "Tyreus–Luyben",
 };
 
 export const OPERATIONS = {
