@@ -165,7 +165,9 @@ def _moved_by_rounding(spans: tuple[Answers, ...], law: Law, q: float) -> float:
         command = q * np.round(exact.command / q)
     rows = parts(law.form, exact.columns)
     gains = solve_normal(rows @ rows.T, rows @ command)
-    return float(np.max(np.abs(gains / np.array(law.gains) - 1.0)))
+    # A setpoint weight may be 0: it is measured by Kp.
+    size = [law.gains[1] if name == "Kp b" else gain for name, gain in law.named.items()]
+    return float(np.max(np.abs((gains - law.gains) / size)))
 
 
 def _coarse(spans: tuple[Answers, ...], rounding: float) -> bool:
