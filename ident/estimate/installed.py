@@ -27,13 +27,15 @@ from ident.record import LoopRecord
 from ident.record.segments import Flags, Floats
 from ident.record.segments import spans as runs_of
 
-MOST_ROWS = 20_000  # searched for the structure; the gains come from all rows
+MOST_ROWS = 3_000  # searched for the structure; the gains come from all rows
 UNEXPLAINED = 0.03  # of what the proportional part moves; more is another law, or another error than r - y
 ZERO = 3.0  # standard deviations within which a proportional part is none
 CLEAR = 10.0  # standard deviations that Kp and ki must stand from zero: known to 10 % or not at all
 SAME_WEIGHT = 0.02  # a setpoint weight this close to 1 is 1
 NO_DERIVATIVE = 0.1  # Td over the period; less cannot be told from the rule of integration
 MOVED = 0.03  # relative: what rounding the law's own command may move its gains by
+NEARLY = 6.0  # of the criterion
+PHASES = (0.0, 0.25, 0.5, 0.75)
 FEWEST_STEPS = 5  # that a run of a coarse command must go through
 COARSE = 0.05  # share of the command's moves that rounding makes up
 
@@ -132,9 +134,10 @@ def _simplest(look: Search, law: Law) -> Law | None:
         if form.startswith("PI") and "D" not in form and structure.filter_on == "derivative":
             structure = replace(structure, filter_on="none", pole=0.0)
         if (form, structure) == (best.form, best.structure):
-            # The same equation can be read with the filter on the derivative alone: so where the weights then agree.
+            # Nearly the same equation can be read with the filter on the derivative alone, which is the commoner one
+            # (common practice, no source): so where the log does not speak against it.
             twin = look.forms(replace(structure, filter_on="derivative")) if structure.filter_on == "speed" else None
-            if twin is None or twin.criterion >= best.criterion:
+            if twin is None or twin.criterion >= best.criterion + NEARLY:
                 break
             best = twin
             continue
@@ -160,14 +163,16 @@ def _moved_by_rounding(spans: tuple[Answers, ...], law: Law, q: float) -> float:
         start = np.concatenate([s.command[s.usable] for s in spans])
         level = np.add.reduceat(start, np.cumsum([0, *found.lengths[:-1]])) / found.lengths
         exact = exact.summed()
-        command = exact.levelled(q * np.round((exact.command + np.repeat(level, exact.runs)) / q))
+        # Where between two steps a run lies is not known: several places are tried.
+        tries = [exact.command + np.repeat(level + q * phase, exact.runs) for phase in PHASES]
+        rounded = np.array([exact.levelled(q * np.round(command / q)) for command in tries])
     else:
-        command = q * np.round(exact.command / q)
+        rounded = q * np.round(exact.command / q)[None]
     rows = parts(law.form, exact.columns)
-    gains = solve_normal(rows @ rows.T, rows @ command)
+    again = solve_normal(np.broadcast_to(rows @ rows.T, (len(rounded), len(rows), len(rows))), rounded @ rows.T)
     # A setpoint weight may be 0: it is measured by Kp.
-    size = [law.gains[1] if name == "Kp b" else gain for name, gain in law.named.items()]
-    return float(np.max(np.abs((gains - law.gains) / size)))
+    size = np.array([law.gains[1] if name == "Kp b" else gain for name, gain in law.named.items()])
+    return float(np.max(np.abs((again - law.gains) / size)))
 
 
 def _coarse(spans: tuple[Answers, ...], rounding: float) -> bool:

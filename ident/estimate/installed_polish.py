@@ -55,7 +55,7 @@ def slopes(spans: tuple[Answers, ...], law: Law) -> Slopes:
     return Slopes(np.vstack(jacobian), command - gains @ rows, tuple(free), runs)
 
 
-def polish(spans: tuple[Answers, ...], law: Law | None, fitted: Solve) -> Law | None:
+def polish(spans: tuple[Answers, ...], law: Law | None, fitted: Solve, settled: float = SETTLED) -> Law | None:
     """The nearest minimum in pole and shape; `fitted` solves the gains of a structure."""
     if law is None:
         return None
@@ -75,7 +75,7 @@ def polish(spans: tuple[Answers, ...], law: Law | None, fitted: Solve) -> Law | 
         if ahead is None:
             break
         fall, law = 1.0 - ahead.left / law.left, ahead
-        if fall < SETTLED:
+        if fall < settled:
             break
     return law
 

@@ -21,6 +21,7 @@ CLOSE = 1e-5  # share of the command's movement left over, below which nothing e
 ROUNDED = 1.2  # times the sum of squares of rounding alone, likewise
 BETTER, SHARE = 20.0, 0.9  # fall of the criterion, and of the sum of squares, that another structure must bring
 SWAP = 2.0
+ROUGHLY = 0.03  # fall of the sum of squares below which a structure is polished enough to be ranked
 ROUNDS = 4
 FILTERS: tuple[FilterOn, ...] = ("derivative", "speed", "speed, second order")
 SHAPINGS: tuple[Shaping, ...] = ("ramp", "lag")
@@ -66,11 +67,11 @@ class Search:
         """The best of each kind of structure, polished; then the best of those."""
         kinds: dict[tuple[str, str], list[Law]] = {}
         for structure in structures:
-            law = self.forms(structure, WIDE)
+            law = self.forms(structure, WIDE, (False,))
             if law is not None:
                 kinds.setdefault((structure.filter_on, structure.shaping), []).append(law)
         # Pole and shape move together, so each kind is polished before it is judged.
-        found = [polish(self.spans, least(laws), self.forms) for laws in kinds.values()]
+        found = [polish(self.spans, least(laws), self.forms, ROUGHLY) for laws in kinds.values()]
         return least(self.forms(law.structure) for law in found if law is not None)
 
     def _shapings(self, base: Structure, late: set[int]) -> Iterable[Structure]:

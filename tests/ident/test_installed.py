@@ -11,6 +11,7 @@ import pytest
 from ident import Fopdt, LoopRecord, PidSettings, analyse, margins
 from ident.estimate import Recovered, recover
 from ident.loop import ControlLaw, law_margins
+from tests.benchmarks.monte_carlo_installed import main
 from tests.reference.digital_pid import Motor, Pid, run, steps
 
 MOTOR = Motor()
@@ -191,3 +192,10 @@ def test_measured_loops_whose_command_is_cut_to_whole_numbers_are_not_guessed_at
     # github opatiny/micromouse: the increments are rounded down at every row, which no linear law tells.
     for name in ("mouse_pid6", "mouse_pid1_limitcycle"):
         assert recover(measured(shared, name))[0] is None, name
+
+
+def test_controllers_of_all_kinds_come_back_or_are_refused() -> None:
+    # A small sample of tests/benchmarks/monte_carlo_installed.py.
+    found = main(24, seed=5)
+    assert found["wrong"] == 0
+    assert found["within"] >= 21
