@@ -27,7 +27,6 @@ Objective = Callable[[Floats], tuple[float, Floats]]
 CLIMBS = 40
 REACH = 0.3  # log: how far one climb may move each setting
 NEAR = 1.6  # constraints further than this times the radius cannot become active within one climb
-EXCESS = 1e-7  # relative, left above a limit
 PRECISION = 1e-7  # of the objective, a logarithm: less gained by one climb ends it
 
 
@@ -46,7 +45,7 @@ def climb(
     """PID settings (PI where start.Td is 0) with the best objective around a start; None where the climb fails.
 
     start      for a plant of positive sign; what is returned has the plant's own
-    precision  relative, of the objective
+    precision  relative, of the objective, and left above a limit
     """
     free = [start.Kp, start.ki] if start.Td == 0 else [start.Kp, start.ki, start.Td]
     x = np.log(free)
@@ -68,7 +67,7 @@ def climb(
         if limits.noise is not None:
             peaks.append((control_sensitivity(run, settings), limits.noise))
             beyond = [run.w[-1:]]  # where a PI may answer the most
-        if all(p.supremum <= limit * (1.0 + EXCESS) for p, limit in peaks):
+        if all(p.supremum <= limit * (1.0 + precision) for p, limit in peaks):
             value = objective(x)[0]
             if best is not None and value > best[0] - precision:
                 return min(best, (value, settings), key=lambda found: found[0])[1]
@@ -109,7 +108,7 @@ def _step(band: Band, limits: Limits, x: Floats, reach: float, objective: Object
             "fun": lambda z: _constraints(w, plant, limits, z)[0].ravel(),
             "jac": lambda z: _constraints(w, plant, limits, z)[1].reshape(-1, len(z)),
         },
-        options={"maxiter": 60, "ftol": 10.0 * precision**2},
+        options={"maxiter": 60 if objective is most_ki else 25, "ftol": 10.0 * precision**2},
     )
     return np.asarray(found.x, dtype=np.float64)
 

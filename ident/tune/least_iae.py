@@ -24,6 +24,7 @@ SHARES = (1.0, 0.8, 0.6)  # of the integral gain at the limit
 DERIVATIVES = np.array([0.3, 0.45, 0.65, 0.9, 1.2])  # of the largest-ki solution's Td
 STARTS = 2
 PRECISION = 1e-5  # relative, of the IAE
+HILL = 1.1  # times the best IAE of the coarse look: a start beyond is not worth a climb
 APART = 0.15  # log: starts closer than this climb the same hill
 
 
@@ -63,7 +64,9 @@ def _starts(band: Band, limits: Limits, objective: Iae, own: PidSettings) -> lis
                 found.append((objective(logarithms(settings))[0], settings))
     found.sort(key=lambda f: f[0])
     starts: list[PidSettings] = []
-    for _, settings in found:
+    for value, settings in found:
+        if value > found[0][0] + np.log(HILL):
+            break
         if all(np.max(np.abs(logarithms(settings) - logarithms(other))) > APART for other in [own, *starts]):
             starts.append(settings)
         if len(starts) == STARTS:

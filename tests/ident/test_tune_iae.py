@@ -45,7 +45,7 @@ def test_reference_table_and_cost(shared: Path, part: int) -> None:
         assert found.margins.Ms is not None
         assert found.margins.Mt is not None
         worst = max(found.margins.Ms, found.margins.Mt)
-        assert worst < target + 1e-6
+        assert worst < target * (1 + 1.1e-5)  # the search leaves 1e-5; the bar is 0.005
         # One row of the table has a free optimum: FOPDT L = 5, PI, limit 2.
         assert worst > target - 1e-4 or float(row["Ms"]) < target - 1e-3
 
@@ -103,7 +103,7 @@ def test_it_beats_the_other_goals_within_the_target(plant: Any, timing: dict[str
     assert margins(plant, found.settings, **timing).Ms == pytest.approx(found.margins.Ms)
     assert found.margins.Ms is not None
     assert found.margins.Mt is not None
-    assert max(found.margins.Ms, found.margins.Mt) <= 1.5 + 1e-6
+    assert max(found.margins.Ms, found.margins.Mt) <= 1.5 * (1 + 1.1e-5)
     assert iae(plant, found.settings, goal, **timing) <= iae(plant, other.settings, goal, **timing) * (1 + 1e-4)
 
 
