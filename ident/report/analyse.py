@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from dataclasses import replace
 from importlib.metadata import PackageNotFoundError, version
 
 import numpy as np
@@ -14,7 +15,7 @@ from ident.loop import PidSettings
 from ident.record import LoopRecord
 from ident.report.cautions import CAUTIONS
 from ident.report.curves import curves
-from ident.report.installed import installed_loop, installed_report
+from ident.report.installed import installed_loop, installed_outcome, installed_report
 from ident.report.log import log_info, record_info
 from ident.report.shape import FitReport, Report, TuningReport
 from ident.tune import Cloud, Proposals, cloud, propose
@@ -90,6 +91,8 @@ def analyse(
         assert refused is not None
         found.append(Finding(refused.code, "error", refused.message, refused.evidence))
     in_machine, compared = installed_report(recovered, installed, fitted, period=held, compute_delay=compute_delay)
+    if in_machine is not None and fitted is not None:
+        in_machine = replace(in_machine, predicted=installed_outcome(in_machine, fitted, held, compute_delay))
     operated = operations(record, recovered)
     found += [*mixed(record, operated), *seen, *compared]
     moved = excitation(record, refused)

@@ -10,6 +10,7 @@ from ident.loop.held_plant import held_plant
 from ident.loop.margins import loop_margins
 from ident.loop.sweep import OpenLoop
 from ident.report.shape import Installed
+from ident.tune import Predicted, predict
 
 SAME = 0.02  # relative; typed settings are rounded
 NORMAL_95 = 1.96
@@ -60,6 +61,18 @@ def installed_loop(
         return law_loop(fitted.model, recovered.law)
     assert told is not None
     return OpenLoop(held_plant(fitted, period, compute_delay), told)
+
+
+def installed_outcome(shown: Installed, fitted: Fit, period: float, compute_delay: float) -> Predicted | None:
+    """Setpoint and load step with the installed settings on the fitted plant, as the proposals have theirs; or None."""
+    if shown.settings.Tf > 0.0 and shown.filter_on != "speed, second order" and shown.source == "log":
+        return None
+    every = shown.period_s or period
+    delay = compute_delay if shown.late_s is None else shown.late_s
+    try:
+        return predict(fitted.model, shown.settings, period=every, compute_delay=delay)
+    except Refused:
+        return None
 
 
 def _margins(loop: OpenLoop) -> Margins | None:

@@ -100,6 +100,8 @@ class Installed:
     readings    Kp and Ti of the same controller summing by the backward and the forward rule
     period_s    of the controller;  late_s  from a logged speed to the command that answers to it
     R2          share of the command's movement that the settings explain, over so many rows
+    predicted   on the selected plant; None where the loop is unstable, the plant is not one that is simulated, or the
+                controller filters otherwise than by a second-order filter on the speed
     """
 
     settings: PidSettings
@@ -114,6 +116,7 @@ class Installed:
     R2: float | None = None
     rows: int | None = None
     reading: str = "trapezoidal"
+    predicted: Predicted | None = None
 
 
 @dataclass(frozen=True, slots=True)

@@ -35,6 +35,7 @@ class SetpointStep:
     iae: float
     peak_command: float  # change of command per speed unit of step, with its sign
     response: Response
+    total_variation: float = 0.0  # of the command, command unit per speed unit: all its ups and downs added
 
 
 @dataclass(frozen=True, slots=True)
@@ -46,6 +47,8 @@ class LoadStep:
     recovery_time_s: float | None  # back within 5 % of the peak for good
     iae: float
     response: Response
+    peak_command: float = 0.0  # change of command per command unit of load, with its sign
+    total_variation: float = 0.0  # of the command, per command unit of load
 
 
 @dataclass(frozen=True, slots=True)
@@ -67,6 +70,7 @@ def read_setpoint_step(trace: Trace) -> SetpointStep:
         iae=float(np.trapezoid(np.abs(error), trace.time)),
         peak_command=float(trace.command[np.argmax(np.abs(trace.command))]),
         response=_drawn(trace, np.abs(error) > STILL),
+        total_variation=_variation(trace),
     )
 
 
@@ -81,7 +85,14 @@ def read_load_step(trace: Trace) -> LoadStep:
         recovery_time_s=_inside_for_good(trace.time, deviation, 0.05 * peak),
         iae=float(np.trapezoid(deviation, trace.time)),
         response=_drawn(trace, deviation > STILL * peak),
+        peak_command=float(trace.command[np.argmax(np.abs(trace.command))]),
+        total_variation=_variation(trace),
     )
+
+
+def _variation(trace: Trace) -> float:
+    # The command starts at 0: its first jump counts.
+    return float(np.abs(np.diff(trace.command, prepend=0.0)).sum())
 
 
 def _first(time: Floats, speed: Floats, level: float) -> float | None:

@@ -109,9 +109,9 @@ def main(count: int) -> None:
         plant, M = random_plant(rng), float(np.round(rng.uniform(1.3, 2.0), 3))
         form = "pid" if seed % 2 else "pi"
         ki, brute, reached = compare(plant, form, M, rng)
-        lags = " ".join(f"{T:.17g}" for T in plant.T)
-        row = [seed, f"{plant.K:.17g}", lags, f"{plant.L:.17g}", form, M, f"{ki:.8g}", f"{brute:.8g}"]
-        out.writerow([*row, f"{ki / brute:.6f}", f"{reached:.6f}"])
+        lags = " ".join(f"{T:.9g}" for T in plant.T)
+        row = [seed, f"{plant.K:.9g}", lags, f"{plant.L:.9g}", form, M, f"{ki:.7g}", f"{brute:.7g}"]
+        out.writerow([*row, f"{ki / brute:.5f}", f"{reached:.5f}"])
         sys.stdout.flush()
 
 

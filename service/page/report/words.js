@@ -44,6 +44,7 @@ export const METHODS = {
   "least-iae-load": "Smallest error after a load step within the target",
   "least-iae-setpoint": "Smallest error after a setpoint step within the target",
   simc: "SIMC rule",
+  installed: "Installed settings",
   "improved-simc": "Improved SIMC",
   amigo: "AMIGO",
   lambda: "Lambda tuning",
