@@ -7,7 +7,7 @@ from contextlib import asynccontextmanager
 
 from fastapi import FastAPI
 
-from service.api import health, kept, logs, loops, page, problems, reports, samples, schema, watch
+from service.api import cards, health, kept, logs, loops, page, problems, reports, samples, schema, watch
 from service.api.drain import Drain
 from service.api.headers import FixedHeaders
 from service.api.metrics import Measured, Metrics
@@ -57,7 +57,7 @@ def create_app(settings: Settings | None = None, *, task: Task = report_bytes) -
         redirect_slashes=False,
     )
     app.state.shared = State(settings, workers, metrics, store, dispatcher)
-    for room in (health, reports, kept, loops, logs, watch, samples):
+    for room in (health, reports, kept, cards, loops, logs, watch, samples):
         app.include_router(room.router)
     page.install(app)
     problems.install(app)

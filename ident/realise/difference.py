@@ -29,11 +29,6 @@ class Difference:
     Td: float
     Tf: float
 
-    @property
-    def den(self) -> Row:
-        """(1 - q) rest(q), of the positional form."""
-        return tuple(np.convolve([1.0, -1.0], self.rest).tolist())
-
     def frequency_response(self, w: ArrayLike) -> Complex:
         """At z = exp(jwh), w in rad/s, 0 < w <= pi/h."""
         turn = 1j * np.asarray(w, dtype=np.float64) * self.h

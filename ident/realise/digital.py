@@ -33,6 +33,7 @@ class Digital:
     """One PID at the period h, s, its terms apart and drawn together.
 
     rule           backward (difference) or tustin
+    Ti, Td, Tf     s, of the continuous controller; Tf of the filter that is used
     filter_on      speed: y_f = F y, F = 1/(1 + s Tf + (s Tf)^2/2); derivative: 1/(1 + s Tf) on it alone, Tf = Td/N
     Kp, b          u = Kp (b r - y_f) + I - D
     integral_step  I[k] = I[k-1] + integral_step e[k], with e[k] + e[k-1] for e[k] by Tustin's rule
@@ -49,6 +50,9 @@ class Digital:
     h: float
     Kp: float
     b: float
+    Ti: float
+    Td: float
+    Tf: float
     integral_step: float
     speed_filter: Block
     derivative: Block
@@ -58,7 +62,11 @@ class Digital:
     tracking_time: float | None
     bumpless: str
     rings: bool
-    feedback: Difference
+
+    @property
+    def feedback(self) -> Difference:
+        """The feedback path, for margins."""
+        return Difference(self.velocity.num, self.velocity.den, self.h, self.Ti, self.Td, self.Tf)
 
 
 def digital(
@@ -96,23 +104,24 @@ def digital(
     filtered = Block(*substitute((1.0,), lag, h, rule)) if filter_on == "speed" else one
     derivative = Block(*substitute((0.0, s.Kp * s.Td), lag, h, rule)) if s.Td > 0 else Block((0.0,), (1.0,))
     integral = s.Kp * h / s.Ti / (1.0 if rule == "backward" else 2.0)
-    feedback = Difference(num, rest, h, s.Ti, s.Td, Tf)
     return Digital(
         rule=rule,
         filter_on=filter_on,
         h=h,
         Kp=s.Kp,
         b=s.b,
+        Ti=s.Ti,
+        Td=s.Td,
+        Tf=Tf,
         integral_step=integral,
         speed_filter=filtered,
         derivative=derivative,
-        positional=Block(num, feedback.den),
+        positional=Block(num, tuple(np.convolve([1.0, -1.0], rest).tolist())),
         velocity=Block(num, rest),
         setpoint=Block(*substitute((s.Kp / s.Ti, s.Kp * s.b), (0.0, 1.0), h, rule)),
         tracking_time=math.sqrt(s.Ti * s.Td) if s.Td > 0 else s.Ti,
         bumpless=BUMPLESS,
         rings=rule == "tustin" and s.Td > 0 and filter_on == "derivative" and 2.0 * Tf < h,
-        feedback=feedback,
     )
 
 

@@ -1,47 +1,18 @@
-"""Sampled: the margins that a digital controller really has, and what sampling and rounding cost."""
+"""Sampled: the margins that a digital controller really has."""
 
 from __future__ import annotations
 
-from dataclasses import dataclass, replace
+from dataclasses import replace
 from typing import Any
 
 from ident.errors import Refused
-from ident.loop import Margins, PidSettings, margins
+from ident.loop import Margins
 from ident.loop.controller import Controller
 from ident.loop.held_plant import held_plant
 from ident.loop.law import HoldEquivalent
 from ident.loop.margins import loop_margins
 from ident.loop.sweep import OpenLoop
 from ident.plants import Arx, Fopdt, Sopdt, UnderdampedSopdt
-
-
-@dataclass(frozen=True, slots=True)
-class Cost:
-    """What sampling costs.
-
-    continuous   the settings on the plant, without hold or computing delay
-    add_half     the same with h/2 and the computing delay as dead time
-    exact        the difference equation on the plant behind its hold; None where `because` says why
-    Ms_lost      exact Ms less continuous Ms
-    """
-
-    continuous: Margins
-    add_half: Margins
-    exact: Margins | None
-    Ms_lost: float | None
-    because: str
-
-
-def sampling_cost(plant: Any, settings: PidSettings, feedback: Controller, h: float, compute_delay: float) -> Cost:
-    """Margins without sampling, with the rule of thumb, and of the exact sampled loop; h, compute_delay in s."""
-    continuous = margins(plant, settings)
-    add_half = margins(plant, settings, period=h, compute_delay=compute_delay)
-    try:
-        exact = sampled_margins(plant, feedback, h, compute_delay)
-    except Refused as error:
-        return Cost(continuous, add_half, None, None, error.message)
-    lost = None if exact.Ms is None or continuous.Ms is None else exact.Ms - continuous.Ms
-    return Cost(continuous, add_half, exact, lost, "")
 
 
 def sampled_margins(plant: Any, feedback: Controller, h: float, compute_delay: float = 0.0) -> Margins:

@@ -12,6 +12,7 @@ from ident.estimate import Fit, Hold, Recovered, fit_all, plausible, recover
 from ident.findings import Finding
 from ident.judge import CrossChecks, advice, choose, cross_check, excitation, mixed, operations
 from ident.loop import PidSettings
+from ident.realise import realise
 from ident.record import LoopRecord
 from ident.report.cautions import CAUTIONS
 from ident.report.curves import curves
@@ -104,10 +105,15 @@ def analyse(
             t.margins,
             allowed.worst_case(t.settings) if allowed and t.margins.stable else None,
             t.predicted,
-            {},
+            realise(
+                t.settings,
+                fitted if proposal and i == proposal.recommended else None,
+                period=held,
+                compute_delay=compute_delay,
+            ),
             t.findings,
         )
-        for t in (proposal.tunings if proposal else ())
+        for i, t in enumerate(proposal.tunings if proposal else ())
     )
     return Report(
         engine_version=_engine(),

@@ -13,6 +13,7 @@ from ident.evidence import Covariance, Estimate, Statistics
 from ident.findings import Finding
 from ident.judge import Advice, CrossCheck, Excitation, Operation
 from ident.loop import Margins, PidSettings
+from ident.realise import Realisations
 from ident.tune import Predicted, Rule, WorstCase
 
 REPORT_VERSION = "1"
@@ -77,7 +78,10 @@ class FitReport:
 
 @dataclass(frozen=True, slots=True)
 class TuningReport:
-    """One proposal: settings, the margins they have, and the predicted outcome."""
+    """One proposal: settings, the margins they have, the predicted outcome, and what to type for them.
+
+    realisations  with coefficients for the recommended proposal alone
+    """
 
     method: str
     form: str  # pi | pid
@@ -85,7 +89,7 @@ class TuningReport:
     margins: Margins
     worst_case: WorstCase | None
     predicted: Predicted | None
-    realisations: dict[str, dict[str, float | str | None]]
+    realisations: Realisations | None
     findings: tuple[Finding, ...]
 
 

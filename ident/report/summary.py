@@ -7,6 +7,7 @@ from collections.abc import Iterator
 
 from ident.evidence import Estimate
 from ident.findings import Finding
+from ident.realise import Realisations
 from ident.report.shape import FitReport, Installed, Report, TuningReport
 
 
@@ -89,6 +90,8 @@ def _tuning(tuning: TuningReport, report: Report, *, recommended: bool) -> Itera
         f"  Ms {_number(m.Ms)}   Mt {_number(m.Mt)}   gain margin {_number(m.gain_margin)}   "
         f"phase margin {_number(m.phase_margin_deg)} deg   delay margin {_number(m.delay_margin_s)} s"
     )
+    if recommended and tuning.realisations is not None:
+        yield from _to_set(tuning.realisations)
     if tuning.worst_case:
         w = tuning.worst_case
         yield (
@@ -117,6 +120,29 @@ def _installed(one: Installed, report: Report) -> Iterator[str]:
             if m.stable
             else "  unstable on the fitted plant"
         )
+
+
+def _to_set(made: Realisations) -> Iterator[str]:
+    """The numbers to type, by what the controller asks for."""
+    forms = made.forms
+    yield f"  to type     ideal: Kp {forms.ideal.Kp:.5g}, {forms.resets_per_minute:.4g} resets per minute"
+    parallel = forms.parallel
+    yield f"              parallel: Kp {parallel.Kp:.5g}, ki {parallel.ki:.5g} per s, kd {parallel.kd:.5g} s"
+    if forms.series is None:
+        yield f"              series: none. {forms.series_because}"
+    else:
+        s = forms.series
+        yield f"              series: Kc {s.Kc:.5g}, tauI {s.tauI:.5g} s, tauD {s.tauD:.5g} s"
+    for coded in made.digital:
+        one = coded.digital
+        num = " ".join(f"{v:.8g}" for v in one.velocity.num)
+        den = " ".join(f"{v:.8g}" for v in one.velocity.den[1:])
+        past = f", past moves {den}" if den else ""
+        yield f"              code ({one.rule}, every {one.h:.4g} s): move of the command, errors {num}{past}"
+        if coded.margins is not None:
+            yield f"                exact sampled loop: Ms {_number(coded.margins.Ms)}"
+    if made.digital:
+        yield f"              {made.digital[0].digital.bumpless}"
 
 
 def _findings(report: Report) -> Iterator[str]:

@@ -18,6 +18,7 @@ from service.api.problems import documented
 from service.api.state import state
 from service.errors import Problem, ProblemError
 from service.store import KeptReport, Store
+from service.work.realising import Realising
 from service.work.retune import Retarget, Retuned, retuned_bytes
 
 router = APIRouter(prefix="/v1", tags=["reports"])
@@ -60,6 +61,9 @@ class Wanted(BaseModel):
     overshoot_percent: float | None = Field(
         default=None, ge=0.0, le=100.0, allow_inf_nan=False, description="Allowed after a setpoint step."
     )
+    realisation: Realising | None = Field(
+        default=None, description="How the recommended proposal is to be carried out; left out: as in a report."
+    )
 
 
 @dataclass(frozen=True, slots=True)
@@ -77,7 +81,7 @@ class Listed:
 def get_report(request: Request, id: str) -> Response:
     """Byte for byte what `gainwright report` prints for the same log and options; Link says whose it is."""
     store = state(request).store
-    kept, body = _found(store, id)
+    kept, body = found(store, id)
     whose = f'<{address(kept.loop)}>; rel="collection", </v1/analyses/{kept.analysis_id}>; rel="via"'
     return Response(body, media_type="application/json", headers={"Link": whose, "ETag": f'"{kept.id}"'})
 
@@ -89,10 +93,10 @@ def get_report(request: Request, id: str) -> Response:
     responses=documented(400, 404, 413, 422, 500, 503),
 )
 async def post_tunings(request: Request, id: str, wanted: Annotated[Wanted, Body()]) -> Response:
-    """For another target, form, goal or period, without fitting again. Nothing is kept."""
+    """For another target, form, goal or period, without fitting again; or the parts of a card. Nothing is kept."""
     service = state(request)
     with service.workers.admit():
-        _, body = await asyncio.to_thread(_found, service.store, id)
+        _, body = await asyncio.to_thread(found, service.store, id)
         options = Retarget(**wanted.model_dump(exclude_none=True))
         answer = await service.workers.run(body, options, retuned_bytes)
     if isinstance(answer, Problem):
@@ -111,8 +115,8 @@ def list_reports(
     """In the order of the logs' own time, as the history is."""
     store = state(request).store
     existing(store, loop)
-    found = store.reports.history(loop, place_of(store, loop, after), limit + 1)
-    shown = page(request, response, found, limit, lambda kept: kept.id)
+    rows = store.reports.history(loop, place_of(store, loop, after), limit + 1)
+    shown = page(request, response, rows, limit, lambda kept: kept.id)
     return [Listed(kept.id, kept.analysis_id, kept.log_id, kept.start, kept.sha256) for kept in shown]
 
 
@@ -126,7 +130,8 @@ def place_of(store: Store, loop: str, after: str | None) -> KeptReport | None:
     return kept
 
 
-def _found(store: Store, id: str) -> tuple[KeptReport, bytes]:
+def found(store: Store, id: str) -> tuple[KeptReport, bytes]:
+    """A kept report and its JSON. Raises ProblemError: no-such-report."""
     kept, body = store.reports.get(id), store.reports.body(id)
     if kept is None or body is None:
         raise ProblemError("no-such-report", "There is no report of this id. The loop's history lists its reports.")

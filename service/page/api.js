@@ -137,6 +137,11 @@ export async function keptReport(id, signal) {
   return { report: await response.json(), loop: whose && decodeURIComponent(whose.split("/").pop()) };
 }
 
+/** What an op-amp card's parts make of a plant. */
+export async function card(body, signal) {
+  return (await send("POST", "/v1/cards", body, signal)).json();
+}
+
 /** Other proposals from a kept fit. */
 export async function retune(id, wanted, signal) {
   return (await send("POST", `/v1/reports/${encodeURIComponent(id)}/tunings`, wanted, signal)).json();

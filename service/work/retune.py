@@ -3,16 +3,17 @@
 from __future__ import annotations
 
 from collections.abc import Mapping
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from typing import Any
 
 from pydantic import TypeAdapter
 
 import ident
 from service.errors import Problem
-from service.work.kept_plant import plant_of
+from service.work.kept_plant import Plant, plant_of
 from service.work.numbers import numbers_of, parse
 from service.work.options import Options
+from service.work.realising import Analogue, Digital, Realising
 from service.work.report import told
 
 
@@ -44,7 +45,7 @@ def retuned_bytes(report: bytes, options: Options) -> bytes | Problem:
 
 
 class Retarget(Options):
-    """Options of another proposal: targets other than Ms besides."""
+    """Options of another proposal: targets other than Ms besides, and how it is to be carried out."""
 
     gain_margin: float | None = None
     phase_margin_deg: float | None = None
@@ -52,6 +53,7 @@ class Retarget(Options):
     noise_peak: float | None = None
     command_noise_std: float | None = None
     overshoot_percent: float | None = None
+    realisation: Realising | None = None
 
 
 def _retune(report: bytes, given: Options) -> Retuned:
@@ -62,8 +64,11 @@ def _retune(report: bytes, given: Options) -> Retuned:
         name: getattr(given, name) if name in given.model_fields_set else before[name]
         for name in ("Ms", "form", "goal", "period")
     }
+    realisation = given.realisation if isinstance(given, Retarget) else None
     period = numbers_of(parsed).period_s if asked["period"] is None else asked["period"]
     delay = before["compute_delay"]
+    if isinstance(realisation, Analogue):
+        period = delay = 0.0  # of a card, whatever controller the log was taken with
     more: dict[str, Any] = {name: value for name in NOT_IN_REPORT if (value := getattr(given, name, None)) is not None}
     if "Ms" not in given.model_fields_set and any(name in more for name in INSTEAD_OF_MS):
         asked["Ms"] = None
@@ -79,8 +84,17 @@ def _retune(report: bytes, given: Options) -> Retuned:
         **noise,
     )
     tunings = tuple(
-        ident.TuningReport(t.method, t.form, t.settings, t.margins, None, t.predicted, {}, t.findings)
-        for t in found.tunings
+        ident.TuningReport(
+            t.method,
+            t.form,
+            t.settings,
+            t.margins,
+            None,
+            t.predicted,
+            _realised(t, plant if i == found.recommended else None, realisation, asked, period or 0.0, delay),
+            t.findings,
+        )
+        for i, t in enumerate(found.tunings)
     )
     options = {**asked, **more, **noise, "compute_delay": delay}
     return Retuned(options, tunings, found.recommended, found.because, found.rules)
@@ -89,3 +103,32 @@ def _retune(report: bytes, given: Options) -> Retuned:
 def noise_seen(report: Mapping[str, Any]) -> float:
     """std of the noise of the measured speed: what the fit leaves, which holds the encoder's quantisation too."""
     return float(report["fits"][report["selected"]]["statistics"]["rms_residual"])
+
+
+def _realised(
+    tuning: ident.Tuning,
+    plant: Plant | None,
+    wanted: Digital | Analogue | None,
+    asked: Mapping[str, Any],
+    period: float,
+    delay: float,
+) -> ident.Realisations:
+    """Of the recommended proposal (the one with a plant) as wanted; of the others their forms."""
+    given = wanted.model_dump(exclude={"kind"}) if isinstance(wanted, Digital) else {}
+    made = ident.realise(tuning.settings, plant, period=period, compute_delay=delay, **given)
+    if plant is None or not isinstance(wanted, Analogue):
+        return made
+    if asked["Ms"] is None:
+        raise ident.Refused("card-needs-ms", "Parts of a card are chosen for a target Ms: give Ms with it.")
+    card = ident.choose_card(
+        plant,
+        Ms=asked["Ms"],
+        form=asked["form"],
+        scale=wanted.scale,
+        limits=wanted.limits,
+        leak=wanted.leak,
+        Rl=wanted.Rl,
+        R_tolerance=wanted.R_tolerance,
+        C_tolerance=wanted.C_tolerance,
+    )
+    return replace(made, card=card)

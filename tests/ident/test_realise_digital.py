@@ -173,19 +173,20 @@ def test_what_sampling_costs_is_computed() -> None:
     plant = Fopdt(125.0, 0.2, 0.02)
     shown = realise(PidSettings(0.03, 0.068), plant, period=0.005, compute_delay=0.001)
     for coded in shown.digital:
-        cost = coded.cost
-        assert cost.exact is not None
-        assert cost.exact.Ms is not None
-        assert cost.add_half.Ms is not None
-        assert cost.continuous == margins(plant, PidSettings(0.03, 0.068))
-        assert cost.Ms_lost == cost.exact.Ms - (cost.continuous.Ms or 0.0)
-        assert cost.exact.Ms == pytest.approx(cost.add_half.Ms, rel=0.01)  # the rule of thumb, for a short period
-        assert cost.Ms_lost > 0.1
+        assert shown.continuous == margins(plant, PidSettings(0.03, 0.068))
+        assert shown.add_half is not None
+        assert shown.continuous.Ms is not None
+        assert coded.margins is not None
+        assert coded.margins.Ms is not None
+        assert coded.Ms_lost == coded.margins.Ms - shown.continuous.Ms
+        # The rule of thumb, for a short period.
+        assert coded.margins.Ms == pytest.approx(shown.add_half.Ms, rel=0.01)
+        assert coded.Ms_lost > 0.1
     other = realise(PidSettings(0.03, 0.068), Arx([-0.9], [12.5], 3, 0.01), period=0.005)
-    assert other.digital[0].cost.exact is None
-    assert "own period" in other.digital[0].cost.because
+    assert other.digital[0].margins is None
+    assert "own period" in other.digital[0].because
     same = realise(PidSettings(0.003, 0.068), Arx([-0.9], [12.5], 3, 0.01), period=0.01)
-    assert same.digital[0].cost.exact is not None
+    assert same.digital[0].margins is not None
 
 
 @pytest.mark.parametrize("rule", ["backward", "tustin"])
@@ -212,8 +213,8 @@ def test_rounding_is_paid_in_margin() -> None:
         assert coded.rounded is not None
         assert coded.rounded.margins is not None
         assert coded.rounded.Ms_lost is not None
-        assert coded.cost.exact is not None
-        assert coded.rounded.Ms_lost == (coded.rounded.margins.Ms or 0) - (coded.cost.exact.Ms or 0)
+        assert coded.margins is not None
+        assert coded.rounded.Ms_lost == (coded.rounded.margins.Ms or 0) - (coded.margins.Ms or 0)
         lost.append(abs(coded.rounded.Ms_lost))
     assert lost[1] < 0.01 < lost[0] + 0.01
     assert lost[1] < lost[0]

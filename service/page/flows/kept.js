@@ -1,10 +1,11 @@
 // A kept log: its analysis while it is under way, then its report at an address that stays.
 
-import { analysis as fetchAnalysis, keptReport as fetchReport, Problem, retune } from "/page/api.js";
+import { analysis as fetchAnalysis, card as judgeCard, keptReport as fetchReport, Problem, retune } from "/page/api.js";
 import { loopAddress } from "/page/views/addresses.js";
 import { problem as problemView } from "/page/views/problem.js";
 import { stages } from "/page/views/stages.js";
 import { another } from "/page/report/another.js";
+import { cardForm } from "/page/report/card.js";
 import { report as reportView } from "/page/report/report.js";
 import { instant } from "/page/format.js";
 
@@ -36,10 +37,10 @@ export async function keptReport(visit, { id }, query) {
   const { report, loop } = await fetchReport(id, visit.signal);
   const name = instant(report.log.start) ?? "A log without a time of its own";
   const file = `${loop}-${(report.log.start ?? id).replace(/[:.]/g, "")}`;
-  const target = report.selected === null ? null : another(report, query, {
+  const target = report.selected === null ? null : [another(report, query, {
     ask: (wanted) => retune(id, wanted, visit.signal),
     onAsked: (wanted) => visit.name(`/reports/${id}?${new URLSearchParams(wanted)}`),
-  });
+  }), cardForm(report, (body) => judgeCard({ ...body, report_id: id }, visit.signal))];
   visit.show(`${loop}, ${name}`, `Report on a log of ${loop}`,
     reportView(report, { name, file, loop: { name: loop, href: loopAddress(loop) }, target }));
 }

@@ -3,6 +3,8 @@
 import { h, section, symbol, table } from "/page/dom.js";
 import { exact, per, significant } from "/page/format.js";
 import { marginCells } from "/page/report/tunings.js";
+import { scaleFields, scaleOf } from "/page/report/card.js";
+import { realised } from "/page/report/to_set.js";
 import { FORMS, GOALS, METHODS, word } from "/page/report/words.js";
 import { field, given } from "/page/views/fields.js";
 
@@ -28,6 +30,7 @@ function beside(report, told) {
   return [
     table("The report's proposal and the new ones", head, [...own, ...rows], { class: "stack" }),
     h("p", { class: "note" }, told.recommended_because),
+    best !== null && told.tunings[best].realisations && h("div", { "data-testid": "retuned-to-set" }, h("h3", {}, "What to set"), realised(told.tunings[best].realisations, report.log)),
     told.tunings.flatMap(({ method, findings }) => findings.map((one) => h("p", { class: "note" }, `${word(METHODS, method)}: ${one.message}`))),
   ];
 }
@@ -41,11 +44,21 @@ export function another(report, preset, { ask, onAsked }) {
     field("form", "Controller", null, { value: preset.form ?? report.options.form }, Object.entries(FORMS)),
     field("goal", "Aim", null, { value: preset.goal ?? report.options.goal }, Object.entries(GOALS)),
     field("period", "Controller period, s", null, { type: "number", min: "0", step: "any", placeholder: "as in the report", value: preset.period ?? "" }),
+    field("kind", "Carried out as", null, { value: preset.kind ?? "digital" }, [["digital", "Panel or program"], ["analogue", "Op-amp card"]]),
+    h("details", { class: "fold wide" }, h("summary", {}, "Spans, word length, card"),
+      h("div", { class: "options" },
+        field("speed_span", "Span of the speed scale", null, { type: "number", min: "0", step: "any", value: preset.speed_span ?? "" }),
+        field("command_span", "Span of the command scale", null, { type: "number", min: "0", step: "any", value: preset.command_span ?? "" }),
+        field("bits", "Word length, bits", null, { type: "number", min: "8", max: "32", step: "1", placeholder: "none", value: preset.bits ?? "" }),
+        scaleFields(preset, "option"))),
     h("div", { class: "submit" }, button));
 
   async function propose() {
     const texts = given(form);
-    const wanted = { ...texts, Ms: Number(texts.Ms), ...("period" in texts && { period: Number(texts.period) }) };
+    const { Ms, form: controller, goal, kind } = texts;
+    const numbers = Object.fromEntries(["speed_span", "command_span", "bits"].filter((name) => name in texts).map((name) => [name, Number(texts[name])]));
+    const wanted = { Ms: Number(Ms), form: controller, goal, ...("period" in texts && { period: Number(texts.period) }),
+      realisation: kind === "analogue" ? { kind, ...scaleOf(texts) } : { kind, ...numbers } };
     button.disabled = true;
     try {
       output.replaceChildren(...[beside(report, await ask(wanted))].flat(2).filter(Boolean));

@@ -11,6 +11,7 @@ import { predicted } from "/page/report/predicted.js";
 import { residuals } from "/page/report/residuals.js";
 import { robustness } from "/page/report/robustness.js";
 import { statistics } from "/page/report/statistics.js";
+import { toSet } from "/page/report/to_set.js";
 import { trend } from "/page/report/trend.js";
 import { tunings } from "/page/report/tunings.js";
 import { againForm } from "/page/views/options.js";
@@ -34,7 +35,7 @@ export function report(data, { name, file = name.replace(/\.\w+$/, ""), loop, ta
       h("div", {}, h("p", { class: "eyebrow" }, loop ? ["Report on a log of ", h("a", { href: loop.href, "data-testid": "report-loop" }, loop.name)] : "Report on one log"),
         h("h1", {}, name), !loop && data.log.start && h("p", { class: "note" }, instant(data.log.start))),
       h("div", { class: "actions" }, download(data, file), h("button", { type: "button", class: "button quiet", onclick: () => print() }, "Print"))),
-    headline(data), findings(data), trend(data), predicted(data), robustness(data), tunings(data), target, cautions(data),
+    headline(data), findings(data), trend(data), predicted(data), robustness(data), tunings(data), toSet(data), target, cautions(data),
     parameters(data), profile(data), comparison(data), statistics(data), residuals(data), log(data, loop ? null : name),
     onAgain && againForm(options, onAgain, { "data-testid": "again-fold" }));
 }

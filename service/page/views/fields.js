@@ -4,7 +4,7 @@ import { h } from "/page/dom.js";
 
 /** A labelled input; with choices [[value, text]] a select. */
 export function field(name, label, hint, input = {}, choices = null) {
-  const id = `option-${name}`;
+  const id = input.id ?? `option-${name}`;
   const attributes = { id, name, ...input, ...(hint && { "aria-describedby": `hint-${name}` }) };
   return h("div", { class: "field" },
     h("label", { for: id }, label),

@@ -1,0 +1,60 @@
+// What to set: one proposal as a panel, a program or an op-amp card takes it.
+
+import { h, section, symbol, table } from "/page/dom.js";
+import { exact, fixed, per, significant } from "/page/format.js";
+import { cardParts } from "/page/report/card.js";
+import { METHODS, word } from "/page/report/words.js";
+
+const RULES = { backward: "Backward difference", tustin: "Trapezoidal (Tustin)" };
+
+function panel({ forms }, log) {
+  const { ideal, series, parallel } = forms;
+  const gain = per(log.command_unit, log.speed_unit);
+  const rows = [
+    ["Ideal (ISA): gain, reset time, rate time", [symbol("Kp"), ` ${significant(ideal.Kp, 5)} ${gain}, `, symbol("Ti"), ` ${significant(ideal.Ti, 5)} s, `, symbol("Td"), ` ${significant(ideal.Td, 5)} s`]],
+    ["Series (interacting)", series ? [symbol("Kc"), ` ${significant(series.Kc, 5)} ${gain}, `, symbol("Ti"), ` ${significant(series.tauI, 5)} s, `, symbol("Td"), ` ${significant(series.tauD, 5)} s`] : forms.series_because],
+    ["Parallel: three separate gains", [symbol("Kp"), ` ${significant(parallel.Kp, 5)}, `, symbol("ki"), ` ${significant(parallel.ki, 5)} per s, `, symbol("kd"), ` ${significant(parallel.kd, 5)} s`]],
+    ["Resets per minute", significant(forms.resets_per_minute, 5)],
+    ["Proportional band", forms.proportional_band_percent === null ? forms.percent_because.replace(/ \(speed_span, command_span\)/, "") : `${significant(forms.proportional_band_percent, 4)} % (gain ${significant(forms.gain_percent, 4)} % per %)`],
+    ["Filter and setpoint weight", [symbol("Tf"), ` ${significant(ideal.Tf, 4)} s, `, symbol("b"), ` ${significant(ideal.b, 3)}`]],
+  ];
+  return [h("h4", {}, "Numbers for a panel"), table("Numbers for a panel", ["The controller asks for", "Set"], rows, { class: "stack" })];
+}
+
+const row = (values) => values.map((value) => significant(value, 8)).join(", ");
+
+function code({ digital, digital_because, continuous }) {
+  if (!digital.length) return digital_because && h("p", { class: "note" }, digital_because);
+  const rows = digital.map(({ digital: one, margins, Ms_lost, because, rounded }) => [
+    RULES[one.rule],
+    h("span", { class: "numbers" }, row(one.velocity.num)),
+    one.velocity.den.length > 1 ? h("span", { class: "numbers" }, row(one.velocity.den.slice(1))) : "none",
+    one.setpoint.num.map((value) => significant(value, 6)).join(", "),
+    one.tracking_time === null ? "–" : `${significant(one.tracking_time, 4)} s`,
+    margins ? (margins.stable ? `${fixed(margins.Ms, 3)} (${Ms_lost >= 0 ? "+" : ""}${fixed(Ms_lost, 3)})` : h("strong", { class: "verdict poor" }, "▲ unstable")) : because,
+    ...(rounded ? [[rounded.coefficients.words, rounded.coefficients.integral_step].flat().map(({ name, integer, shift }) => `${name} = ${integer} / 2^${shift}`).join(", ") + (rounded.Ms_lost === null ? "" : `; costs ${fixed(rounded.Ms_lost, 4)} of Ms`)] : []),
+  ]);
+  const h_ = digital[0].digital.h;
+  const words = digital.some(({ rounded }) => rounded);
+  return [h("h4", {}, "Coefficients for a program"),
+    h("p", { class: "note" }, `Every ${exact(h_)} s add to the command: the errors e[k], e[k−1], … times the first row, less its own last moves times the second; e = setpoint − speed. Without sampling Ms would be ${fixed(continuous?.Ms, 3)}; the last figure is of the loop as it is sampled, hold and computing delay included.`),
+    table("Coefficients for a program", ["Rule", "On the errors", "On past moves", "From the setpoint alone", ["Anti-windup time ", symbol("Tt")], [symbol("Ms"), " (lost to sampling)"], ...(words ? ["In whole numbers"] : [])], rows, { class: "stack" }),
+    digital.some(({ digital: one }) => one.b !== 1) && h("p", { class: "note" }, "With a setpoint weight below 1 the setpoint goes in by its own row (positional form: times 1, then 1 − z⁻¹ below it), and the speed with a minus sign by the row on the errors."),
+    h("p", { class: "note" }, digital[0].digital.bumpless)];
+}
+
+/** One proposal's realisations; log: for the units. */
+export function realised(made, log) {
+  return [panel(made, log), made.card ? cardParts(made.card, log) : code(made)].flat();
+}
+
+export function toSet(report) {
+  const shown = report.tunings.map((tuning, i) => ({ ...tuning, best: i === report.recommended }))
+    .filter(({ realisations }) => realisations?.forms)
+    .sort((a, b) => b.best - a.best);
+  if (!shown.length) return null;
+  return section("to-set", "What to set", "The same settings in the numbers that different controllers ask for. Check which form yours uses before you type anything.",
+    shown.map(({ method, best, realisations }) => h("details", { class: "carried", open: best, "data-testid": `to-set-${method}` },
+      h("summary", {}, word(METHODS, method), best && [" ", h("span", { class: "badge" }, "recommended")]),
+      realised(realisations, report.log))));
+}
