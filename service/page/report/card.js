@@ -34,7 +34,7 @@ export function cardParts(card, log) {
   return [h("h4", {}, "Parts of an op-amp card"),
     table("Parts", ["Part", "Value", "What it is"], Object.entries(card.printed).map(([name, value]) => [symbol(name), h("strong", {}, value), PARTS[name]]), { class: "stack", "data-testid": "card-parts" }),
     table("Margins of the card", ["Margins", symbol("Ms"), symbol("Mt"), "Gain margin", "Phase margin", "Delay margin"], [["With these parts", ...marginCells(card.margins)]], { class: "stack" }),
-    table("The card in figures", ["Figure", "Value"], figures, { class: "stack" }),
+    table("The card in figures", ["Figure", "Value"], figures.map(([name, ...cells]) => [name, h("span", {}, cells)]), { class: "stack told" }),
     h("ul", { class: "notes" }, card.cautions.map((one) => h("li", {}, one)))];
 }
 

@@ -18,7 +18,7 @@ function panel({ forms }, log) {
     ["Proportional band", forms.proportional_band_percent === null ? forms.percent_because.replace(/ \(speed_span, command_span\)/, "") : `${significant(forms.proportional_band_percent, 4)} % (gain ${significant(forms.gain_percent, 4)} % per %)`],
     ["Filter and setpoint weight", [symbol("Tf"), ` ${significant(ideal.Tf, 4)} s, `, symbol("b"), ` ${significant(ideal.b, 3)}`]],
   ];
-  return [h("h4", {}, "Numbers for a panel"), table("Numbers for a panel", ["The controller asks for", "Set"], rows, { class: "stack" })];
+  return [h("h4", {}, "Numbers for a panel"), table("Numbers for a panel", ["The controller asks for", "Set"], rows.map(([name, ...cells]) => [name, h("span", {}, cells)]), { class: "stack told" })];
 }
 
 const row = (values) => values.map((value) => significant(value, 8)).join(", ");
@@ -39,7 +39,7 @@ function code({ digital, digital_because, continuous }) {
   return [h("h4", {}, "Coefficients for a program"),
     h("p", { class: "note" }, `Every ${exact(h_)} s add to the command: the errors e[k], e[k−1], … times the first row, less its own last moves times the second; e = setpoint − speed. Without sampling Ms would be ${fixed(continuous?.Ms, 3)}; the last figure is of the loop as it is sampled, hold and computing delay included.`),
     table("Coefficients for a program", ["Rule", "On the errors", "On past moves", "From the setpoint alone", ["Anti-windup time ", symbol("Tt")], [symbol("Ms"), " (lost to sampling)"], ...(words ? ["In whole numbers"] : [])], rows, { class: "stack" }),
-    digital.some(({ digital: one }) => one.b !== 1) && h("p", { class: "note" }, "With a setpoint weight below 1 the setpoint goes in by its own row (positional form: times 1, then 1 − z⁻¹ below it), and the speed with a minus sign by the row on the errors."),
+    digital.some(({ digital: one }) => one.b !== 1) && h("p", { class: "note" }, `The setpoint weight is ${significant(digital[0].digital.b, 3)}, not 1: let the first two rows act on minus the speed instead of the error, reckon a second move from the last two setpoints by the row “From the setpoint alone”, and add both moves.`),
     h("p", { class: "note" }, digital[0].digital.bumpless)];
 }
 
