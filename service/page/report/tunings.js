@@ -77,7 +77,7 @@ function allowed(report) {
 function knownRules(report) {
   if (!report.rules?.length) return null;
   const pid = report.rules.some(({ settings }) => settings.Td > 0);
-  return h("details", { "data-testid": "rules" }, h("summary", {}, "Published rules on this plant, for comparison"),
+  return h("details", { class: "below", "data-testid": "rules" }, h("summary", {}, "Published rules on this plant, for comparison"),
     table("Published rules and the margins they have here", ["Rule", symbol("Kp"), [symbol("Ti"), " (s)"], ...(pid ? [[symbol("Td"), " (s)"]] : []), symbol("Ms"), symbol("Mt"), "Gain margin", "Phase margin", "Delay margin", "Target"],
       report.rules.map(({ method, settings, margins, meets_target }) => [word(METHODS, method), significant(settings.Kp), significant(settings.Ti), ...(pid ? [significant(settings.Td)] : []),
         ...marginCells(margins), meets_target ? "met" : "missed"]), { class: "stack" }));
