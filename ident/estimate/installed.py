@@ -14,8 +14,8 @@ from dataclasses import dataclass, replace
 import numpy as np
 
 from ident.estimate.by_hand import hand_rows
-from ident.estimate.installed_forms import Law, names, parts
-from ident.estimate.installed_law import moves
+from ident.estimate.installed_forms import FLOOR, Law, names, parts
+from ident.estimate.installed_law import R, Structure, moves
 from ident.estimate.installed_polish import polish, slopes
 from ident.estimate.installed_rows import Answers, answers, quantum
 from ident.estimate.installed_search import Search
@@ -34,6 +34,8 @@ CLEAR = 10.0  # standard deviations that Kp and ki must stand from zero: known t
 SAME_WEIGHT = 0.02  # a setpoint weight this close to 1 is 1
 NO_DERIVATIVE = 0.1  # Td over the period; less cannot be told from the rule of integration
 MOVED = 0.03  # relative: what rounding the law's own command may move its gains by
+ALONE = 3.0  # times what the law leaves of the moves, for the setpoint alone to explain them as well
+MOST = 0.1  # share of the moves that the setpoint alone may leave, at most
 NEARLY = 6.0  # of the criterion
 PHASES = (0.0, 0.25, 0.5, 0.75)
 FEWEST_STEPS = 5  # that a run of a coarse command must go through
@@ -102,12 +104,15 @@ def recover(record: LoopRecord, by_hand: Flags | None = None) -> tuple[Recovered
     law = law and _simplest(replace(look, spans=spans), law)
     if law is None:
         return None, (_hidden("the command does not follow the error r - y as that of a PI or PID does", {}),)
+    if moving and _follows_setpoint(spans, law):
+        return None, (_hidden("the command follows the setpoint alone, without looking at the speed", {}),)
     covariance, unexplained = _quality(spans, law, rounding)
     spread = np.sqrt(np.diag(covariance))
     R2 = 1.0 - law.left / law.total
     figures: dict[str, float | int | str | bool | None] = {"R2": R2, "unexplained": unexplained, "rows": law.rows}
     if unexplained > UNEXPLAINED:
-        reason = f"the closest PI or PID leaves too much of the command's movement unexplained (R² {R2:.3f})"
+        share = f"{100.0 * unexplained:.0f} %" if unexplained < 1.0 else "more than all"
+        reason = f"what the closest PI or PID leaves unexplained is {share} of what its proportional part does"
         return None, (_hidden(reason, figures),)
     if q > 0.0 and (moved := _moved_by_rounding(spans, law, q)) > MOVED:
         figures["moved_by_rounding"] = moved
@@ -173,6 +178,19 @@ def _moved_by_rounding(spans: tuple[Answers, ...], law: Law, q: float) -> float:
     # A setpoint weight may be 0: it is measured by Kp.
     size = np.array([law.gains[1] if name == "Kp b" else gain for name, gain in law.named.items()])
     return float(np.max(np.abs((again - law.gains) / size)))
+
+
+def _follows_setpoint(spans: tuple[Answers, ...], law: Law) -> bool:
+    """Whether a plain factor on the setpoint explains the command's moves as well as the law does.
+
+    Then the speed, which answers to that command, only seems to be in the law.
+    """
+    found = moves(spans, Structure())
+    found = found.summed() if law.summed else found
+    own, total = found.columns[R], float(found.command @ found.command)
+    power = float(own @ own)
+    alone = total - float(own @ found.command) ** 2 / power if power > 0.0 else total
+    return alone <= min(max(ALONE * law.left, FLOOR * total), MOST * total)
 
 
 def _coarse(spans: tuple[Answers, ...], rounding: float) -> bool:

@@ -99,8 +99,11 @@ def _fitted(found: Moves, structure: Structure, forms: list[str], rounding: floa
 
 
 def _right_signs(form: str, gains: Floats) -> bool:
-    """Integral, proportional and derivative parts all push the same way; a setpoint weight lies from 0 to 2."""
+    """Integral, proportional and derivative parts all push the same way; a setpoint weight lies from 0 to 2.
+
+    Read as a trapezoid, the weight 0 of a forward sum is -x/(1 - x) with x = h/(2 Ti).
+    """
     if gains[1] == 0.0 or gains[0] * gains[1] <= 0.0:
         return False
     share = dict(zip(names(form), gains / gains[1], strict=True))
-    return bool(share.get("kd", 0.0) >= 0.0 and -0.1 <= share.get("Kp b", 1.0) <= 2.0)
+    return bool(share.get("kd", 0.0) >= 0.0 and -0.5 <= share.get("Kp b", 1.0) <= 2.0)

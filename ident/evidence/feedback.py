@@ -34,17 +34,22 @@ def feedback(commands: list[Floats], speeds: list[Floats], setpoints: list[Float
         # A setpoint may drive the command without any feedback, and its steps would hide what the speed adds.
         told = np.zeros(n) if r is None else r
         past += [told[LAGS - i : n - i] for i in range(LAGS + 1)]
-        own.append(np.stack([np.ones(n - LAGS), *past]))
+        own.append(np.stack(past))
         answer.append(np.stack([y[LAGS - i : n - i] for i in range(LAGS + 1)]))
         target.append(np.diff(u)[LAGS - 1 :])
     if not own:
         return False
-    X, Z, move = np.hstack(own), np.hstack(answer), np.concatenate(target)
+    X, Z, move = (_level(np.concatenate(part, axis=-1)) for part in (own, answer, target))
     alone, both = _unexplained(X, move), _unexplained(np.vstack((X, Z)), move)
     if alone <= 0.0:
         return False
     share = 1.0 - both / alone
     return share >= SHARE and float(chdtrc(len(Z), len(move) * share)) < CLEARLY
+
+
+def _level(rows: Floats) -> Floats:
+    """Less their means: levels far above the moves would cost digits."""
+    return np.asarray(rows - rows.mean(axis=-1, keepdims=True))
 
 
 def _unexplained(rows: Floats, target: Floats) -> float:

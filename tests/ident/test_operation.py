@@ -131,3 +131,14 @@ def test_a_command_that_follows_the_setpoint_alone_closes_no_loop() -> None:
     assert operation(spans(record)) != "closed-loop"
     fitted = fit(record, "fopdt")
     assert fitted.parameters["T"].value == pytest.approx(1.83, rel=0.05)
+
+
+def test_a_smooth_command_that_follows_the_setpoint_shows_no_controller() -> None:
+    # Drives that turn the speed wanted into a command by a plain factor: the log has r, u and y, and no loop.
+    time = MOTOR.h * np.arange(ROWS)
+    command = 41.0 + 3.0 * np.sin(0.02 * time * time)
+    for noise in (0.0, 0.5):
+        _, speed = run(PI, replace(MOTOR, noise=noise), 14.6 * command, 1, by_hand=command)
+        found, said = recover(LoopRecord(time, command, speed, 14.6 * command))
+        assert found is None
+        assert "setpoint alone" in said[0].message
