@@ -4,9 +4,11 @@ from __future__ import annotations
 
 from dataclasses import dataclass
 
+from ident.estimate.driven import Driven
 from ident.estimate.friction import Friction
 from ident.estimate.shape import Shape
 from ident.evidence import Covariance, Estimate, Statistics
+from ident.evidence.colour import Colour
 from ident.findings import Finding
 from ident.plants import Arx, Fopdt, Sopdt, UnderdampedSopdt
 from ident.record.segments import Floats
@@ -39,6 +41,8 @@ class Fit:
     parameters   {name: Estimate}, the model's own, in its order
     derived      what follows from them: "K/T", per s
     covariance   of the parameters, coloured residuals accounted for
+    driven       what was moved on purpose in the log, and how well that alone tells the plant; None where not asked
+    noise        the colour of what the model leaves, None where not kept
     simulated    (rows of the record,), the model's response to the logged command; NaN on rows not used
     """
 
@@ -53,3 +57,5 @@ class Fit:
     simulated: Floats
     profile: DeadTimeProfile | None
     spread: Spread | None = None
+    driven: Driven | None = None
+    noise: Colour | None = None

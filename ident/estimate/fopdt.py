@@ -5,6 +5,7 @@ from __future__ import annotations
 import numpy as np
 
 from ident.estimate.diagnostics import statistics
+from ident.estimate.driven import driven
 from ident.estimate.fit import Fit, Spread
 from ident.estimate.ground import Ground, on_record, with_noise
 from ident.estimate.known import require_known
@@ -55,4 +56,6 @@ def fit_fopdt(base: Ground) -> Fit:
         simulated=on_record(base, at),
         profile=profile,
         spread=Spread(at.shape, known.log_covariance),
+        driven=driven(base, found),
+        noise=found.colour,
     )

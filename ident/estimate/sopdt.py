@@ -11,6 +11,7 @@ import math
 import numpy as np
 
 from ident.estimate.diagnostics import statistics
+from ident.estimate.driven import driven
 from ident.estimate.fit import Fit, Spread
 from ident.estimate.ground import Ground, on_record, with_noise
 from ident.estimate.known import require_known
@@ -79,6 +80,8 @@ def fit_sopdt(base: Ground) -> Fit:
         simulated=on_record(base, at),
         profile=None,
         spread=Spread(at.shape, known.log_covariance),
+        driven=driven(base, found),
+        noise=found.colour,
     )
 
 

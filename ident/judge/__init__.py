@@ -1,8 +1,9 @@
 """What to believe: excitation, kind of operation, the next test to run."""
 
-from ident.judge.choice import Choice, choose, fit
+from ident.judge.choice import Choice, believed, choose, fit
 from ident.judge.crosscheck import CrossCheck, CrossChecks, cross_check
 from ident.judge.excitation import Advice, Excitation, advice, excitation
+from ident.judge.information import unlogged_setpoint
 from ident.judge.operation import Operated, Operation, mixed, operation, operations
 
 __all__ = [
@@ -14,6 +15,7 @@ __all__ = [
     "Operated",
     "Operation",
     "advice",
+    "believed",
     "choose",
     "cross_check",
     "excitation",
@@ -21,4 +23,5 @@ __all__ = [
     "mixed",
     "operation",
     "operations",
+    "unlogged_setpoint",
 ]

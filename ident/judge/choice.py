@@ -5,7 +5,9 @@ from __future__ import annotations
 from collections.abc import Sequence
 from dataclasses import dataclass
 
+from ident.errors import NotIdentifiable
 from ident.estimate import Fit, Hold, fit_all
+from ident.judge.information import too_little
 from ident.record import LoopRecord
 
 CLEARLY = 10.0  # AICc: a difference that leaves little doubt (Burnham and Anderson 2002, section 2.6)
@@ -56,8 +58,22 @@ def fit(
     Raises NotIdentifiable where the record has too little in it; Refused (unknown-model, orders-without-arx,
     orders-out-of-range).
     """
-    fits = fit_all(record, model, orders, hold)
+    fits, refused = believed(record, fit_all(record, model, orders, hold))
+    if refused is not None:
+        raise refused
     return fits[choose(fits).index]
+
+
+def believed(record: LoopRecord, fits: tuple[Fit, ...]) -> tuple[tuple[Fit, ...], NotIdentifiable | None]:
+    """The same fits, or none and why: what was moved on purpose tells too little to trust any of them."""
+    judged = fits[choose(fits).index]
+    if judged.driven is None and record.setpoint is not None:
+        try:
+            judged = fit_all(record, "fopdt")[0]  # an equation does not say what its command was moved by
+        except NotIdentifiable:
+            return fits, None
+    refused = too_little(judged)
+    return (fits, None) if refused is None else ((), refused)
 
 
 def known(fit: Fit) -> bool:

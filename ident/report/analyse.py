@@ -10,7 +10,17 @@ import numpy as np
 from ident.errors import NotIdentifiable, Refused
 from ident.estimate import Fit, Hold, Recovered, fit_all, plausible, recover
 from ident.findings import Finding
-from ident.judge import CrossChecks, advice, choose, cross_check, excitation, mixed, operations
+from ident.judge import (
+    CrossChecks,
+    advice,
+    believed,
+    choose,
+    cross_check,
+    excitation,
+    mixed,
+    operations,
+    unlogged_setpoint,
+)
 from ident.loop import PidSettings
 from ident.realise import realise
 from ident.record import LoopRecord
@@ -70,6 +80,9 @@ def analyse(
     }
     found: list[Finding] = []
     fits, refused = _fit(record, model, hold)
+    guess = fits
+    if fits:
+        fits, refused = believed(record, fits)
     choice = choose(fits, model == "auto") if fits else None
     fitted = fits[choice.index] if choice else None
     recovered, seen = recover(record)
@@ -79,7 +92,7 @@ def analyse(
     checked = CrossChecks((), ())
     if fitted is not None:
         checked = cross_check(record, fitted, subspace=subspace)
-        found += [*assumed, *checked.findings]
+        found += [*assumed, *unlogged_setpoint(fitted), *checked.findings]
         timing = {"period": held, "compute_delay": compute_delay}
         drawn = plausible(fitted, np.random.default_rng(seed), PLANTS)
         lag = float(getattr(fitted.model, "T", 0.0) or getattr(fitted.model, "T1", 0.0) or held)
