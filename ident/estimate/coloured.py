@@ -12,7 +12,7 @@ import numpy as np
 
 from ident.estimate.layout import Layout
 from ident.estimate.point import Point, point, solve
-from ident.evidence.colour import noise_colour
+from ident.evidence.colour import inverse_gram, noise_colour
 from ident.record.segments import Floats
 
 MOST_ROUNDS = 25
@@ -34,7 +34,7 @@ def coloured(layout: Layout, at: Point) -> tuple[Layout, Point]:
         k = at.log_count
         joint = np.vstack((at.jacobian, noise_slopes(white, at)))
         step = solve(joint, at.residual)[1 : 2 + k]
-        spread = np.sqrt(np.diag(np.linalg.pinv(joint @ joint.T, hermitian=True))[1 : 2 + k] * at.rss / layout.rows)
+        spread = np.sqrt(np.maximum(np.diag(inverse_gram(joint @ joint.T))[1 : 2 + k], 0.0) * at.rss / layout.rows)
         moved = point(white, at.shape.moved(step[:k], layout), max(at.L + float(step[k]), 0.0))
         at = moved if moved.rss <= 1.05 * at.rss else point(white, at.shape.moved(0.3 * step[:k], layout), at.L)
         if np.all(np.abs(step) <= SETTLED * spread):

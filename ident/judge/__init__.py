@@ -1,8 +1,9 @@
 """What to believe: excitation, kind of operation, the next test to run."""
 
+from ident.judge.advice import Advice, advice
 from ident.judge.choice import Choice, believed, choose, fit
 from ident.judge.crosscheck import CrossCheck, CrossChecks, cross_check
-from ident.judge.excitation import Advice, Excitation, advice, excitation
+from ident.judge.excitation import Excitation, excitation
 from ident.judge.information import unlogged_setpoint
 from ident.judge.operation import Operated, Operation, mixed, operation, operations
 

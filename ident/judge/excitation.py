@@ -1,4 +1,4 @@
-"""Excitation: does the log move enough to learn from, and what to log where it does not?"""
+"""Excitation: does the log move enough to learn from?"""
 
 from __future__ import annotations
 
@@ -28,13 +28,6 @@ class Excitation:
     reason: str
 
 
-@dataclass(frozen=True, slots=True)
-class Advice:
-    """The next test to run where the log is too poor, in the log's units."""
-
-    message: str
-
-
 def excitation(record: LoopRecord, refused: NotIdentifiable | None) -> Excitation:
     """The verdict on a record, `refused` being why no model came out of it (None: one did)."""
     spans = [
@@ -49,24 +42,7 @@ def excitation(record: LoopRecord, refused: NotIdentifiable | None) -> Excitatio
     return Excitation(refused is None, spans[0], spans[1], moves, reason)
 
 
-def advice(record: LoopRecord) -> Advice:
-    """What to log next, where a record could not carry a model."""
-    u, y = record.command_unit or "command units", record.speed_unit or "speed units"
-    noise = _noise(record)
-    size = (
-        f"a step of the command (in {u}) large enough to move the speed by at least {20.0 * noise:.3g} {y}, "
-        "twenty times the noise seen here"
-        if noise > 0
-        else f"a step of the command (in {u}) that clearly moves the speed"
-    )
-    return Advice(
-        "Log a test: with the loop in manual and the machine clear and allowed to change speed, wait until the speed "
-        f"is settled, make {size}, wait until it has settled again, and step back. Keep command, speed and, "
-        "where there is one, setpoint in the log, from some seconds before the first move."
-    )
-
-
-def _noise(record: LoopRecord) -> float:
+def speed_noise(record: LoopRecord) -> float:
     """Std of the speed's row-to-row noise, from first differences (robust: median)."""
     steps = [np.diff(record.speed[s.slice]) for s in record.segments if s.rows > 2]
     if not steps:

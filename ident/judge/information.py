@@ -50,7 +50,9 @@ def too_little(fit: Fit) -> NotIdentifiable | None:
     return NotIdentifiable(
         "not-identifiable",
         "The setpoint moves too little for this log's noise: its moves alone would tell "
-        + ", ".join(f"{name} to {100 * min(widths[name], 99.0):.0f} % (limit {100 * LIMITS[name]:.0f})" for name in wide)
+        + ", ".join(
+            f"{name} to {100 * min(widths[name], 99.0):.0f} % (limit {100 * LIMITS[name]:.0f})" for name in wide
+        )
         + f". {MOVE_IT}",
         {f"width_{name}": min(width, 1e9) for name, width in widths.items()},
     )

@@ -48,6 +48,7 @@ def analyse(
     seed: int = 0,
     subspace: bool = True,
     installed: PidSettings | None = None,
+    command_limits: tuple[float | None, float | None] = (None, None),
 ) -> Report:
     """Everything one record says: model, proposals, margins, predicted outcome.
 
@@ -63,6 +64,7 @@ def analyse(
     seed           of every random draw: the same record and options give the same report
     subspace       cross-check the model by a subspace method too, which is slow to load the first time
     installed      settings told to be in the machine; compared with those that a closed-loop log shows
+    command_limits (low, high) of the command, where known: a test that is advised stays within them
 
     A record with too little in it gives a report without fits that says so. Raises Refused for options without
     an answer.
@@ -110,6 +112,7 @@ def analyse(
     operated = operations(record, recovered)
     found += [*mixed(record, operated), *seen, *compared]
     moved = excitation(record, refused)
+    advised = None if moved.sufficient else advice(record, guess[0] if guess else None, command_limits)
     tunings = tuple(
         TuningReport(
             t.method,
@@ -131,7 +134,7 @@ def analyse(
     return Report(
         engine_version=_engine(),
         log=log_info(record),
-        record=record_info(record, moved, None if moved.sufficient else advice(record), operated),
+        record=record_info(record, moved, advised, operated),
         fits=tuple(_fit_report(f) for f in fits),
         selected=choice.index if choice else None,
         selected_because=choice.because if choice else "",

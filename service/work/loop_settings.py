@@ -128,6 +128,7 @@ class LoopSettings(Part):
             "counts_per_rev": self.counts_per_rev,
             "period": self.period,
             "installed": None if self.installed is None else ",".join(map(repr, self.installed.model_dump().values())),
+            "command_limits": self.command_limits and f"{self.command_limits.low!r},{self.command_limits.high!r}",
             **{role: getattr(self.columns, role) for role in ROLES},
             **self.defaults.model_dump(),
         }

@@ -73,6 +73,11 @@ class Options(BaseModel):
         max_length=150,
         description="Settings in the machine, to compare the log with: Kp,Ti or Kp,Ti,Td,Tf,b.",
     )
+    command_limits: str | None = Field(
+        default=None,
+        max_length=80,
+        description="Limits of the command, low,high, in its unit: a test that is advised stays within them.",
+    )
     zone: str | None = Field(
         default=None,
         min_length=1,
@@ -112,6 +117,13 @@ class Options(BaseModel):
             numbers(told)
         return told
 
+    @field_validator("command_limits")
+    @classmethod
+    def _ordered(cls, told: str | None) -> str | None:
+        if told is not None:
+            limits(told)
+        return told
+
     def text(self) -> str:
         """JSON of what differs from the defaults: equal for equal options, and still so when options are added."""
         return json.dumps(self.model_dump(mode="json", exclude_defaults=True), sort_keys=True)
@@ -128,3 +140,11 @@ def wrong_options(faults: Sequence[Any] | ValidationError) -> Problem:
         evidence[name] = "there is no such option" if unknown else str(fault.get("msg"))
     told = "; ".join(f"{name}: {said}" for name, said in evidence.items())
     return Problem("invalid-option", f"Correct these options and send the log again. {told}.", evidence)
+
+
+def limits(text: str) -> tuple[float, float]:
+    """(low, high) of "low,high". Raises ValueError."""
+    parts = [float(part) for part in text.split(",")]
+    if len(parts) != 2 or not -1e9 <= parts[0] < parts[1] <= 1e9:
+        raise ValueError("give two numbers, low,high, the lower first, such as 0,100")
+    return parts[0], parts[1]
