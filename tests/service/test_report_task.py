@@ -71,6 +71,7 @@ def test_every_option_reaches_ident(monkeypatch: pytest.MonkeyPatch) -> None:
             "goal": "load",
             "period": "0",
             "installed": "0.1,2",
+            "command_limits": "0,100",
             "zone": "Europe/Zurich",
             "date_order": "mdy",
             "start": "2026-03-01T06:00:00Z",
@@ -94,4 +95,5 @@ def test_every_option_reaches_ident(monkeypatch: pytest.MonkeyPatch) -> None:
         "goal": "load",
         "period": 0.0,
         "installed": ident.PidSettings(0.1, 2.0),
+        "command_limits": (0.0, 100.0),
     }
