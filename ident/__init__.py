@@ -7,7 +7,7 @@ from ident.judge import fit
 from ident.loop import Margins, PidSettings, margins
 from ident.plants import Arx, Fopdt, Motor, Sopdt, UnderdampedSopdt, from_nameplate
 from ident.realise import CardReport, CardScale, Limits, Parts, Realisations, card_as_found, choose_card, realise
-from ident.record import LoopRecord, Preview, preview, read_csv
+from ident.record import LoopRecord, Preview, preview, previewed, read_csv
 from ident.report import Report, TuningReport, analyse, summary
 from ident.tune import Proposals, Rule, Tuning, propose, tune
 from ident.watch import Drift, MarginDrift, Night, ParameterDrift, PracticalSize, drift, drift_history
@@ -52,6 +52,7 @@ __all__ = [
     "from_nameplate",
     "margins",
     "preview",
+    "previewed",
     "propose",
     "read_csv",
     "realise",

@@ -39,7 +39,7 @@ def parser() -> argparse.ArgumentParser:
         epilog="Example: gainwright report monday.csv --summary",
     )
     top.add_argument("--version", action="version", version=f"gainwright {version()}")
-    commands = top.add_subparsers(title="commands", required=True, metavar="serve | report")
+    commands = top.add_subparsers(title="commands", required=True, metavar="serve | report | preview")
     serve = commands.add_parser(
         "serve",
         help="start the service: the page for the browser and the HTTP interface",
@@ -58,12 +58,21 @@ def parser() -> argparse.ArgumentParser:
     report.add_argument("file", metavar="FILE", help="the log; - reads standard input")
     report.add_argument("--summary", action="store_true", help="print a summary to read instead of JSON")
     _add_options(report)
-    report.set_defaults(run=_report)
+    report.set_defaults(run=_report, preview=False)
+    preview = commands.add_parser(
+        "preview",
+        help="say how a log is understood, without fitting",
+        description="Read a CSV log and print as JSON what was understood: stamps, sample time, which header became "
+        "which column and why, rows left out, gaps. Options that are not about reading do not count.",
+    )
+    preview.add_argument("file", metavar="FILE", help="the log; - reads standard input")
+    _add_options(preview)
+    preview.set_defaults(run=_report, summary=False, preview=True)
     return top
 
 
 def _add_options(report: argparse.ArgumentParser) -> None:
-    group = report.add_argument_group("options (each also a query option of POST /v1/reports)")
+    group = report.add_argument_group("options (each also a query option of POST /v1/reports and /v1/logs/preview)")
     for name, field in Options.model_fields.items():
         spellings = dict.fromkeys((f"--{name.replace('_', '-')}", f"--{name}"))
         choices = _choices(field.annotation)
@@ -110,9 +119,14 @@ def _report(asked: argparse.Namespace) -> int:
         source = sys.stdin.buffer.read() if asked.file == "-" else Path(asked.file).read_bytes()
     except OSError as error:
         return _refuse(Problem("unreadable-file", f"{asked.file} cannot be opened: {error.strerror}."))
+    from service.work.previewing import preview_bytes
     from service.work.report import report_bytes, report_summary
 
-    answer = report_summary(source, options) if asked.summary else report_bytes(source, options)
+    answer: bytes | str | Problem
+    if asked.preview:
+        answer = preview_bytes(source, options)
+    else:
+        answer = report_summary(source, options) if asked.summary else report_bytes(source, options)
     if isinstance(answer, Problem):
         return _refuse(answer)
     output = answer.encode() if isinstance(answer, str) else answer

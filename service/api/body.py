@@ -1,6 +1,6 @@
-"""The log in a request: raw, gzipped or a multipart field, received piece by piece under one limit.
+"""The log in a request: raw, packed or a multipart field, received piece by piece under one limit.
 
-request.stream() -> limited (as sent) -> gunzip -> limited (unpacked) -> raw bytes, or the form's `file`
+request.stream() -> limited (as sent) -> gunzip or unpack_zstd -> limited (unpacked) -> raw bytes, or the form's `file`
 """
 
 from __future__ import annotations
@@ -14,6 +14,7 @@ from starlette.formparsers import MultiPartException, MultiPartParser
 from starlette.requests import Request
 
 from service.api.gzip import gunzip
+from service.api.zstd import unpack_zstd
 from service.errors import ProblemError
 
 FIELD = "file"
@@ -25,7 +26,7 @@ async def read_log(request: Request, limit: int, time_limit_s: float) -> bytes:
     limit         bytes, as sent and unpacked
     time_limit_s  for all of it: a stalled upload must not hold its place for ever
 
-    Raises ProblemError: too-large, too-slow, unsupported-encoding, broken-gzip, broken-multipart,
+    Raises ProblemError: too-large, too-slow, unsupported-encoding, broken-gzip, broken-zstd, broken-multipart,
     unexpected-field, no-file-field.
     """
     try:
@@ -48,10 +49,12 @@ async def _read(request: Request, limit: int) -> bytes:
     encoding = request.headers.get("content-encoding", "identity").strip().lower()
     if encoding in ("gzip", "x-gzip"):
         pieces = limited(gunzip(pieces), limit)
+    elif encoding == "zstd":
+        pieces = limited(unpack_zstd(pieces), limit)
     elif encoding not in ("identity", ""):
         raise ProblemError(
             "unsupported-encoding",
-            f"Content-Encoding {encoding!r} is not understood. Send the log plain or as gzip.",
+            f"Content-Encoding {encoding!r} is not understood. Send the log plain, or as gzip or zstd.",
         )
     if request.headers.get("content-type", "").lower().startswith("multipart/form-data"):
         return await _from_form(request, pieces)

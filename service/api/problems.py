@@ -39,6 +39,7 @@ STATUS = {
     "too-large": 413,
     "unsupported-encoding": 415,
     "broken-gzip": 400,
+    "broken-zstd": 400,
     "broken-multipart": 400,
     "bad-request": 400,
     "disconnected": 400,
@@ -51,7 +52,7 @@ STATUS = {
 HEADERS = {
     "busy": {"Retry-After": "5"},
     "worker-lost": {"Retry-After": "1"},
-    "unsupported-encoding": {"Accept-Encoding": "gzip"},
+    "unsupported-encoding": {"Accept-Encoding": "gzip, zstd"},
 }
 
 

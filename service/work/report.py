@@ -29,15 +29,7 @@ def report(source: bytes, options: Options) -> ident.Report:
     Raises ident.IdentError where the log cannot be read or the request has no answer.
     """
     enter("reading")
-    record = ident.read_csv(
-        source,
-        columns=options.columns,
-        zone=options.zone,
-        date_order=options.date_order,
-        start=options.start,
-        counts_per_rev=options.counts_per_rev,
-    )
-    record = with_units(record, options.speed_unit, options.command_unit)
+    record = read(source, options)
     enter("analysing")
     return ident.analyse(
         record,
@@ -49,6 +41,19 @@ def report(source: bytes, options: Options) -> ident.Report:
         command_limits=(None, None) if options.command_limits is None else limits(options.command_limits),
         installed=None if options.installed is None else ident.PidSettings(*numbers(options.installed)),
     )
+
+
+def read(source: bytes, options: Options) -> ident.LoopRecord:
+    """A log as its options say. Raises ident.IdentError."""
+    record = ident.read_csv(
+        source,
+        columns=options.columns,
+        zone=options.zone,
+        date_order=options.date_order,
+        start=options.start,
+        counts_per_rev=options.counts_per_rev,
+    )
+    return with_units(record, options.speed_unit, options.command_unit)
 
 
 def to_json(report: ident.Report) -> bytes:
