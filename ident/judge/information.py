@@ -39,8 +39,8 @@ def too_little(fit: Fit) -> NotIdentifiable | None:
     if told.moved_by == "nothing":
         return NotIdentifiable(
             "not-identifiable",
-            "The loop is closed and its setpoint does not move, or not so that the command shows it: the command answers "
-            f"to load, noise or its own swinging, from which no model can be trusted. {MOVE_IT}",
+            "The loop is closed and its setpoint does not move, or not so that the command shows it: that "
+            f"answers to load, noise or its own swinging, from which no model can be trusted. {MOVE_IT}",
             {"moved_by": "nothing"},
         )
     widths = relative_widths(fit, told)
