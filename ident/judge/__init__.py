@@ -6,6 +6,7 @@ from ident.judge.crosscheck import CrossCheck, CrossChecks, cross_check
 from ident.judge.excitation import Excitation, excitation
 from ident.judge.information import unlogged_setpoint
 from ident.judge.operation import Operated, Operation, mixed, operation, operations
+from ident.judge.oscillation import sustained
 
 __all__ = [
     "Advice",
@@ -24,5 +25,6 @@ __all__ = [
     "mixed",
     "operation",
     "operations",
+    "sustained",
     "unlogged_setpoint",
 ]

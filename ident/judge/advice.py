@@ -32,7 +32,7 @@ MOST_ROWS = 20_000  # of a test laid out to judge it; a longer one is not advise
 class Advice:
     """The next test to run where the log is too poor, in the log's units.
 
-    size, hold_s, repetitions   of the command's step, s at each level, and how often up and down; None where the log
+    size, hold_s, repetitions   of the command's step with its sign, s at each level, how often; None where the log
                                 does not even suggest a plant
     widths                      half-widths of 95 % intervals to expect: of K and T over themselves, of L over T + L
     assumed                     the plant that this rests on: suggested by the log, not to be tuned from
@@ -74,14 +74,16 @@ def _designed(record: LoopRecord, guess: Fit, limits: tuple[float | None, float 
     repetitions = min(repetitions, MOST, int(MOST_ROWS * h / (2.0 * hold)))
     size = float(f"{size:.2g}") if room is None or float(f"{size:.2g}") <= room else size
     widths = {name: width * WANTED[name] / size for name, width in _widths_over(guess, hold, repetitions, h).items()}
-    u, now = record.command_unit or "command units", float(record.command[record.segments[-1].stop - 1])
+    u, now = record.command_unit or "command units", _middle(record)
     told = ", ".join(f"{name} to ±{100.0 * width:.0f} %" for name, width in widths.items())
+    bounded = "" if room is not None else " Its size is not held against the command's limits, as none were given."
     return Advice(
-        f"Log a test in manual, with the machine clear and allowed to change speed: from {now:.4g} {u}, where the "
-        f"log ends, step the command by {size:.3g} {u}, hold it for {hold:g} s, step back, hold again for {hold:g} s; "
-        f"{repetitions} times. Log command, speed and setpoint every {h:.3g} s or faster, from {QUIET} rows before the "
-        f"first move. If the motor is what this log suggests (K {K:.3g}, T {T:.3g} s, L {L:.3g} s: not to be tuned "
-        f"from), that tells {told} (L of T + L). Smaller steps tell less, in proportion.",
+        "Log a test in manual, with the machine clear and allowed to change speed: bring the command to about "
+        f"{now:.4g} {u}, wait until the speed has settled, move it to {now + size:.4g} {u}, hold for {hold:g} s, move "
+        f"it back, hold again for {hold:g} s; {repetitions} times.{bounded} Log command, speed and setpoint every "
+        f"{h:.3g} s or faster, from {QUIET} rows before the first move. If the motor is what this log suggests (K "
+        f"{K:.3g}, T {T:.3g} s, L {L:.3g} s: not to be tuned from), that tells {told} (L of T + L). Smaller steps tell "
+        "less, in proportion.",
         size,
         hold,
         repetitions,
@@ -109,10 +111,16 @@ def _widths_over(guess: Fit, hold: float, repetitions: int, h: float) -> dict[st
 
 
 def _room(record: LoopRecord, limits: tuple[float | None, float | None]) -> float | None:
-    """How far the command may step from where the log ends, the wider way; None without limits."""
-    now = float(record.command[record.segments[-1].stop - 1])
-    ways = [abs(limit - now) for limit in limits if limit is not None]
-    return ROOM * max(ways) if ways and max(ways) > 0.0 else None
+    """How far the command may step from the log's middle, with its sign: the wider way. None without limits."""
+    now = _middle(record)
+    low, high = limits
+    down = [ROOM * (low - now)] if low is not None and low < now else []
+    up = [ROOM * (high - now)] if high is not None and high > now else []
+    return max(down + up, key=abs, default=None)
+
+
+def _middle(record: LoopRecord) -> float:
+    return float(np.median(np.concatenate([record.command[s.slice] for s in record.segments])))
 
 
 def _plain(record: LoopRecord) -> Advice:

@@ -19,6 +19,7 @@ from ident.judge import (
     excitation,
     mixed,
     operations,
+    sustained,
     unlogged_setpoint,
 )
 from ident.loop import PidSettings
@@ -110,7 +111,7 @@ def analyse(
     if in_machine is not None and fitted is not None:
         in_machine = replace(in_machine, predicted=installed_outcome(in_machine, fitted, held, compute_delay))
     operated = operations(record, recovered)
-    found += [*mixed(record, operated), *seen, *compared]
+    found += [*mixed(record, operated), *sustained(record), *seen, *compared]
     moved = excitation(record, refused)
     advised = None if moved.sufficient else advice(record, guess[0] if guess else None, command_limits)
     tunings = tuple(

@@ -5,6 +5,7 @@ from __future__ import annotations
 from dataclasses import replace
 from pathlib import Path
 
+import numpy as np
 import pytest
 
 import ident
@@ -53,15 +54,22 @@ def test_a_designed_test_stays_within_the_commands_limits() -> None:
         if free.size is not None:  # this log suggests a plant, the others only that a test is needed
             break
     assert free.size is not None
-    now = float(log.command[-1])
+    now = float(np.median(log.command))
     held = ident.analyse(
         log, period=0.05, subspace=False, command_limits=(now - 0.2 * free.size, now + 0.5 * free.size)
     ).record.advice
     assert held is not None
     assert held.size is not None
     assert held.repetitions is not None
-    assert held.size <= 0.4 * free.size * 1.001
+    assert 0.0 < held.size <= 0.4 * free.size * 1.001
     assert held.repetitions > 2
+    # Where there is more room below, the step goes down, and stays above the limit.
+    below = ident.analyse(
+        log, period=0.05, subspace=False, command_limits=(now - 0.5 * free.size, now + 0.1 * free.size)
+    ).record.advice
+    assert below is not None
+    assert below.size is not None
+    assert -0.5 * free.size < below.size < 0.0
 
 
 @pytest.mark.parametrize("name", ["mouse_pid1_limitcycle", "mouse_pid2_disturbed"])
