@@ -79,6 +79,11 @@ export async function analyse(log, options, signal) {
   return response.json();
 }
 
+/** What a log would be understood as. */
+export async function preview(log, options, signal) {
+  return (await call(`/v1/logs/preview?${query(options)}`, { method: "POST", headers: { "Content-Type": "text/csv" }, body: log, signal })).json();
+}
+
 const loopPath = (name) => `/v1/loops/${encodeURIComponent(name)}`;
 
 /** One page of loops: {items, after}, `after` naming the next page or null. */

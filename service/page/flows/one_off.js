@@ -2,6 +2,7 @@
 
 import { analyse, keep, loopNames, sample as fetchSample, samples } from "/page/api.js";
 import { fail } from "/page/flows/failing.js";
+import { look } from "/page/flows/look.js";
 import { report as reportView } from "/page/report/report.js";
 import { options as readOptions } from "/page/views/options.js";
 import { progress as progressView } from "/page/views/progress.js";
@@ -22,12 +23,15 @@ async function start(visit, told) {
     // Without the lists the page still takes logs; the reason is shown where they would be.
     notice ??= error.message;
   }
-  const take = (file, options, loop) => (loop ? hand(visit, file, options, loop) : bring(file, options));
+  const go = (file, options, loop) => (loop ? hand(visit, file, options, loop) : bring(file, options));
+  const take = (file, { look: first, ...options }, loop) => (first
+    ? look(visit, file, options, loop, (confirmed) => go(file, confirmed, loop))
+    : go(file, options, loop));
   const bring = (file, options) => {
     current = { name: file.name, body: file, options };
     visit.to("/report");
   };
-  const bringSample = async (name, options, loop) => {
+  const bringSample = async (name, { look: _, ...options }, loop) => {
     if (loop) {
       const log = await fetchSample(name).catch((error) => fail(visit, error, { name }));
       return log && hand(visit, new File([log], name), options, loop);

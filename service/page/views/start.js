@@ -39,7 +39,8 @@ export function start({ samples, loops, notice, onLog, onSample }) {
   zone.addEventListener("dragover", lit(true));
   zone.addEventListener("dragleave", lit(false));
   zone.addEventListener("drop", (event) => { lit(false)(event); take(event.dataTransfer.files[0]); });
-  form.append(destination(loops), zone, h("details", { class: "fold", "data-testid": "options" },
+  const first = h("label", { class: "tick" }, h("input", { type: "checkbox", name: "look", value: "yes", "data-testid": "look" }), " Show me first how it is read, and ask before going on");
+  form.append(destination(loops), zone, h("p", { class: "hint" }, first), h("details", { class: "fold", "data-testid": "options" },
     h("summary", {}, "Options: target, controller period, zone, dates, column names"), optionFields()));
   return h("section", { class: "sheet start" },
     h("div", { class: "opening" },
