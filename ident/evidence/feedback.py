@@ -10,7 +10,6 @@ from ident.evidence.normal import solve_normal
 
 Floats = NDArray[np.float64]
 
-SELDOM = 0.2  # share of rows with a move of the command, below which nobody closes a loop with it
 SHARE = 0.02  # of the command's moves that the speed must explain
 CLEARLY = 1e-6
 LAGS = 3
@@ -23,7 +22,7 @@ def feedback(commands: list[Floats], speeds: list[Floats], setpoints: list[Float
     (Granger 1969, Econometrica 37, 424-438). Runs of rows without a gap, (n,) each; a setpoint where it is known.
     """
     moves = np.concatenate([np.diff(u) for u in commands])
-    if not np.any(moves) or float(np.mean(moves != 0.0)) <= SELDOM:
+    if not np.any(moves):
         return False
     own, answer, target = [], [], []
     for u, y, r in zip(commands, speeds, setpoints or [None] * len(commands), strict=True):
