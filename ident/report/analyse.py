@@ -56,7 +56,7 @@ def analyse(
     model          fopdt, sopdt, or auto to let the data choose
     hold           what the command did between samples: zero-order, linear, or None to let the data choose
     Ms             robustness target: max(Ms, Mt) of a proposal is at most this
-    form, goal     pi; integral (the largest ki)
+    form, goal     pi, pid; integral (the largest ki), load, setpoint (the least IAE after a unit step of either)
     period         s, of the controller; None: as seen in the log, else its sample time,
                    with a finding; 0 for an analogue controller
     compute_delay  s, from reading the speed to writing the command

@@ -127,7 +127,10 @@ def _to_set(made: Realisations) -> Iterator[str]:
     forms = made.forms
     yield f"  to type     ideal: Kp {forms.ideal.Kp:.5g}, {forms.resets_per_minute:.4g} resets per minute"
     parallel = forms.parallel
-    yield f"              parallel: Kp {parallel.Kp:.5g}, ki {parallel.ki:.5g} per s, kd {parallel.kd:.5g} s"
+    yield (
+        f"              parallel: Kp {parallel.Kp:.5g}, ki {parallel.ki:.5g} (Kp's unit per s), "
+        f"kd {parallel.kd:.5g} (Kp's unit times s)"
+    )
     if forms.series is None:
         yield f"              series: none. {forms.series_because}"
     else:

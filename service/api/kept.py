@@ -30,7 +30,7 @@ class Wanted(BaseModel):
     model_config = ConfigDict(frozen=True, extra="forbid")
 
     Ms: float | None = Field(
-        default=None, gt=1.0, le=10.0, allow_inf_nan=False, description="Robustness target: max(Ms, Mt) at most this."
+        default=None, gt=1.0, le=5.0, allow_inf_nan=False, description="Robustness target: max(Ms, Mt) at most this."
     )
     form: Literal["pi", "pid"] | None = None
     goal: Literal["integral", "load", "setpoint"] | None = None

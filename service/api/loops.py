@@ -88,8 +88,8 @@ def put_loop(request: Request, response: Response, loop: LoopName, settings: Ann
     """Replaces all settings; what is left out is unknown from now on. Reports that exist stay as they are.
 
     Later logs use the units, column names, zone, order of dates, period and defaults where nothing else comes with
-    them. History and drift are reckoned with the settings as they stand. A test that is
-    advised stays within the command's limits.
+    them. History and drift are reckoned with the settings as they stand. A test that is advised stays within the
+    command's limits.
     """
     service = state(request)
     kept = LoopSettings(**{name: getattr(settings, name) for name in LoopSettings.model_fields})

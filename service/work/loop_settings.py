@@ -76,7 +76,7 @@ class Defaults(Part):
     """What is asked of an analysis where the log's own address does not say."""
 
     model: Literal["fopdt", "sopdt", "arx", "auto"] = "auto"
-    Ms: float = Field(default=1.6, gt=1.0, le=10.0, allow_inf_nan=False)
+    Ms: float = Field(default=1.6, gt=1.0, le=5.0, allow_inf_nan=False)
     form: Literal["pi", "pid"] = "pi"
     goal: Literal["integral", "load", "setpoint"] = "integral"
 

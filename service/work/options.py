@@ -33,7 +33,7 @@ def _unit(role: str) -> Any:
     )
 
 
-def numbers(told: str) -> tuple[float, ...]:
+def settings_told(told: str) -> tuple[float, ...]:
     """Kp, Ti and, where told, Td, Tf, b. Raises ValueError with what is wrong."""
     found = tuple(float(number) for number in told.split(","))
     if len(found) not in (2, 5) or not all(math.isfinite(number) for number in found):
@@ -41,6 +41,14 @@ def numbers(told: str) -> tuple[float, ...]:
     if found[0] == 0.0 or found[1] <= 0.0 or min(found[2:4], default=0.0) < 0.0:
         raise ValueError("Kp must not be 0, Ti must be above 0, Td and Tf not below 0")
     return found
+
+
+def limits_told(told: str) -> tuple[float, float]:
+    """(low, high) of "low,high". Raises ValueError with what is wrong."""
+    found = [float(number) for number in told.split(",")]
+    if len(found) != 2 or not -1e9 <= found[0] < found[1] <= 1e9:
+        raise ValueError("give two numbers, low,high, the lower first, such as 0,100")
+    return found[0], found[1]
 
 
 class Options(BaseModel):
@@ -52,7 +60,7 @@ class Options(BaseModel):
     Ms: float = Field(
         default=1.6,
         gt=1.0,
-        le=10.0,
+        le=5.0,
         allow_inf_nan=False,
         description="Robustness target: max(Ms, Mt) is at most this.",
     )
@@ -66,7 +74,7 @@ class Options(BaseModel):
         ge=0.0,
         le=86_400.0,
         allow_inf_nan=False,
-        description="Period of the controller in seconds, 0 if analogue; unset: the log's sample time.",
+        description="Period of the controller, s; 0 if analogue; unset: as the log shows, else its sample time.",
     )
     installed: str | None = Field(
         default=None,
@@ -114,14 +122,14 @@ class Options(BaseModel):
     @classmethod
     def _checked(cls, told: str | None) -> str | None:
         if told is not None:
-            numbers(told)
+            settings_told(told)
         return told
 
     @field_validator("command_limits")
     @classmethod
     def _ordered(cls, told: str | None) -> str | None:
         if told is not None:
-            limits(told)
+            limits_told(told)
         return told
 
     def text(self) -> str:
@@ -140,11 +148,3 @@ def wrong_options(faults: Sequence[Any] | ValidationError) -> Problem:
         evidence[name] = "there is no such option" if unknown else str(fault.get("msg"))
     told = "; ".join(f"{name}: {said}" for name, said in evidence.items())
     return Problem("invalid-option", f"Correct these options and send the log again. {told}.", evidence)
-
-
-def limits(text: str) -> tuple[float, float]:
-    """(low, high) of "low,high". Raises ValueError."""
-    parts = [float(part) for part in text.split(",")]
-    if len(parts) != 2 or not -1e9 <= parts[0] < parts[1] <= 1e9:
-        raise ValueError("give two numbers, low,high, the lower first, such as 0,100")
-    return parts[0], parts[1]

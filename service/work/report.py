@@ -10,7 +10,7 @@ from pydantic import TypeAdapter
 
 import ident
 from service.errors import Problem
-from service.work.options import Options, limits, numbers
+from service.work.options import Options, limits_told, settings_told
 from service.work.stages import enter
 from service.work.units import with_units
 
@@ -38,8 +38,8 @@ def report(source: bytes, options: Options) -> ident.Report:
         form=options.form,
         goal=options.goal,
         period=options.period,
-        command_limits=(None, None) if options.command_limits is None else limits(options.command_limits),
-        installed=None if options.installed is None else ident.PidSettings(*numbers(options.installed)),
+        command_limits=(None, None) if options.command_limits is None else limits_told(options.command_limits),
+        installed=None if options.installed is None else ident.PidSettings(*settings_told(options.installed)),
     )
 
 

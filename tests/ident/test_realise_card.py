@@ -131,7 +131,7 @@ def test_finer_series_come_nearer() -> None:
 
 
 def test_the_optimum_is_not_beaten_by_a_random_search() -> None:
-    """2,000 random networks scaled to the target by brute force on a dense grid: none has a larger integral gain."""
+    """300 random networks scaled to the target by brute force on a dense grid: none has a larger integral gain."""
     on = grid(PLANT)
     best = series_optimum(on, 1.6, N=10.0)
     random = np.random.default_rng(1)

@@ -40,7 +40,7 @@ export function another(report, preset, { ask, onAsked }) {
   const output = h("div", { "aria-live": "polite", "data-testid": "retuned" });
   const button = h("button", { class: "button", type: "submit" }, "Propose");
   const form = h("form", { class: "options", "data-testid": "another", onsubmit: (event) => { event.preventDefault(); propose(); } },
-    field("Ms", "Target Ms", null, { type: "number", min: "1.01", max: "10", step: "any", required: true, value: preset.Ms ?? report.options.Ms }),
+    field("Ms", "Target Ms", null, { type: "number", min: "1.01", max: "5", step: "any", required: true, value: preset.Ms ?? report.options.Ms }),
     field("form", "Controller", null, { value: preset.form ?? report.options.form }, Object.entries(FORMS)),
     field("goal", "Aim", null, { value: preset.goal ?? report.options.goal }, Object.entries(GOALS)),
     field("period", "Controller period, s", null, { type: "number", min: "0", step: "any", placeholder: "as in the report", value: preset.period ?? "" }),

@@ -39,7 +39,7 @@ export const GOALS = { integral: "Largest integral gain", load: "Least error aft
 
 export const METHODS = {
   "largest-ki": "Largest integral gain within the target",
-  "largest-ki-calm-derivative": "Largest integral gain that forgives the derivative",
+  "largest-ki-calm-derivative": "Largest integral gain with a calmer derivative",
   "held-for-95-percent": "Keeps the target on 95 % of the plants that the log allows",
   "least-iae-load": "Smallest error after a load step within the target",
   "least-iae-setpoint": "Smallest error after a setpoint step within the target",

@@ -10,8 +10,8 @@ const ROLES = [["time", "Time"], ["setpoint", "Setpoint"], ["command", "Command"
 export function optionFields(preset = {}) {
   return h("div", { class: "options" },
     field("Ms", "Target Ms", "The largest peak of the sensitivity you accept. 1.4 is cautious, 1.6 usual, 2.0 brisk.",
-      { type: "number", min: "1.01", max: "10", step: "any", placeholder: "1.6", value: preset.Ms ?? "" }),
-    field("period", "Controller period, s", "How often the controller computes. Empty: the log's sample time; 0: an analogue controller.",
+      { type: "number", min: "1.01", max: "5", step: "any", placeholder: "1.6", value: preset.Ms ?? "" }),
+    field("period", "Controller period, s", "How often the controller computes. Empty: as the log shows it, else its sample time; 0: an analogue controller.",
       { type: "number", min: "0", step: "any", placeholder: "as the log", value: preset.period ?? "" }),
     field("zone", "Time zone of the stamps", "Only for stamps without an offset, for example Europe/Vienna.",
       { type: "text", placeholder: "from the log", value: preset.zone ?? "" }),

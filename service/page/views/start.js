@@ -45,7 +45,7 @@ export function start({ samples, loops, notice, onLog, onSample }) {
   return h("section", { class: "sheet start" },
     h("div", { class: "opening" },
       h("h1", {}, "From a speed loop’s log to settings you can defend"),
-      h("p", { class: "lead" }, "Drop a log of one motor speed loop. Back comes a model of the motor with its uncertainty, and PI settings that keep the robustness you ask for, with the response to expect."),
+      h("p", { class: "lead" }, "Drop a log of one motor speed loop. Back comes a model of the motor with its uncertainty, and PI or PID settings that keep the robustness you ask for, with the response to expect."),
       notice && h("p", { class: "notice", role: "status", "data-testid": "notice" }, notice)),
     form,
     h("div", { class: "advice" },

@@ -6,6 +6,7 @@ import { findings } from "/page/report/findings.js";
 import { ROLES, word } from "/page/report/words.js";
 import { optionFields } from "/page/views/options.js";
 
+const LAYOUTS = { wide: "one row a moment", long: "one row a value", paired: "a time beside each value" };
 const HEAD = ["Taken as", "Column in the log", "Because", "Unit", "From", "To"];
 
 const rows = (columns) => columns.map(({ role, header, why, unit, lowest, highest }) => [
@@ -14,15 +15,15 @@ const rows = (columns) => columns.map(({ role, header, why, unit, lowest, highes
 function facts(seen) {
   const left = Object.entries(seen.dropped).map(([reason, count]) => `${count} (${reason})`).join(", ");
   return [
-    ["Rows", `${seen.rows}, of them ${seen.rows_used} to be used`],
+    ["Rows", `${seen.rows}, ${seen.rows_used} of them to be used`],
     left && ["Left out", left],
     ["First stamp", seen.first_stamp], ["Last stamp", seen.last_stamp],
     ["Start", instant(seen.start) ?? "no absolute time: give the zone of the stamps if they have one"],
     ["Duration", duration(seen.duration_s)],
-    ["Sample time", seen.sample_time_s === null ? `uneven, ${withUnit(exact(seen.median_step_s), "s")} in the middle` : withUnit(exact(seen.sample_time_s), "s")],
+    ["Sample time", seen.sample_time_s === null ? `uneven; half of the steps are below ${withUnit(significant(seen.median_step_s, 3), "s")}` : withUnit(exact(seen.sample_time_s), "s")],
     seen.gap_count > 0 && ["Gaps", `${seen.gap_count}; the longest ${withUnit(significant(Math.max(...seen.gaps.map((gap) => gap.length_s)), 3), "s")}`],
-    seen.clock_step_count > 0 && ["Clock set back", `${seen.clock_step_count} times`],
-    ["Written as", `${seen.layout} rows, ${seen.encoding}, decimal ${seen.decimal === "," ? "comma" : "point"}`],
+    seen.clock_step_count > 0 && ["Clock set back", seen.clock_step_count === 1 ? "once" : `${seen.clock_step_count} times`],
+    ["Written as", `${LAYOUTS[seen.layout] ?? seen.layout}, ${seen.encoding}, decimal ${seen.decimal === "," ? "comma" : "point"}`],
   ].filter(Boolean);
 }
 
