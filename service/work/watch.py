@@ -192,7 +192,7 @@ def _night(numbers: Numbers, gain_unit: str | None) -> tuple[ident.Night | None,
 
 
 def _period(settings: LoopSettings, numbers: Numbers) -> float:
-    """The controller's period, or the log's sample time in its stead."""
+    """The controller's period as told, or what the report took for it."""
     return settings.period if settings.period is not None else numbers.period_s or 0.0
 
 
