@@ -112,7 +112,7 @@ class LoopSettings(Part):
     counts_per_rev: float | None = Field(default=None, gt=0.0, le=LARGEST, allow_inf_nan=False)
     installed: Controller | None = Field(default=None, description="The settings in the machine.")
     period: Seconds | None = Field(
-        default=None, description="Of the controller, s; 0 for an analogue one; null: as each log shows, else its sample time."
+        default=None, description="Of the controller, s; 0: analogue; null: as each log shows, else its sample time."
     )
     command_limits: CommandLimits | None = Field(default=None, description="In the command's unit.")
     defaults: Defaults = Defaults()
