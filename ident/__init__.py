@@ -10,7 +10,17 @@ from ident.realise import CardReport, CardScale, Limits, Parts, Realisations, ca
 from ident.record import LoopRecord, Preview, preview, previewed, read_csv
 from ident.report import Report, TuningReport, analyse, summary
 from ident.tune import Proposals, Rule, Tuning, propose, tune
-from ident.watch import Drift, MarginDrift, Night, ParameterDrift, PracticalSize, drift, drift_history
+from ident.watch import (
+    Drift,
+    MarginDrift,
+    MarginInterval,
+    Night,
+    ParameterDrift,
+    PracticalSize,
+    drift,
+    drift_history,
+    margin_interval,
+)
 
 __all__ = [
     "Arx",
@@ -24,6 +34,7 @@ __all__ = [
     "Limits",
     "LoopRecord",
     "MarginDrift",
+    "MarginInterval",
     "Margins",
     "Motor",
     "Night",
@@ -50,6 +61,7 @@ __all__ = [
     "drift_history",
     "fit",
     "from_nameplate",
+    "margin_interval",
     "margins",
     "preview",
     "previewed",

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from collections.abc import Callable
 from dataclasses import replace
 from importlib.metadata import PackageNotFoundError, version
 
@@ -50,6 +51,7 @@ def analyse(
     subspace: bool = True,
     installed: PidSettings | None = None,
     command_limits: tuple[float | None, float | None] = (None, None),
+    on_stage: Callable[[str], None] = lambda _: None,
 ) -> Report:
     """Everything one record says: model, proposals, margins, predicted outcome.
 
@@ -66,6 +68,7 @@ def analyse(
     subspace       cross-check the model by a subspace method too, which is slow to load the first time
     installed      settings told to be in the machine; compared with those that a closed-loop log shows
     command_limits (low, high) of the command, where known: a test that is advised stays within them
+    on_stage       called with fitting, judging, tuning as each begins; tuning only where there is a model
 
     A record with too little in it gives a report without fits that says so. Raises Refused for options without
     an answer.
@@ -82,7 +85,9 @@ def analyse(
         "seed": seed,
     }
     found: list[Finding] = []
+    on_stage("fitting")
     fits, refused = _fit(record, model, hold)
+    on_stage("judging")
     guess = fits
     if fits:
         fits, refused = believed(record, fits)
@@ -96,6 +101,7 @@ def analyse(
     if fitted is not None:
         checked = cross_check(record, fitted, subspace=subspace)
         found += [*assumed, *unlogged_setpoint(fitted), *checked.findings]
+        on_stage("tuning")
         timing = {"period": held, "compute_delay": compute_delay}
         drawn = plausible(fitted, np.random.default_rng(seed), PLANTS)
         lag = float(getattr(fitted.model, "T", 0.0) or getattr(fitted.model, "T1", 0.0) or held)

@@ -8,12 +8,10 @@ from dataclasses import replace
 from ident.loop import PidSettings
 from ident.watch.baseline import Baseline, baseline_of
 from ident.watch.coordinates import covariance, place
-from ident.watch.margin import Controller, margin_drift
+from ident.watch.margin import Controller, SettingsFrom, margin_drift
 from ident.watch.night import Estimated, Night
 from ident.watch.sizes import PracticalSize
 from ident.watch.verdict import Drift, verdict
-
-PLANTS = 400
 
 
 def drift(
@@ -21,6 +19,7 @@ def drift(
     tonight: Night | Estimated | None,
     *,
     settings: PidSettings | None = None,
+    settings_from: SettingsFrom = "installed",
     period: float = 0.0,
     compute_delay: float = 0.0,
     target: float = 1.6,
@@ -31,7 +30,8 @@ def drift(
     """Whether a night's plant has moved from the baseline's, and what the controller makes of it.
 
     baseline       one or several nights, or first-order fits;  tonight  one more, or None where its log gave no fit
-    settings       installed; None: those proposed for the baseline's plant at the target
+    settings       in the machine; None: those proposed for the baseline's plant at the target
+    settings_from  who says so, for the answer: installed (told), or log (seen in one)
     period         controller sample time, s, 0 for analogue;  compute_delay  s;  target  Ms
     significance   of the joint test, per night; 0.0027 is three standard deviations
     practical      least changes that count; None: 10 % of K, 15 % of T and of K/T, L as PracticalSize says
@@ -40,7 +40,7 @@ def drift(
     `Night` and `margins`.
     """
     level, night = baseline_of(baseline, practical or PracticalSize()), as_night(tonight)
-    controller = Controller(settings, period, compute_delay, target)
+    controller = Controller(settings, settings_from, period, compute_delay, target)
     return with_margin(verdict(level, night, significance), level, night, controller, seed)
 
 
@@ -53,5 +53,5 @@ def with_margin(found: Drift, level: Baseline, night: Night | None, controller: 
     """The same verdict with the margins of the controller."""
     z = place(night) if night else None
     own = covariance(night) if night else None
-    margin, findings = margin_drift(level.level.z, z, own, controller, PLANTS, seed)
+    margin, findings = margin_drift(level.level.z, z, own, controller, seed)
     return replace(found, margin=margin, findings=found.findings + findings)

@@ -11,7 +11,7 @@ from typing import TypeVar
 from ident.loop import PidSettings
 from ident.watch.baseline import baseline_of
 from ident.watch.drift import as_night, with_margin
-from ident.watch.margin import Controller
+from ident.watch.margin import Controller, SettingsFrom
 from ident.watch.night import Estimated, Night
 from ident.watch.sizes import PracticalSize
 from ident.watch.verdict import Drift, ParameterDrift, Verdict, verdict
@@ -24,6 +24,7 @@ def drift_history(
     nights: Iterable[tuple[Key, Night | Estimated | None]],
     *,
     settings: PidSettings | None = None,
+    settings_from: SettingsFrom = "installed",
     period: float = 0.0,
     compute_delay: float = 0.0,
     target: float = 1.6,
@@ -52,7 +53,7 @@ def drift_history(
         found.append((key, replace(said, parameters=parameters, since=_since(run, "", said.verdict, key))))
     if found:
         key, last = found[-1]
-        controller = Controller(settings, period, compute_delay, target)
+        controller = Controller(settings, settings_from, period, compute_delay, target)
         found[-1] = (key, with_margin(last, level, ordered[-1][1], controller, seed))
     return tuple(found)
 

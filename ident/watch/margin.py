@@ -1,17 +1,12 @@
-"""Margin: what the controller in the machine makes of tonight's plant, with an interval from plausible plants.
+"""Margin: what the controller in the machine makes of tonight's plant, beside the baseline's.
 
-Plants are drawn as b exp(-L s)/(s + a) from the night's covariance, a and L cut at 0. All of them are swept at once
-on one grid, which gives Ms to about 1e-3; the two point values come from `ident.loop.margins`. A plant that the
-controller does not stabilise has no Ms: it counts as infinite, so an end of the interval that lies among such
-plants is None, and their share is told.
+The two point values come from `ident.loop.margins`, the interval from `interval.py`.
 """
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from typing import Literal
-
-import numpy as np
 
 from ident.errors import Refused
 from ident.findings import Finding
@@ -19,10 +14,9 @@ from ident.loop import PidSettings, margins
 from ident.plants import Fopdt
 from ident.record.segments import Floats
 from ident.tune import tune
+from ident.watch.interval import over_plants
 
-LOW, HIGH = 1e-2, 1e2  # abs of the loop below and above which S is 1 or 0
-POINTS = 1200
-TURNS = 100.0  # rad of delay phase; a loop still above 1 there is unstable or will never be installed
+SettingsFrom = Literal["installed", "log", "baseline"]
 
 
 @dataclass(frozen=True, slots=True)
@@ -33,7 +27,8 @@ class MarginDrift:
     ci95                  of Ms_now; an end is None where that end of the plausible plants is unstable
     unstable_share        of the plausible plants
     target                what the settings should hold
-    settings_from         installed: as given; baseline: proposed for the baseline's plant, as none were given
+    settings_from         installed, log: as given, told or seen in a log; baseline: proposed for the baseline's plant,
+                          as none were given
     """
 
     Ms_baseline: float | None
@@ -42,7 +37,7 @@ class MarginDrift:
     unstable_share: float | None
     target: float
     settings: PidSettings
-    settings_from: Literal["installed", "baseline"]
+    settings_from: SettingsFrom
 
 
 @dataclass(frozen=True, slots=True)
@@ -50,6 +45,7 @@ class Controller:
     """What is in the machine, or would be, and how often it acts; times in s."""
 
     settings: PidSettings | None
+    source: SettingsFrom
     period: float
     compute_delay: float
     target: float
@@ -66,12 +62,10 @@ class Controller:
 
 
 def margin_drift(
-    z0: Floats, z: Floats | None, covariance: Floats | None, controller: Controller, plants: int, seed: int
+    z0: Floats, z: Floats | None, covariance: Floats | None, controller: Controller, seed: int
 ) -> tuple[MarginDrift | None, tuple[Finding, ...]]:
     """Margins at the baseline's coordinates z0 (3,) and tonight's z with covariance (3, 3); None without settings."""
-    chosen: Literal["installed", "baseline"] = "installed"
     if controller.settings is None:
-        chosen = "baseline"
         try:
             proposed = tune(
                 plant_at(z0),
@@ -88,73 +82,19 @@ def margin_drift(
                     f"is no margin to watch: {error.message}",
                 ),
             )
-        controller = Controller(proposed.settings, controller.period, controller.compute_delay, controller.target)
+        controller = replace(controller, settings=proposed.settings, source="baseline")
     settings = controller.settings
     assert settings is not None
-    before = controller.on(plant_at(z0))
-    if z is None or covariance is None:
-        return MarginDrift(before, None, (None, None), None, controller.target, settings, chosen), ()
-    Ms = sensitivities(plausible(z, covariance, plants, seed), settings, controller.lag)
-    low, high = (float(v) for v in np.quantile(Ms, (0.025, 0.975), method="closest_observation"))
-    ends = (low if np.isfinite(low) else None, high if np.isfinite(high) else None)
-    share = float(np.mean(np.isinf(Ms)))
-    return MarginDrift(before, controller.on(plant_at(z)), ends, share, controller.target, settings, chosen), ()
+    before, now = controller.on(plant_at(z0)), None
+    ends: tuple[float | None, float | None] = (None, None)
+    share = None
+    if z is not None and covariance is not None:
+        found = over_plants(z, covariance, settings, controller.lag, seed)
+        now, ends, share = controller.on(plant_at(z)), found.ci95, found.unstable_share
+    return MarginDrift(before, now, ends, share, controller.target, settings, controller.source), ()
 
 
 def plant_at(z: Floats) -> Fopdt:
     """The plant at coordinates (b, a, L), a > 0."""
     b, a, L = (float(v) for v in z)
     return Fopdt(b / a, 1.0 / a, max(L, 0.0))
-
-
-def plausible(z: Floats, covariance: Floats, plants: int, seed: int) -> Floats:
-    """(plants, 3) coordinates drawn around z, with a and L at least 0."""
-    size = np.sqrt(np.maximum(np.diagonal(covariance), 1e-300))
-    values, vectors = np.linalg.eigh(covariance / np.outer(size, size))
-    root = size[:, None] * vectors * np.sqrt(np.maximum(values, 0.0))
-    drawn = z + np.random.default_rng(seed).standard_normal((plants, 3)) @ root.T
-    drawn[:, 1:] = np.maximum(drawn[:, 1:], 0.0)
-    return np.asarray(drawn)
-
-
-def sensitivities(z: Floats, settings: PidSettings, lag: float) -> Floats:
-    """Ms of each plant (n, 3) with the settings, (n,); inf where the loop is unstable.
-
-    lag  s, added to each dead time. Stability by the turns of 1 + L, as in `ident.loop.nyquist`.
-    """
-    w = _band(z, settings, lag)
-    loop = _loop(z, w, settings, lag)
-    distance = 1.0 + loop
-    turned = np.sum(np.angle(distance[:, 1:] / distance[:, :-1]), axis=1)
-    start = np.angle(distance[:, 0] * 1j) - np.pi / 2.0
-    right_sign = z[:, 0] * settings.Kp > 0.0
-    stable = right_sign & (np.abs(start + turned) < 0.75 * np.pi) & (np.abs(loop[:, -1]) < 1.0)
-    return np.where(stable, np.maximum(_peak(1.0 / np.abs(distance)), 1.0), np.inf)
-
-
-def _band(z: Floats, settings: PidSettings, lag: float) -> Floats:
-    """Frequencies where any of the loops is neither huge nor tiny."""
-    scale = 1.0 / (float(z[:, 2].mean()) + lag + float(1.0 / (z[:, 1].mean() + 1.0 / settings.Ti)))
-    wide = scale * np.geomspace(1e-5, 1e6, 600)
-    size = np.abs(_loop(z, wide, settings, lag))
-    decided = wide[((size > LOW) & (size < HIGH)).any(axis=0)]
-    usual = float(np.median(z[:, 2])) + lag
-    top = min(float(decided[-1]), TURNS / usual) if usual > 0.0 else float(decided[-1])
-    return np.geomspace(min(float(decided[0]), top / 10.0), top, POINTS)
-
-
-def _loop(z: Floats, w: Floats, settings: PidSettings, lag: float) -> np.ndarray:
-    b, a, L = (column[:, None] for column in z.T)
-    controller = settings.frequency_response(w)
-    return np.asarray(b * np.exp(-1j * (L + lag) * w) / (1j * w + a) * controller)
-
-
-def _peak(heights: Floats) -> Floats:
-    """Maximum of each row, a parabola laid through it and its neighbours."""
-    top = np.clip(np.argmax(heights, axis=1), 1, heights.shape[1] - 2)
-    rows = np.arange(len(heights))
-    before, at, after = (heights[rows, top + k] for k in (-1, 0, 1))
-    bend = before - 2.0 * at + after
-    with np.errstate(all="ignore"):
-        rise = np.where(bend < 0.0, (after - before) ** 2 / (-8.0 * bend), 0.0)
-    return np.asarray(np.where((at >= before) & (at >= after), at + rise, heights.max(axis=1)))

@@ -17,8 +17,9 @@ from service.api.paging import LINK, After, Limit, page
 from service.api.problems import documented
 from service.api.state import state
 from service.store import KeptReport
-from service.work import watch
+from service.work import history, watch
 from service.work.numbers import Movement, Parameter
+from service.work.watched import Source
 
 router = APIRouter(prefix="/v1/loops/{loop}", tags=["watching"])
 
@@ -37,8 +38,11 @@ class Row:
     """What one report says, for a history.
 
     at         where the log stands: its own time, or that of its receipt where it has none
+    parameters, derived   of the model that the report chose;  first_order  K, T, L of the first-order fit beside it
     margins    that the controller would have on this log's plant, taken as first order
-    margins_of the installed controller as set now, or, where none is known, the one proposed for the baseline
+    margins_interval   of its Ms over the plants that this log's covariance allows; null where there is none
+    margins_of installed: the controller as set now; log: where none is set, the one that the latest log with a visible
+               controller shows; baseline: where there is none either, the one proposed for the baseline
     proposed   settings that this report recommends
     """
 
@@ -51,13 +55,15 @@ class Row:
     model: str | None
     parameters: dict[str, Parameter]
     derived: dict[str, Parameter]
+    first_order: dict[str, Parameter]
     fit_percent: float | None
     rms_residual: float | None
     speed_unit: str
     command_movement: Movement
     excitation: Excited
     margins: ident.Margins | None
-    margins_of: Literal["installed", "baseline"] | None
+    margins_interval: ident.MarginInterval | None
+    margins_of: Source | None
     proposed: dict[str, float] | None
     in_baseline: bool
 
@@ -95,6 +101,7 @@ class Margin:
     """Ms of the controller on the baseline's plant and on the last log's, with its 95 % interval.
 
     An end of the interval is null where the loop is unstable there; unstable_share says for how much.
+    settings_from    as margins_of in the history;  seen_in  the report whose log shows them, with "log"
     """
 
     Ms_baseline: float | None
@@ -103,7 +110,8 @@ class Margin:
     target: float
     unstable_share: float | None
     settings: ident.PidSettings
-    settings_from: Literal["installed", "baseline"]
+    settings_from: Source
+    seen_in: str | None
 
 
 @dataclass(frozen=True, slots=True)
@@ -159,7 +167,7 @@ def get_history(
     store = state(request).store
     kept = existing(store, loop)
     try:
-        found = watch.history(store, kept, place_of(store, loop, after), limit + 1)
+        found = history.history(store, kept, place_of(store, loop, after), limit + 1)
     except ident.IdentError as error:
         raise problem_of(error) from error
     shown = page(request, response, found, limit, lambda row: row.report.id)
@@ -200,13 +208,13 @@ def get_drift(request: Request, loop: LoopName) -> Drift:
     return _drift(kept.baseline, found)
 
 
-def _row(row: watch.HistoryRow, in_baseline: bool) -> Row:
+def _row(row: history.HistoryRow, in_baseline: bool) -> Row:
     report, numbers = row.report, row.numbers
     return Row(
         report.id, report.analysis_id, report.log_id, report.start, report.place, numbers.duration_s,
-        numbers.model, numbers.parameters, numbers.derived, numbers.fit_percent, numbers.rms_residual,
-        numbers.speed_unit, numbers.movement, Excited(numbers.sufficient, numbers.reason),
-        row.margins, row.margins_of, numbers.proposed, in_baseline,
+        numbers.model, numbers.parameters, numbers.derived, numbers.first_order, numbers.fit_percent,
+        numbers.rms_residual, numbers.speed_unit, numbers.movement, Excited(numbers.sufficient, numbers.reason),
+        row.margins, row.interval, row.margins_of, numbers.proposed, in_baseline,
     )  # fmt: skip
 
 
@@ -222,7 +230,7 @@ def _drift(baseline: tuple[str, ...], found: watch.LoopDrift) -> Drift:
         threshold=now.threshold,
         p=now.p,
         parameters={name: _parameter(nights, one) for name, one in now.parameters.items()},
-        margin=None if now.margin is None else _margin(now.margin),
+        margin=None if now.margin is None else _margin(now.margin, found.seen_in),
         baseline=baseline,
         nights=tuple(_night(night.report, night) for night in nights),
         findings=now.findings,
@@ -236,10 +244,11 @@ def _parameter(nights: tuple[watch.Verdict, ...], one: ident.ParameterDrift) -> 
     )  # fmt: skip
 
 
-def _margin(told: ident.MarginDrift) -> Margin:
+def _margin(told: ident.MarginDrift, seen_in: str | None) -> Margin:
     return Margin(
-        told.Ms_baseline, told.Ms_now, told.ci95, told.target, told.unstable_share, told.settings, told.settings_from
-    )
+        told.Ms_baseline, told.Ms_now, told.ci95, told.target, told.unstable_share, told.settings, told.settings_from,
+        seen_in,
+    )  # fmt: skip
 
 
 def _night(report: KeptReport, night: watch.Verdict) -> NightVerdict:

@@ -23,7 +23,7 @@ from service.work.lane import LOST, Answer, Lane
 from service.work.numbers import numbers_of, parse, start_of, write_numbers
 from service.work.options import Options
 from service.work.report import INTERNAL
-from service.work.stages import STAGES, progress
+from service.work.stages import STAGES, STORING, progress
 from service.work.workers import Workers
 
 log = logging.getLogger("gainwright.work")
@@ -119,6 +119,8 @@ class Dispatcher:
         if answer == LOST:
             await asyncio.to_thread(self._store.jobs.lost, job, CUT_OFF, _now())
         else:
+            if not isinstance(answer, Problem):
+                await self._tell(job, STORING)
             result = answer if isinstance(answer, Problem) else await asyncio.to_thread(_result, answer)
             await asyncio.to_thread(self._store.jobs.finish, job, result, _now())
         self._ended(answer)
@@ -133,9 +135,13 @@ class Dispatcher:
             if stage == told and monotonic() - renewed < RENEW_S:
                 continue
             told, renewed = stage, monotonic()
-            if not await asyncio.to_thread(self._store.jobs.renew, job, stage, progress(stage), _now(), LEASE):
+            if not await self._tell(job, stage):
                 return False
         return True
+
+    async def _tell(self, job: Job, stage: str) -> bool:
+        """Write down the stage and renew the lease; False where the lease is lost."""
+        return await asyncio.to_thread(self._store.jobs.renew, job, stage, progress(stage), _now(), LEASE)
 
     async def _reclaim(self, *, everybody: bool) -> None:
         left = await asyncio.to_thread(self._store.jobs.reclaim, CUT_OFF, _now(), everybody=everybody)

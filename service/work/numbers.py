@@ -4,13 +4,15 @@ from __future__ import annotations
 
 import json
 from collections.abc import Mapping
-from dataclasses import dataclass
+from dataclasses import dataclass, field
 from datetime import datetime
 from typing import Any
 
 from pydantic import TypeAdapter
 
 import ident
+
+Units = tuple[str, str]  # of speed and command
 
 
 @dataclass(frozen=True, slots=True)
@@ -45,11 +47,21 @@ class Plant:
 
 
 @dataclass(frozen=True, slots=True)
+class Recovered:
+    """The controller that a log shows: Kp, Ti, Td, Tf, b, and how long after a logged speed it answers, s."""
+
+    settings: dict[str, float]
+    late_s: float
+
+
+@dataclass(frozen=True, slots=True)
 class Numbers:
     """Of one report; None and {} where the log carried no model.
 
-    plant     whichever model was chosen, for nights are compared by K, T and L
-    period_s  what the report's margins were reckoned with
+    plant        whichever model was chosen, for nights are compared by K, T and L
+    first_order  the same as estimates, K, T and L; parameters: of the chosen model
+    recovered    None where the log shows no controller, or one that filters otherwise than our settings can say
+    period_s     what the report's margins were reckoned with
     """
 
     sufficient: bool
@@ -65,9 +77,15 @@ class Numbers:
     speed_unit: str
     plant: Plant | None
     proposed: dict[str, float] | None
+    first_order: dict[str, Parameter] = field(default_factory=dict)
+    recovered: Recovered | None = None
 
     @property
-    def first_order(self) -> ident.Fopdt | None:
+    def units(self) -> Units:
+        return self.speed_unit, self.movement.unit
+
+    @property
+    def model_of_plant(self) -> ident.Fopdt | None:
         if self.plant is None:
             return None
         return ident.Fopdt(*(self.plant.values[name] for name in ("K", "T", "L")))
@@ -87,6 +105,7 @@ def numbers_of(report: Mapping[str, Any]) -> Numbers:
     log, moved = report["log"], report["record"]["excitation"]
     fits, selected, best = report["fits"], report["selected"], report["recommended"]
     fit = fits[selected] if selected is not None else None
+    first = next((f for f in fits if f["model"] == "fopdt"), None)
     return Numbers(
         sufficient=moved["sufficient"],
         reason=moved["reason"],
@@ -99,8 +118,10 @@ def numbers_of(report: Mapping[str, Any]) -> Numbers:
         fit_percent=fit["statistics"]["fit_percent"] if fit else None,
         rms_residual=fit["statistics"]["rms_residual"] if fit else None,
         speed_unit=log["speed_unit"],
-        plant=next((_plant(f) for f in fits if f["model"] == "fopdt"), None),
+        plant=_plant(first) if first else None,
         proposed=report["tunings"][best]["settings"] if best is not None else None,
+        first_order=_parameters(first["parameters"]) if first else {},
+        recovered=_recovered(report["installed"]),
     )
 
 
@@ -129,6 +150,14 @@ def _parameters(told: Mapping[str, Any]) -> dict[str, Parameter]:
         name: Parameter(one["value"], one["std"], (one["ci95"][0], one["ci95"][1]), one["unit"])
         for name, one in told.items()
     }
+
+
+def _recovered(installed: Mapping[str, Any] | None) -> Recovered | None:
+    if installed is None or installed["source"] != "log":
+        return None
+    if installed["settings"]["Tf"] > 0.0 and installed["filter_on"] != "speed, second order":
+        return None
+    return Recovered(installed["settings"], installed["late_s"] or 0.0)
 
 
 def _plant(fit: Mapping[str, Any]) -> Plant:

@@ -30,7 +30,6 @@ def report(source: bytes, options: Options) -> ident.Report:
     """
     enter("reading")
     record = read(source, options)
-    enter("analysing")
     return ident.analyse(
         record,
         model=options.model,
@@ -40,6 +39,7 @@ def report(source: bytes, options: Options) -> ident.Report:
         period=options.period,
         command_limits=(None, None) if options.command_limits is None else limits_told(options.command_limits),
         installed=None if options.installed is None else ident.PidSettings(*settings_told(options.installed)),
+        on_stage=enter,
     )
 
 

@@ -1,11 +1,12 @@
-"""Stages: how far a worker is with its log, told through one byte that it shares with the service."""
+"""Stages: how far a log is; those of a worker are told through one byte that it shares with the service."""
 
 from __future__ import annotations
 
 from ctypes import c_byte
 from multiprocessing.context import BaseContext
 
-STAGES = ("reading", "analysing")
+STORING = "storing"  # the service's own, after the worker's
+STAGES = ("reading", "fitting", "judging", "tuning", STORING)
 
 _mine: Stage | None = None
 

@@ -1,4 +1,4 @@
-"""Watch: history and drift of a loop, reckoned from the numbers of its reports whenever they are asked for.
+"""Watch: drift of a loop, reckoned from the numbers of its reports whenever it is asked for.
 
 Nothing of this is stored, so the order in which logs arrive cannot matter. A log with several reports counts once,
 by the report that was asked for last; in the baseline, by the one that was named.
@@ -8,27 +8,14 @@ from __future__ import annotations
 
 from collections.abc import Sequence
 from dataclasses import dataclass
-from functools import lru_cache
 from statistics import median
-from typing import Literal
 
 import ident
 from service.errors import ProblemError
 from service.store import KeptLoop, KeptReport, Store
 from service.work.loop_settings import LoopSettings
-from service.work.numbers import Numbers, read_numbers
-
-Source = Literal["installed", "baseline"]
-
-
-@dataclass(frozen=True, slots=True)
-class HistoryRow:
-    """margins: that `margins_of` would have on this log's plant: the settings installed now, or the baseline's."""
-
-    report: KeptReport
-    numbers: Numbers
-    margins: ident.Margins | None
-    margins_of: Source | None
+from service.work.numbers import Numbers, Units, read_numbers
+from service.work.watched import Watched, period_of, watched
 
 
 @dataclass(frozen=True, slots=True)
@@ -42,10 +29,14 @@ class Verdict:
 
 @dataclass(frozen=True, slots=True)
 class LoopDrift:
-    """nights: those behind the baseline, in order;  now: the last one's verdict, or the baseline alone."""
+    """nights: those behind the baseline, in order;  now: the last one's verdict, or the baseline alone.
+
+    seen_in   report whose log shows the controller, where its settings are not told
+    """
 
     now: ident.Drift
     nights: tuple[Verdict, ...]
+    seen_in: str | None
 
 
 @dataclass(frozen=True, slots=True)
@@ -54,8 +45,9 @@ class _Baseline:
 
     reports: tuple[KeptReport, ...]
     nights: tuple[ident.Night, ...]
-    controller: ident.PidSettings | None
+    watched: Watched
     period: float
+    units: Units
     settings: LoopSettings
 
     def drift(self) -> ident.Drift:
@@ -63,27 +55,14 @@ class _Baseline:
         return ident.drift(
             self.nights,
             None,
-            settings=self.controller,
+            settings=self.watched.settings,
+            settings_from=self.watched.source,
             period=self.period,
+            compute_delay=self.watched.delay,
             target=self.settings.defaults.Ms,
             practical=_practical(self.settings),
             significance=self.settings.watch.significance,
         )
-
-
-def history(store: Store, loop: KeptLoop, after: KeptReport | None, limit: int) -> list[HistoryRow]:
-    """Rows of a loop's reports in the order of its logs' own time."""
-    settings = LoopSettings.model_validate_json(loop.settings)
-    controller, source = settings.controller, "installed"
-    if controller is None and loop.baseline:
-        margin = _baseline(store, loop).drift().margin
-        controller, source = (margin.settings if margin else None), "baseline"
-    rows = []
-    for report in store.reports.history(loop.name, after, limit):
-        numbers = read_numbers(report.numbers)
-        margins = _margins(numbers.first_order, controller, _period(settings, numbers))
-        rows.append(HistoryRow(report, numbers, margins, source if margins else None))  # type: ignore[arg-type]
-    return rows
 
 
 def check_baseline(store: Store, loop: KeptLoop, report_ids: Sequence[str]) -> ident.Drift:
@@ -108,13 +87,15 @@ def drift(store: Store, loop: KeptLoop) -> LoopDrift:
     baseline = _baseline(store, loop)
     settings = baseline.settings
     later = _later(store, loop, baseline.reports)
-    nights = [_night(read_numbers(report.numbers), baseline.nights[0].gain_unit) for report in later]
+    nights = [night_of(read_numbers(report.numbers), baseline.nights[0].gain_unit) for report in later]
     found = ident.drift_history(
         baseline.nights,
         # Their place among the later ones, written so that it sorts as text.
         [(f"{i:09d}", night) for i, (night, _) in enumerate(nights)],
-        settings=baseline.controller,
+        settings=baseline.watched.settings,
+        settings_from=baseline.watched.source,
         period=baseline.period,
+        compute_delay=baseline.watched.delay,
         target=settings.defaults.Ms,
         practical=_practical(settings),
         significance=settings.watch.significance,
@@ -122,7 +103,14 @@ def drift(store: Store, loop: KeptLoop) -> LoopDrift:
     verdicts = tuple(
         Verdict(report, said, why) for report, (_, said), (_, why) in zip(later, found, nights, strict=True)
     )
-    return LoopDrift(verdicts[-1].drift if verdicts else baseline.drift(), verdicts)
+    return LoopDrift(verdicts[-1].drift if verdicts else baseline.drift(), verdicts, baseline.watched.seen_in)
+
+
+def proposed(store: Store, loop: KeptLoop) -> tuple[ident.PidSettings | None, Units]:
+    """The settings that would be proposed for the baseline's plant, and its units; errors as for `drift`."""
+    baseline = _baseline(store, loop)
+    margin = baseline.drift().margin
+    return margin.settings if margin else None, baseline.units
 
 
 def _baseline(store: Store, loop: KeptLoop) -> _Baseline:
@@ -145,15 +133,16 @@ def _named(store: Store, loop: KeptLoop, report_ids: Sequence[str]) -> _Baseline
     numbers = [read_numbers(report.numbers) for report in reports]
     nights = []
     for report, one in zip(reports, numbers, strict=True):
-        night, why = _night(one, None)
+        night, why = night_of(one, None)
         if night is None:
             raise ProblemError("night-unusable", f"Report {report.id} cannot be part of a baseline: {why}")
         nights.append(night)
     return _Baseline(
         tuple(reports),
         tuple(nights),
-        settings.controller,
-        median(_period(settings, one) for one in numbers),
+        watched(store, loop, settings, numbers[0].units),
+        median(period_of(settings, one) for one in numbers),
+        numbers[0].units,
         settings,
     )
 
@@ -168,7 +157,7 @@ def _later(store: Store, loop: KeptLoop, baseline: Sequence[KeptReport]) -> list
     return list(chosen.values())
 
 
-def _night(numbers: Numbers, gain_unit: str | None) -> tuple[ident.Night | None, str | None]:
+def night_of(numbers: Numbers, gain_unit: str | None) -> tuple[ident.Night | None, str | None]:
     """A night to compare, or why it is none; a gain in another unit than the baseline's cannot be compared."""
     plant = numbers.plant
     if plant is None:
@@ -191,20 +180,5 @@ def _night(numbers: Numbers, gain_unit: str | None) -> tuple[ident.Night | None,
         return None, error.message
 
 
-def _period(settings: LoopSettings, numbers: Numbers) -> float:
-    """The controller's period as told, or what the report took for it."""
-    return settings.period if settings.period is not None else numbers.period_s or 0.0
-
-
 def _practical(settings: LoopSettings) -> ident.PracticalSize:
     return ident.PracticalSize(**settings.watch.practical.model_dump())
-
-
-@lru_cache(maxsize=20_000)
-def _margins(plant: ident.Fopdt | None, controller: ident.PidSettings | None, period: float) -> ident.Margins | None:
-    if plant is None or controller is None:
-        return None
-    try:
-        return ident.margins(plant, controller, period=period)
-    except ident.IdentError:
-        return None  # no margin can be told of such a loop, which is what None says

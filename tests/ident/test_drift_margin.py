@@ -6,7 +6,7 @@ import numpy as np
 import pytest
 
 import ident
-from ident.watch.margin import sensitivities
+from ident.watch.interval import sensitivities
 
 PI = ident.PidSettings(0.075, 2.3)
 

@@ -17,8 +17,8 @@ def obey(source: bytes, options: Options) -> bytes | Problem:
         os.kill(os.getpid(), signal.SIGKILL)
     if source == b"hang":
         time.sleep(600)
-    if source == b"analysing":
-        enter("analysing")
+    if source == b"fitting":
+        enter("fitting")
         time.sleep(600)
     if source.startswith(b"wait"):
         time.sleep(0.5)

@@ -7,6 +7,7 @@ import json
 import time
 from collections.abc import Iterator
 from concurrent.futures import ThreadPoolExecutor
+from datetime import datetime, timedelta
 from pathlib import Path
 from typing import Any
 
@@ -19,6 +20,8 @@ from starlette.testclient import TestClient
 from service.api.prefer import LONGEST_S, wait_seconds
 from service.app import create_app
 from service.cli import main
+from service.store.jobs import Job, Jobs
+from service.work.stages import STAGES
 
 WAIT = {"Prefer": "wait=60"}
 NAMELESS = b"0;590;42\n1;591;42\n" + b"".join(
@@ -330,18 +333,37 @@ def test_a_log_that_kills_its_worker_has_failed_after_three_attempts_and_may_try
 
 def test_the_stage_is_the_worker_s_own_word() -> None:
     with TestClient(create_app(apart(), task=obey)) as service:
-        told = service.post("/v1/loops/pan/logs", content=b"analysing").json()
+        told = service.post("/v1/loops/pan/logs", content=b"fitting").json()
         end = time.monotonic() + 20
-        while told["stage"] != "analysing" and time.monotonic() < end:
+        while told["stage"] != "fitting" and time.monotonic() < end:
             time.sleep(0.05)
             told = service.get(f"/v1/analyses/{told['id']}").json()
-        assert (told["status"], told["stage"], told["progress"]) == ("running", "analysing", 0.5)
+        assert (told["status"], told["stage"], told["progress"]) == ("running", "fitting", 0.2)
         # Waiting ends when the time is up, and says how it stands.
         begun = time.monotonic()
-        waited = service.post("/v1/loops/pan/logs", content=b"analysing", headers={"Prefer": "wait=1"})
+        waited = service.post("/v1/loops/pan/logs", content=b"fitting", headers={"Prefer": "wait=1"})
         assert 0.9 < time.monotonic() - begun < 20
         assert (waited.status_code, waited.json()["status"]) == (200, "running")
         assert waited.headers["preference-applied"] == "wait=1"
+
+
+def test_the_stages_of_a_log_come_in_order_and_end_with_storing(
+    service: TestClient, step_test: bytes, monkeypatch: pytest.MonkeyPatch
+) -> None:
+    told: list[tuple[str, float]] = []
+    renew = Jobs.renew
+
+    def listen(jobs: Jobs, job: Job, stage: str, progress: float, now: datetime, lease: timedelta) -> bool:
+        told.append((stage, progress))
+        return renew(jobs, job, stage, progress, now, lease)
+
+    monkeypatch.setattr(Jobs, "renew", listen)
+    ended = keep(service, step_test, "stages")
+    assert (ended["stage"], ended["progress"]) == ("done", 1.0)
+    # A quick worker passes some of them between two looks.
+    assert told == sorted(told, key=lambda one: STAGES.index(one[0]))
+    assert [share for _, share in told] == sorted(share for _, share in told)
+    assert told[-1] == ("storing", 0.8)
 
 
 def test_a_stop_in_order_leaves_the_rest_for_the_next_start(step_test: bytes) -> None:

@@ -6,11 +6,16 @@ import http.client
 import json
 import os
 import signal
+import sqlite3
 import threading
 import time
+from contextlib import closing
+from pathlib import Path
 from typing import Any
 
 from conftest import Served, own_folder, start_served
+
+from service.store.store import FILE
 
 UPLOADS = 20
 
@@ -28,6 +33,13 @@ def ask(served: Served, method: str, path: str, body: bytes | None = None) -> tu
         return response.status, json.loads(response.read())
     finally:
         connection.close()
+
+
+def outstanding(folder: str) -> int:
+    """Analyses in the database that have not ended."""
+    with closing(sqlite3.connect(Path(folder) / FILE)) as database:
+        (count,) = database.execute("SELECT count(*) FROM analyses WHERE status IN ('queued', 'running')").fetchone()
+        return int(count)
 
 
 def test_nothing_that_was_accepted_is_lost_or_doubled(step_test: bytes) -> None:
@@ -54,6 +66,7 @@ def test_nothing_that_was_accepted_is_lost_or_doubled(step_test: bytes) -> None:
     for thread in threads:
         thread.join()
     served.process.communicate(timeout=30)
+    assert outstanding(folder) > 0
 
     again = start_served(workers="2", data_dir=folder)  # the lock went with the process that held it
     try:

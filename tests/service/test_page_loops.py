@@ -107,8 +107,8 @@ def test_progress_shows_the_stage_that_the_service_is_in(visit: Callable[..., Vi
     told = {"id": "ana_1", "loop": "drum", "log_id": "log_1", "report_id": None, "problem": None}
     answers = [
         {**told, "status": "queued", "stage": "queued", "progress": 0.0},
-        *[{**told, "status": "running", "stage": "analysing", "progress": 0.5}] * 3,
-        {**told, "status": "failed", "stage": "analysing", "progress": 0.5,
+        *[{**told, "status": "running", "stage": "judging", "progress": 0.4}] * 3,
+        {**told, "status": "failed", "stage": "failed", "progress": 1.0,
          "problem": {"code": "no-speed", "detail": "Say which column is the speed.", "evidence": {}}},
     ]  # fmt: skip
 
@@ -120,8 +120,8 @@ def test_progress_shows_the_stage_that_the_service_is_in(visit: Callable[..., Vi
     one.page.goto(one.base + "/#/analyses/ana_1")
     step = one.page.get_by_test_id("stages").locator("[aria-current=step]")
     expect(step).to_have_attribute("data-stage", "queued")
-    expect(step).to_have_attribute("data-stage", "analysing")
-    assert one.page.get_by_role("progressbar").evaluate("bar => bar.value") == 0.5
+    expect(step).to_have_attribute("data-stage", "judging")
+    assert one.page.get_by_role("progressbar").evaluate("bar => bar.value") == 0.4
     expect(one.page.get_by_test_id("problem-message")).to_have_text("Say which column is the speed.")
     expect(one.page.get_by_test_id("problem-code")).to_have_text("no-speed")
     expect(one.page.get_by_role("link", name="To drum")).to_have_attribute("href", "#/loops/drum")
@@ -148,6 +148,10 @@ def test_the_verdict_is_the_service_s_own(visit: Callable[..., Visit], api: Api,
     expect(margin).to_contain_text(f"{drift['margin']['Ms_now']:.3f}")
     expect(margin).to_contain_text(f"{low:.2f} to {high:.2f}")
     expect(margin).to_contain_text("The installed settings, Kp 0.075, Ti 2.3 s: within the target")
+    # The interval of every night, that of the last as the verdict has it.
+    expect(one.page.get_by_test_id("panel-Ms").locator("svg .whisker")).to_have_count(len(pan))
+    one.page.get_by_role("button", name="Later night").click()
+    expect(one.page.get_by_test_id("panel-Ms").locator("output")).to_contain_text(f"({low:.3f} to {high:.3f})")
 
 
 def test_charts_can_be_read_by_pointer_keyboard_and_table(
@@ -216,7 +220,9 @@ def test_a_night_without_a_model_leaves_its_place_empty(visit: Callable[..., Vis
     one = visit(here(name))
     expect(one.page.get_by_test_id("night")).to_have_count(2)
     expect(one.page.get_by_test_id("panel-K").locator("svg .night")).to_have_count(1)
-    expect(one.page.get_by_test_id("panel-Ms").locator("svg")).to_have_count(0)
+    # Nobody told the installed settings, but the first night shows them.
+    expect(one.page.get_by_test_id("panel-Ms").locator("svg .night")).to_have_count(1)
+    expect(one.page.get_by_test_id("panel-Ms")).to_contain_text("of the controller that the logs show")
     expect(one.page.get_by_test_id("baseline").get_by_role("checkbox").nth(1)).to_be_disabled()
     one.clean()
 
@@ -417,10 +423,15 @@ def test_a_second_order_night_stands_in_the_history_with_the_sum_of_its_time_con
     told = api("POST", f"{api.loop(name)}/logs", second_order(LAGS))
     report = api("GET", f"/reports/{told['report_id']}")
     sum_of_lags = report["fits"][report["selected"]]["derived"]["T1 + T2"]
+    (first,) = (fit["parameters"] for fit in report["fits"] if fit["model"] == "fopdt")
     one = visit(here(name))
     one.page.get_by_role("button", name="Later night").click()
     shown = one.page.get_by_test_id("panel-T").locator("output").inner_text()
     numbers = [float(text) for text in re.findall(r"\d+\.\d+", shown)]
-    assert numbers == pytest.approx([sum_of_lags["value"], *sum_of_lags["ci95"]], abs=6e-3)
+    both = [one for each in (sum_of_lags, first["T"]) for one in (each["value"], *each["ci95"])]
+    assert numbers == pytest.approx(both, abs=6e-3)
+    for name in "KTL":
+        expect(one.page.get_by_test_id(f"panel-{name}").locator("svg .ring")).to_have_count(1)
+    expect(one.page.get_by_test_id("night")).to_contain_text("first order")
     expect(one.page.get_by_test_id("part-history")).to_contain_text("the verdict compares first-order fits")
     one.clean()

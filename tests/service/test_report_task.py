@@ -11,6 +11,7 @@ import ident
 from service.errors import Problem
 from service.work import report
 from service.work.options import Options
+from service.work.stages import enter
 
 
 def test_the_same_log_gives_the_same_bytes(step_test: bytes) -> None:
@@ -96,4 +97,5 @@ def test_every_option_reaches_ident(monkeypatch: pytest.MonkeyPatch) -> None:
         "period": 0.0,
         "installed": ident.PidSettings(0.1, 2.0),
         "command_limits": (0.0, 100.0),
+        "on_stage": enter,
     }

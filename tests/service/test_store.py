@@ -201,10 +201,10 @@ def test_a_job_goes_through_its_stages(store: Store) -> None:
     id = accept(store).analysis.id
     job = claim(store)
     assert store.jobs.claim("other", "reading", NOW, LEASE) is None
-    assert store.jobs.renew(job, "analysing", 0.5, NOW, LEASE)
+    assert store.jobs.renew(job, "fitting", 0.5, NOW, LEASE)
     running = store.logs.analysis(id)
     assert running is not None
-    assert (running.status, running.stage, running.progress) == ("running", "analysing", 0.5)
+    assert (running.status, running.stage, running.progress) == ("running", "fitting", 0.5)
     assert store.jobs.finish(job, Result(b'{"a": 1}', NOW, "{}"), NOW)
     done = store.logs.analysis(id)
     assert done is not None
@@ -218,7 +218,7 @@ def test_who_lost_the_lease_cannot_write(store: Store) -> None:
     assert store.jobs.reclaim(LOST, NOW, everybody=False) == 0
     assert store.jobs.reclaim(LOST, NOW + 2 * LEASE, everybody=False) == 1
     job = claim(store, "next")
-    assert not store.jobs.renew(late, "analysing", 0.5, NOW, LEASE)
+    assert not store.jobs.renew(late, "fitting", 0.5, NOW, LEASE)
     assert not store.jobs.finish(late, Result(b"late", None, "{}"), NOW)
     assert not store.jobs.finish(late, LOST, NOW)
     assert not store.jobs.lost(late, LOST, NOW)

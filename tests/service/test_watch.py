@@ -45,6 +45,12 @@ def watch(service: TestClient, name: str, rows: Sequence[dict[str, Any]]) -> Any
     return service.get(f"/v1/loops/{name}/drift").json()
 
 
+def without_setpoint(log: bytes) -> bytes:
+    """The same log with its setpoint left out, so that its controller cannot be seen."""
+    rows = [line.split(b",") for line in log.splitlines()]
+    return b"\n".join(b",".join([time, *rest]) for time, _, *rest in rows)
+
+
 @pytest.fixture(scope="module")
 def fallen(service: TestClient) -> tuple[list[dict[str, Any]], Any]:
     """History and verdict of the loop whose gain falls."""
@@ -59,6 +65,8 @@ def test_history_has_a_row_for_each_report(service: TestClient, fallen: tuple[li
         report = service.get(f"/v1/reports/{row['report_id']}").json()
         fit = report["fits"][report["selected"]]
         assert row["parameters"] == fit["parameters"]
+        (first,) = (one for one in report["fits"] if one["model"] == "fopdt")
+        assert row["first_order"] == first["parameters"]
         assert (row["fit_percent"], row["rms_residual"]) == (
             fit["statistics"]["fit_percent"],
             fit["statistics"]["rms_residual"],
@@ -76,7 +84,13 @@ def test_margins_are_those_of_the_installed_settings(fallen: tuple[list[dict[str
     for row, gain in ((history[0], 1.0), (history[-1], 0.7)):
         true = ident.margins(ident.Fopdt(plant.K * gain, plant.T1, plant.L), settings, period=0.1)
         assert row["margins"]["Ms"] == pytest.approx(true.Ms, rel=0.05)
+        interval = row["margins_interval"]
+        assert interval["ci95"][0] < interval["Ms_median"] < interval["ci95"][1]
+        assert interval["Ms_median"] == pytest.approx(row["margins"]["Ms"], rel=0.01)
+        assert interval["unstable_share"] == 0.0
     margin = drift["margin"]
+    assert margin["ci95"] == history[-1]["margins_interval"]["ci95"]
+    assert margin["seen_in"] is None
     assert margin["settings_from"] == "installed"
     assert margin["Ms_now"] == pytest.approx(history[-1]["margins"]["Ms"])
     assert margin["ci95"][0] <= margin["Ms_now"] <= margin["ci95"][1]
@@ -112,7 +126,8 @@ def test_a_night_that_shows_nothing_is_no_news(service: TestClient) -> None:
     poor = still(COUNT)
     history = loop(service, "poor", [poor, *LOGS])
     assert history[-1]["excitation"]["sufficient"] is False
-    assert (history[-1]["model"], history[-1]["parameters"], history[-1]["margins"]) == (None, {}, None)
+    assert (history[-1]["model"], history[-1]["parameters"], history[-1]["first_order"]) == (None, {}, {})
+    assert (history[-1]["margins"], history[-1]["margins_interval"]) == (None, None)
     drift = watch(service, "poor", history[:4])
     assert drift["verdict"] == "no-news"
     assert {p["verdict"] for p in drift["parameters"].values()} == {"no-news"}
@@ -125,8 +140,29 @@ def test_a_night_that_shows_nothing_is_no_news(service: TestClient) -> None:
     expect.answer(refused, expected=422, code="night-unusable")
 
 
-def test_without_installed_settings_the_baseline_s_proposal_is_watched(service: TestClient) -> None:
-    history = loop(service, "unknown", LOGS[:6], installed=False)
+def test_without_installed_settings_those_that_the_last_log_shows_are_watched(service: TestClient) -> None:
+    history = loop(service, "seen", LOGS[:5], installed=False)
+    drift = watch(service, "seen", history[:4])
+    margin = drift["margin"]
+    assert (margin["settings_from"], margin["seen_in"]) == ("log", history[-1]["report_id"])
+    # The logs' command is written with four decimals, which is all that stands between them and the controller.
+    assert margin["settings"]["Kp"] == pytest.approx(Loop.Kp, rel=0.01)
+    assert margin["settings"]["Ti"] == pytest.approx(Loop.Ti, rel=0.01)
+    told = ident.margins(ident.Fopdt(Loop.K, Loop.T1, Loop.L), ident.PidSettings(Loop.Kp, Loop.Ti), period=0.1)
+    assert margin["Ms_now"] == pytest.approx(told.Ms, rel=0.05)
+    assert {row["margins_of"] for row in history} == {"log"}
+    assert history[-1]["margins"]["Ms"] == pytest.approx(margin["Ms_now"])
+    # A later log in another unit shows a gain that means nothing for the others.
+    other = LOGS[5].replace(b"[rpm]", b"[rad/s]")
+    service.post("/v1/loops/seen/logs", content=other, headers={"Prefer": "wait=60"})
+    rows = service.get("/v1/loops/seen/history").json()
+    assert {row["margins_of"] for row in rows} == {"log"}
+    assert [row["margins"]["Ms"] for row in rows] == pytest.approx([told.Ms] * 6, rel=0.05)
+    assert service.get("/v1/loops/seen/drift").json()["margin"]["settings"] == margin["settings"]
+
+
+def test_without_any_known_settings_the_baseline_s_proposal_is_watched(service: TestClient) -> None:
+    history = loop(service, "unknown", [without_setpoint(log) for log in LOGS[:6]], installed=False)
     assert {(row["margins"], row["margins_of"]) for row in history} == {(None, None)}
     drift = watch(service, "unknown", history[:5])
     assert drift["verdict"] == "not-moved"

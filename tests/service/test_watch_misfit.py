@@ -8,7 +8,7 @@ import pytest
 import ident
 from service.work.numbers import numbers_of, parse, read_numbers, write_numbers
 from service.work.report import to_json
-from service.work.watch import _night
+from service.work.watch import night_of
 
 H, ROWS = 0.05, 1500
 
@@ -30,7 +30,7 @@ def test_misfit_survives_the_store(second_lag: float, misfit: bool) -> None:
     log = record(second_lag)
     report = ident.analyse(log, period=H, subspace=False)
     kept = read_numbers(write_numbers(numbers_of(parse(to_json(report)))))
-    night, why = _night(kept, None)
+    night, why = night_of(kept, None)
     assert why is None
     assert night is not None
     assert night.misfit is misfit

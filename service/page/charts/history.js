@@ -24,8 +24,8 @@ export function sample(kind) {
 const middle = (list) => [...list].sort((a, b) => a - b)[Math.floor(list.length / 2)];
 
 /** Room for all values; an interval far wider than the others runs out of the frame rather than flatten them. */
-function domain({ values, intervals, reference, limit }) {
-  const known = values.filter((v) => v !== null);
+function domain({ values, beside, intervals, reference, limit }) {
+  const known = [...values, ...beside].filter((v) => v !== null);
   const extra = [reference?.value, reference && reference.value - reference.practical, reference && reference.value + reference.practical, limit].filter(Number.isFinite);
   let [low, high] = [Math.min(...known, ...extra), Math.max(...known, ...extra)];
   const halves = intervals.flatMap((ci, i) => (ci && values[i] !== null ? ci.filter((end) => end !== null).map((end) => Math.abs(end - values[i])) : []));
@@ -45,7 +45,7 @@ function draw(width, times, kinds, panel) {
     width, height: HEIGHT, title: panel.title, describe: panel.describe, margin: { top: 12, bottom: 26, left: 56 },
     x: { domain: x, ticks: calendar(x, Math.max(2, Math.floor(width / 62))) }, y: { domain: domain(panel) },
   });
-  const { values, intervals, reference, limit } = panel;
+  const { values, beside, intervals, reference, limit } = panel;
   if (reference) {
     const { value, practical } = reference;
     area.append(s("rect", { class: "band", x: X(x[0]), width: X(x[1]) - X(x[0]), y: Y(value + practical), height: Y(value - practical) - Y(value + practical) }),
@@ -55,6 +55,9 @@ function draw(width, times, kinds, panel) {
   const [lowest, highest] = [HEIGHT, 0];
   const cursor = s("line", { class: "cursor", y1: 0, y2: HEIGHT });
   area.append(cursor, line(X, Y, times, values, { class: "line thread" }));
+  beside.forEach((value, i) => {
+    if (value !== null) area.append(s("circle", { class: "ring", cx: X(times[i]), cy: Y(value), r: 5.5 }));
+  });
   values.forEach((value, i) => {
     if (value === null) return;
     const at = X(times[i]);
@@ -82,7 +85,7 @@ function draw(width, times, kinds, panel) {
 
 /**
  * nights   [{at (ms), kind, name}]
- * panels   [{title, heading() -> nodes, unit, describe, values, intervals, reference: {value, practical} or null, limit, text(i), note}]
+ * panels   [{title, heading() -> nodes, unit, describe, values, beside, intervals, reference: {value, practical} or null, limit, text(i), note}]
  * onOpen(i)   a night was chosen
  */
 export function historyCharts(nights, panels, onOpen) {

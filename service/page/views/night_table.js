@@ -3,6 +3,7 @@
 import { h, section, symbol, table } from "/page/dom.js";
 import { estimate, fixed, instant, significant, withUnit } from "/page/format.js";
 import { reportAddress } from "/page/views/addresses.js";
+import { besideOf } from "/page/views/nights.js";
 import { verdictMark } from "/page/views/verdict.js";
 
 function figure(one) {
@@ -35,6 +36,7 @@ export function nightTable(rows, drift, loop, onBaseline) {
   const speed = rows.find(({ speed_unit }) => speed_unit)?.speed_unit;
   const gain = rows.map(({ parameters }) => parameters.K?.unit).find(Boolean);
   const T = ({ parameters, derived }) => parameters.T ?? derived["T1 + T2"] ?? derived.T_r;
+  const cell = (row, name, one) => [figure(one), besideOf(row)[name] ? h("span", { class: "gloss" }, `first order ${figure(besideOf(row)[name])}`) : ""];
   return section("nights", "The nights", "In the order of the logs’ own time. Tick those on which the loop was as it should be; later ones are compared with them.",
     h("form", { "data-testid": "baseline", onsubmit: async (event) => {
       event.preventDefault();
@@ -50,7 +52,7 @@ export function nightTable(rows, drift, loop, onBaseline) {
     table("The nights", ["Night (UTC)", "Baseline", [symbol("K"), gain && ` (${gain})`], [symbol("T"), " (s)"], [symbol("L"), " (s)"], "Fit", "Residual, rms", symbol("Ms"), "Verdict"],
       rows.map((row, i) => ({ attributes: { "data-testid": "night" }, cells: [
         [h("a", { href: reportAddress(row.report_id) }, instant(row.at).replace(/(:\d\d)(:\d\d(\.\d+)?) UTC$/, "$1")), row.start ? "" : h("span", { class: "gloss" }, "received")],
-        boxes[i], figure(row.parameters.K ?? row.derived.K), figure(T(row)), figure(row.parameters.L ?? row.derived.L),
+        boxes[i], cell(row, "K", row.parameters.K ?? row.derived.K), cell(row, "T", T(row)), cell(row, "L", row.parameters.L ?? row.derived.L),
         withUnit(fixed(row.fit_percent, 1), "%"), withUnit(significant(row.rms_residual, 3), speed), row.margins && !row.margins.stable ? "unstable" : fixed(row.margins?.Ms, 3), remark(row, drift)] })), { class: "stack nights" }),
     h("p", { class: "after" }, save, count), problem));
 }

@@ -4,7 +4,8 @@ import { h } from "/page/dom.js";
 import { exact } from "/page/format.js";
 import { loopAddress } from "/page/views/addresses.js";
 
-const STAGES = [["queued", "Waiting for its turn"], ["reading", "Reading the log"], ["analysing", "Fitting, judging and tuning"], ["done", "Writing the report"]];
+const STAGES = [["queued", "Waiting for its turn"], ["reading", "Reading the log"], ["fitting", "Fitting models"], ["judging", "Checking what the models are worth"],
+  ["tuning", "Finding settings"], ["storing", "Keeping the report"]];
 
 /** {node, tell(analysis)} */
 export function stages() {

@@ -2,6 +2,7 @@
 
 import { expression, h, table } from "/page/dom.js";
 import { exact, fixed, probability, significant } from "/page/format.js";
+import { reportAddress } from "/page/views/addresses.js";
 
 const MARKS = { moved: ["poor", "◆ moved"], "not-moved": ["fine", "● not moved"], "no-news": ["none", "✕ no news"] };
 
@@ -66,15 +67,22 @@ function range([low, high]) {
   return `${fixed(low, 2)} to ${fixed(high, 2)}`;
 }
 
-function margin({ Ms_baseline, Ms_now, ci95, target, unstable_share, settings, settings_from }) {
-  const whose = settings_from === "installed" ? "The installed settings" : "The settings proposed for the baseline (none are told as installed)";
+const WHOSE = {
+  installed: "The installed settings",
+  log: "The settings that the logs show in the machine (none are told as installed)",
+  baseline: "The settings proposed for the baseline (none are told as installed, and no log shows them)",
+};
+
+function margin({ Ms_baseline, Ms_now, ci95, target, unstable_share, settings, settings_from, seen_in }) {
+  // A told number is shown as it was told.
+  const number = settings_from === "installed" ? exact : (value) => significant(value, 4);
   const state = Ms_now === null ? "no Ms can be told from the last log" : Ms_now <= target ? "within the target" : "beyond the target";
   return h("div", { class: "margin-now", "data-testid": "margin-now" },
     h("h3", {}, "What robustness is left"),
     h("dl", { class: "margins" },
       [["Ms on the baseline’s plant", fixed(Ms_baseline, 3)], ["Ms on the last log’s plant", fixed(Ms_now, 3)], ["95 % interval", Ms_now === null ? "–" : range(ci95)], ["Target", exact(target)]]
         .map(([label, text]) => h("div", {}, h("dt", {}, label), h("dd", {}, text)))),
-    h("p", { class: "note" }, `${whose}, Kp ${exact(settings.Kp)}, Ti ${exact(settings.Ti)} s: `, h("strong", {}, state), ". ",
+    h("p", { class: "note" }, WHOSE[settings_from], seen_in && [" (", h("a", { href: reportAddress(seen_in) }, "the latest of them"), ")"], `, Kp ${number(settings.Kp)}, Ti ${number(settings.Ti)} s${settings.Td ? `, Td ${number(settings.Td)} s` : ""}: `, h("strong", {}, state), ". ",
       unstable_share ? `With ${fixed(100 * unstable_share, 1)} % of the plants that the log allows the loop is unstable. ` : "",
       "A smaller Ms is farther from instability; it says nothing about speed."));
 }
