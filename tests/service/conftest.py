@@ -1,4 +1,4 @@
-"""One service for all tests: in this process (`client`), and as its users run it (`served`)."""
+"""One service for all tests: in this process (`client`), as its users run it (`served`), and in a browser (`visit`)."""
 
 from __future__ import annotations
 
@@ -6,16 +6,22 @@ import os
 import subprocess
 import sys
 import tempfile
-from collections.abc import Iterator
+from collections.abc import Callable, Iterator
 from dataclasses import dataclass
 from pathlib import Path
-from typing import Any
+from typing import TYPE_CHECKING, Any
 
 import pytest
 from starlette.testclient import TestClient
 
 from service.app import create_app
 from service.settings import Settings
+
+if TYPE_CHECKING:
+    # They import from this file, so it imports them late.
+    from browsing import Visit
+    from playwright.sync_api import Browser
+    from watched_loop import Api
 
 ROOT = Path(__file__).resolve().parents[2]
 SCRATCH = tempfile.TemporaryDirectory(prefix="gainwright-tests-", ignore_cleanup_errors=True)
@@ -63,12 +69,50 @@ def client() -> Iterator[TestClient]:
         yield client
 
 
+@pytest.fixture
+def service() -> Iterator[TestClient]:
+    """One that has seen nothing yet; a module whose tests share theirs has a fixture of its own."""
+    with TestClient(create_app(apart())) as service:
+        yield service
+
+
 @pytest.fixture(scope="session")
 def served() -> Iterator[Served]:
     served = start_served(workers="1")
     yield served
     served.process.terminate()
     served.process.communicate(timeout=30)
+
+
+@pytest.fixture(scope="module")
+def browser() -> Iterator[Browser]:
+    from browsing import chromium
+
+    with chromium() as browser:
+        yield browser
+
+
+@pytest.fixture
+def visit(browser: Browser, served: Served) -> Iterator[Callable[..., Visit]]:
+    from browsing import visitor
+
+    with visitor(browser, served) as visit:
+        yield visit
+
+
+@pytest.fixture(scope="session")
+def api(served: Served) -> Api:
+    from watched_loop import Api
+
+    return Api(served)
+
+
+@pytest.fixture(scope="session")
+def pan(api: Api) -> list[dict[str, Any]]:
+    """A loop whose gain has fallen on its last night, watched; its history."""
+    from watched_loop import watch
+
+    return watch(api)
 
 
 @pytest.fixture(scope="session")

@@ -6,27 +6,15 @@ import hashlib
 import json
 import re
 import urllib.request
-from collections.abc import Callable, Iterator
+from collections.abc import Callable
 from pathlib import Path
 
 import pytest
-from browsing import NARROW, REPORT_MS, WIDE, Visit, chromium, visitor
-from conftest import ROOT, Served
-from playwright.sync_api import Browser, expect
+from browsing import NARROW, REPORT_MS, WIDE, Visit
+from conftest import ROOT
+from playwright.sync_api import expect
 
 SAMPLES = ROOT / "sample_logs"
-
-
-@pytest.fixture(scope="module")
-def browser() -> Iterator[Browser]:
-    with chromium() as browser:
-        yield browser
-
-
-@pytest.fixture
-def visit(browser: Browser, served: Served) -> Iterator[Callable[..., Visit]]:
-    with visitor(browser, served) as visit:
-        yield visit
 
 
 def shown_as(value: float, text: str) -> None:

@@ -4,12 +4,11 @@ from __future__ import annotations
 
 import json
 import urllib.request
-from collections.abc import Callable, Iterator
+from collections.abc import Callable
 
 import pytest
-from browsing import NARROW, REPORT_MS, WIDE, Visit, chromium, visitor
-from conftest import Served
-from playwright.sync_api import Browser, expect
+from browsing import NARROW, REPORT_MS, WIDE, Visit
+from playwright.sync_api import expect
 
 # A German export: semicolons, decimal commas, local times without a zone; a step up and down.
 ODD = (
@@ -20,18 +19,6 @@ ODD = (
         for k in range(480)
     )
 ).encode("cp1252")
-
-
-@pytest.fixture(scope="module")
-def browser() -> Iterator[Browser]:
-    with chromium() as browser:
-        yield browser
-
-
-@pytest.fixture
-def visit(browser: Browser, served: Served) -> Iterator[Callable[..., Visit]]:
-    with visitor(browser, served) as visit:
-        yield visit
 
 
 @pytest.mark.parametrize("size", [WIDE, NARROW], ids=["wide", "narrow"])
