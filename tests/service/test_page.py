@@ -135,12 +135,15 @@ def test_the_options_reach_the_service(visit: Callable[..., Visit], step_test: b
     one = visit()
     one.page.get_by_test_id("options").locator("summary").click()
     one.page.get_by_label("Target Ms").fill("1.4")
+    one.page.get_by_label("Controller", exact=True).select_option("pid")
     told = one.report("step_test.csv", step_test)
-    assert told["options"]["Ms"] == 1.4
+    assert (told["options"]["Ms"], told["options"]["form"], told["options"]["goal"]) == (1.4, "pid", "integral")
+    assert told["tunings"][told["recommended"]]["settings"]["Td"] > 0.0
     expect(one.page.get_by_test_id("margin-target")).to_have_text("1.4")
     one.page.get_by_test_id("again-fold").locator("summary").click()
     again = one.page.get_by_test_id("again")
     expect(again.get_by_label("Target Ms")).to_have_value("1.4")
+    expect(again.get_by_label("Controller", exact=True)).to_have_value("pid")
     again.get_by_label("Target Ms").fill("2")
     with one.page.expect_response(lambda r: "/v1/reports" in r.url, timeout=REPORT_MS) as answer:
         again.get_by_role("button", name="Analyse again").click()

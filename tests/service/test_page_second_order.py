@@ -82,5 +82,5 @@ def test_a_second_order_night_stands_in_the_history_with_the_sum_of_its_time_con
     for name in "KTL":
         expect(one.page.get_by_test_id(f"panel-{name}").locator("svg .ring")).to_have_count(1)
     expect(one.page.get_by_test_id("night")).to_contain_text("first order")
-    expect(one.page.get_by_test_id("part-history")).to_contain_text("the verdict compares first-order fits")
+    expect(one.page.get_by_test_id("part-history")).to_contain_text("the first-order fits, which the verdict compares")
     one.clean()

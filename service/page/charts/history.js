@@ -21,6 +21,13 @@ export function sample(kind) {
   return s("svg", { viewBox: "0 0 16 16", width: 16, height: 16, "aria-hidden": "true" }, SHAPES[kind](8, 8));
 }
 
+const circle = (x, y) => s("circle", { class: "ring", cx: x, cy: y, r: 5.5 });
+
+/** How a first-order fit beside a second-order one is drawn. */
+export function ring() {
+  return s("svg", { viewBox: "0 0 16 16", width: 16, height: 16, "aria-hidden": "true" }, circle(8, 8));
+}
+
 const middle = (list) => [...list].sort((a, b) => a - b)[Math.floor(list.length / 2)];
 
 /** Room for all values; an interval far wider than the others runs out of the frame rather than flatten them. */
@@ -56,7 +63,7 @@ function draw(width, times, kinds, panel) {
   const cursor = s("line", { class: "cursor", y1: 0, y2: HEIGHT });
   area.append(cursor, line(X, Y, times, values, { class: "line thread" }));
   beside.forEach((value, i) => {
-    if (value !== null) area.append(s("circle", { class: "ring", cx: X(times[i]), cy: Y(value), r: 5.5 }));
+    if (value !== null) area.append(circle(X(times[i]), Y(value)));
   });
   values.forEach((value, i) => {
     if (value === null) return;

@@ -2,7 +2,7 @@
 
 import { loop as fetchLoop, preview, putLoop } from "/page/api.js";
 import { fail } from "/page/flows/failing.js";
-import { options as readOptions } from "/page/views/options.js";
+import { options as readOptions, READING } from "/page/views/options.js";
 import { progress as progressView } from "/page/views/progress.js";
 import { understood } from "/page/views/understood.js";
 
@@ -11,7 +11,8 @@ const ROLES = ["time", "setpoint", "command", "speed"];
 /** go(options) takes the log on, once its reader says that it is read right. */
 export async function look(visit, file, options, loop, go) {
   const { name } = file;
-  const onAgain = (form) => look(visit, file, readOptions(form), loop, go);
+  const others = Object.fromEntries(Object.entries(options).filter(([key]) => !READING.includes(key)));
+  const onAgain = (form) => look(visit, file, { ...others, ...readOptions(form) }, loop, go);
   visit.show(name, `Reading ${name}`, progressView(name, file.size, () => visit.again()));
   try {
     const seen = await preview(file, options, visit.signal);

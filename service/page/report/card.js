@@ -73,5 +73,6 @@ export function cardForm(report, judge) {
     }
   }
 
-  return section("card", "An op-amp card as found", "Read the parts off the card: input R1 beside Rd and C1, feedback R2 and C2, error amplifier Ra and Rb. Leave Rd and C1 empty on a PI card.", form, output);
+  return section("card", "An op-amp card as found", "Read the parts off the card: input R1 beside Rd and C1, feedback R2 and C2, error amplifier Ra and Rb. Leave Rd and C1 empty on a PI card.",
+    h("details", { class: "carried" }, h("summary", {}, "Judge a card by its parts"), form), output);
 }

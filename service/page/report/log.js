@@ -2,11 +2,19 @@
 
 import { h, section } from "/page/dom.js";
 import { duration, exact, instant, significant, withUnit } from "/page/format.js";
-import { OPERATIONS, ROLES, word } from "/page/report/words.js";
+import { FORMS, GOALS, OPERATIONS, ROLES, word } from "/page/report/words.js";
 
 function spans(list) {
   return h("ul", { class: "plain" }, list.map(({ start_s, end_s, rows, note }) =>
     h("li", {}, `${significant(start_s, 5)} to ${withUnit(significant(end_s, 5), "s")}, ${rows} rows${note && `: ${note}`}`)));
+}
+
+const ASKED = { Ms: "target Ms", form: "controller", goal: "aim", hold: "command between samples", period: "controller period (s)", compute_delay: "computing delay (s)", robust: "held on 95 % of the plants", seed: "seed of the draws" };
+const MEANT = { form: FORMS, goal: Object.fromEntries(Object.entries(GOALS).map(([key, text]) => [key, text.toLowerCase()])) };
+
+function asked(options) {
+  return Object.entries(options).filter(([, value]) => value !== null && value !== "")
+    .map(([key, value]) => `${word(ASKED, key)} ${typeof value === "number" ? exact(value) : word(MEANT[key] ?? {}, value)}`).join(", ");
 }
 
 export function log(report, name) {
@@ -25,7 +33,7 @@ export function log(report, name) {
     ["Units", `speed ${read.speed_unit || "not stated"}, command ${read.command_unit || "not stated"}`],
     record.segments.length > 1 && ["Segments", spans(record.segments)],
     record.excluded.length > 0 && ["Left out", spans(record.excluded)],
-    ["Asked for", Object.entries(options).filter(([, value]) => value !== null && value !== "").map(([key, value]) => `${key} ${typeof value === "number" ? exact(value) : value}`).join(", ")],
+    ["Asked for", asked(options)],
     read.sha256 && ["SHA-256", h("code", { class: "hash" }, read.sha256)],
     ["Program", `gainwright ${report.engine_version}, report format ${report.report_version}`],
   ].filter((fact) => fact && fact[1]);

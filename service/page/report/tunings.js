@@ -56,12 +56,13 @@ function inMachine({ installed, log }) {
 
 function outcome(report) {
   const { speed_unit: y, command_unit: u } = report.log;
+  const gain = per(u, y);
   const inPlace = report.installed?.predicted ? [["installed", report.installed.predicted]] : [];
   const rows = [...report.tunings.map(({ method, predicted }) => [method, predicted]).filter(([, predicted]) => predicted), ...inPlace];
   if (!rows.length) return null;
   return [h("h3", {}, "Outcome to expect"),
     table("Predicted outcome of each proposal",
-      ["Proposal", "Overshoot", "Rise time", "Settling time", ["Peak deviation per ", u ? `1 ${u} of load` : "unit load"], "Recovery time", "Command travel"],
+      ["Proposal", "Overshoot", "Rise time", "Settling time", ["Peak deviation per ", u ? `1 ${u} of load` : "unit load"], "Recovery time", ["Command travel", gain && ` (${gain})`]],
       rows.map(([method, { setpoint_step: set, load_step: load }]) => [word(METHODS, method), withUnit(fixed(set.overshoot_percent, 1), "%"),
         withUnit(significant(set.rise_time_s, 3), "s"), withUnit(significant(set.settling_time_s, 3), "s"), withUnit(significant(load.peak_deviation, 3), y), withUnit(significant(load.recovery_time_s, 3), "s"), significant(set.total_variation, 3)]), { class: "stack" })];
 }

@@ -1,6 +1,6 @@
 // A loop's parameters, fit quality and margins, night by night.
 
-import { historyCharts, KINDS, sample } from "/page/charts/history.js";
+import { historyCharts, KINDS, ring, sample } from "/page/charts/history.js";
 import { h, section, symbol, table } from "/page/dom.js";
 import { estimate, fixed, instant, interval, significant, withUnit } from "/page/format.js";
 import { besideOf, kindOf } from "/page/views/nights.js";
@@ -56,7 +56,7 @@ function margins(rows, target) {
 
 export function nightCharts(rows, drift, loop, onReport) {
   const second = rows.some(({ parameters }) => "T1" in parameters || "zeta" in parameters);
-  const mixed = second ? "Nights whose log chose a second-order model stand with the sum of its time constants, and with its own dead time; the rings are the first-order fits of the same logs, and the verdict compares first-order fits." : null;
+  const mixed = second ? "Nights whose log chose a second-order model stand with the sum of its time constants, and with its own dead time; the rings are the first-order fits, which the verdict compares." : null;
   const unit = rows.find(({ speed_unit }) => speed_unit)?.speed_unit ?? "";
   const panels = [
     estimates(rows, drift, "K", "Static gain", ["K"]),
@@ -69,10 +69,11 @@ export function nightCharts(rows, drift, loop, onReport) {
   const kinds = rows.map((row) => kindOf(row, drift));
   const nights = rows.map((row, i) => ({ at: Date.parse(row.at), kind: kinds[i], name: `${instant(row.at)}${row.start ? "" : " (received)"}` }));
   const told = (panel, i) => (panel.values[i] === null ? "–" : panel.text(i));
-  return section("history", "Night by night", ["Bars are 95 % intervals from each log’s own noise, those of Ms over the motors that the log allows. ", drift && "The line is the baseline, the band the changes too small to count. ", "Times are UTC."],
-    h("ul", { class: "legend" }, KINDS.filter(([kind]) => kinds.includes(kind)).map(([kind, text]) => h("li", {}, sample(kind), drift || kind !== "plain" ? text : "one night"))),
+  return section("history", "Night by night", ["Bars are 95 % intervals from each log’s own noise, those of Ms over the plants that the log allows. ", drift && "The line is the baseline, the band the changes too small to count. ", "Times are UTC."],
+    h("ul", { class: "legend" }, KINDS.filter(([kind]) => kinds.includes(kind)).map(([kind, text]) => h("li", {}, sample(kind), drift || kind !== "plain" ? text : "one night")),
+      rows.some((row) => besideOf(row).T) && h("li", {}, ring(), "first-order fit of the same log")),
     historyCharts(nights, panels, (i) => onReport(rows[i].report_id)),
-    mixed && h("p", { class: "note" }, mixed),
+    mixed && h("p", { class: "note below" }, mixed),
     h("details", { class: "fold small", "data-testid": "history-table" }, h("summary", {}, "As a table, with the intervals"),
       table("The nights in figures", ["Night", ...panels.map(({ heading, unit: u }) => [heading(), u && ` (${u})`])],
         nights.map(({ name }, i) => [name, ...panels.map((panel) => told(panel, i))]), { class: "long" })));

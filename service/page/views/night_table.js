@@ -36,7 +36,7 @@ export function nightTable(rows, drift, loop, onBaseline) {
   const speed = rows.find(({ speed_unit }) => speed_unit)?.speed_unit;
   const gain = rows.map(({ parameters }) => parameters.K?.unit).find(Boolean);
   const T = ({ parameters, derived }) => parameters.T ?? derived["T1 + T2"] ?? derived.T_r;
-  const cell = (row, name, one) => [figure(one), besideOf(row)[name] ? h("span", { class: "gloss" }, `first order ${figure(besideOf(row)[name])}`) : ""];
+  const cell = (row, name, one) => [figure(one), besideOf(row)[name] ? h("span", { class: "gloss" }, "first order", h("br"), figure(besideOf(row)[name])) : ""];
   return section("nights", "The nights", "In the order of the logs’ own time. Tick those on which the loop was as it should be; later ones are compared with them.",
     h("form", { "data-testid": "baseline", onsubmit: async (event) => {
       event.preventDefault();

@@ -41,7 +41,7 @@ export function start({ samples, loops, notice, onLog, onSample }) {
   zone.addEventListener("drop", (event) => { lit(false)(event); take(event.dataTransfer.files[0]); });
   const first = h("label", { class: "tick" }, h("input", { type: "checkbox", name: "look", value: "yes", "data-testid": "look" }), " Show me first how it is read, and ask before going on");
   form.append(destination(loops), zone, h("p", { class: "hint" }, first), h("details", { class: "fold", "data-testid": "options" },
-    h("summary", {}, "Options: target, controller period, zone, dates, column names"), optionFields()));
+    h("summary", {}, "Options: target, PI or PID, controller period, zone, dates, column names"), optionFields()));
   return h("section", { class: "sheet start" },
     h("div", { class: "opening" },
       h("h1", {}, "From a speed loop’s log to settings you can defend"),

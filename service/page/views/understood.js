@@ -4,7 +4,7 @@ import { h, section, table } from "/page/dom.js";
 import { duration, exact, instant, significant, withUnit } from "/page/format.js";
 import { findings } from "/page/report/findings.js";
 import { ROLES, word } from "/page/report/words.js";
-import { optionFields } from "/page/views/options.js";
+import { readingFields } from "/page/views/options.js";
 
 const LAYOUTS = { wide: "one row a moment", long: "one row a value", paired: "a time beside each value" };
 const HEAD = ["Taken as", "Column in the log", "Because", "Unit", "From", "To"];
@@ -15,7 +15,7 @@ const rows = (columns) => columns.map(({ role, header, why, unit, lowest, highes
 function facts(seen) {
   const left = Object.entries(seen.dropped).map(([reason, count]) => `${count} (${reason})`).join(", ");
   return [
-    ["Rows", `${seen.rows}, ${seen.rows_used} of them to be used`],
+    ["Rows", `${seen.rows}, ${seen.rows_used === seen.rows ? "all" : `${seen.rows_used} of them`} to be used`],
     left && ["Left out", left],
     ["First stamp", seen.first_stamp], ["Last stamp", seen.last_stamp],
     ["Start", instant(seen.start) ?? "no absolute time: give the zone of the stamps if they have one"],
@@ -42,5 +42,5 @@ export function understood(seen, { name, loop, options, onRight, onAgain }) {
       h("dl", { class: "facts" }, facts(seen).map(([label, value]) => h("div", {}, h("dt", {}, label), h("dd", {}, value))))),
     section("otherwise", "Read it otherwise", loop ? "What is named here is kept with the loop once you go on." : null,
       h("form", { "data-testid": "otherwise", onsubmit: (event) => { event.preventDefault(); onAgain(event.target); } },
-        optionFields(options), h("button", { class: "button quiet", type: "submit" }, "Read it again"))));
+        readingFields(options), h("button", { class: "button quiet", type: "submit" }, "Read it again"))));
 }

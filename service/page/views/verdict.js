@@ -69,7 +69,7 @@ function range([low, high]) {
 
 const WHOSE = {
   installed: "The installed settings",
-  log: "The settings that the logs show in the machine (none are told as installed)",
+  log: "None are told as installed; the settings that the logs show in the machine",
   baseline: "The settings proposed for the baseline (none are told as installed, and no log shows them)",
 };
 
@@ -82,7 +82,7 @@ function margin({ Ms_baseline, Ms_now, ci95, target, unstable_share, settings, s
     h("dl", { class: "margins" },
       [["Ms on the baseline’s plant", fixed(Ms_baseline, 3)], ["Ms on the last log’s plant", fixed(Ms_now, 3)], ["95 % interval", Ms_now === null ? "–" : range(ci95)], ["Target", exact(target)]]
         .map(([label, text]) => h("div", {}, h("dt", {}, label), h("dd", {}, text)))),
-    h("p", { class: "note" }, WHOSE[settings_from], seen_in && [" (", h("a", { href: reportAddress(seen_in) }, "the latest of them"), ")"], `, Kp ${number(settings.Kp)}, Ti ${number(settings.Ti)} s${settings.Td ? `, Td ${number(settings.Td)} s` : ""}: `, h("strong", {}, state), ". ",
+    h("p", { class: "note" }, WHOSE[settings_from], seen_in && [" (", h("a", { href: reportAddress(seen_in) }, "latest log"), ")"], `, Kp ${number(settings.Kp)}, Ti ${number(settings.Ti)} s${settings.Td ? `, Td ${number(settings.Td)} s` : ""}: `, h("strong", {}, state), ". ",
       unstable_share ? `With ${fixed(100 * unstable_share, 1)} % of the plants that the log allows the loop is unstable. ` : "",
       "A smaller Ms is farther from instability; it says nothing about speed."));
 }
