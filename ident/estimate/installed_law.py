@@ -33,7 +33,6 @@ FORMS: dict[str, tuple[tuple[int, ...], ...]] = {
     "PID, weighted": ((S,), (Y,), (R,), (DR, DY)),
     "PI-D, weighted": ((S,), (Y,), (R,), (DY,)),
 }
-NAMES = ("ki", "Kp", "Kp b", "kd")
 
 
 @dataclass(frozen=True, slots=True)

@@ -66,14 +66,14 @@ def _designed(record: LoopRecord, guess: Fit, limits: tuple[float | None, float 
     hold = float(f"{SETTLED * T + L:.2g}")
     if 2.0 * FEWEST * hold / h > MOST_ROWS or hold < 8.0 * h:
         return None
-    size, repetitions = max(_widths_over(guess, hold, FEWEST, h).values()), FEWEST
+    needed = max(_widths_over(guess, hold, FEWEST, h).values())
     room = _room(record, limits)
-    if room is not None and size > room:
-        repetitions = math.ceil(FEWEST * (size / room) ** 2)
-        size = room
+    size, repetitions = _within(float(f"{needed:.2g}"), room), FEWEST
+    if room is not None and needed > abs(room):
+        repetitions = math.ceil(FEWEST * (needed / size) ** 2)
     repetitions = min(repetitions, MOST, int(MOST_ROWS * h / (2.0 * hold)))
-    size = float(f"{size:.2g}") if room is None or float(f"{size:.2g}") <= room else size
-    widths = {name: width * WANTED[name] / size for name, width in _widths_over(guess, hold, repetitions, h).items()}
+    over = _widths_over(guess, hold, repetitions, h)
+    widths = {name: width * WANTED[name] / abs(size) for name, width in over.items()}
     u, now = record.command_unit or "command units", _middle(record)
     told = ", ".join(f"{name} to ±{100.0 * width:.0f} %" for name, width in widths.items())
     bounded = "" if room is not None else " Its size is not held against the command's limits, as none were given."
@@ -117,6 +117,11 @@ def _room(record: LoopRecord, limits: tuple[float | None, float | None]) -> floa
     down = [ROOM * (low - now)] if low is not None and low < now else []
     up = [ROOM * (high - now)] if high is not None and high > now else []
     return max(down + up, key=abs, default=None)
+
+
+def _within(needed: float, room: float | None) -> float:
+    """The step that is needed, the way there is room for and no further."""
+    return needed if room is None else math.copysign(min(needed, abs(room)), room)
 
 
 def _middle(record: LoopRecord) -> float:

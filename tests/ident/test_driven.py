@@ -70,6 +70,14 @@ def test_a_designed_test_stays_within_the_commands_limits() -> None:
     assert below is not None
     assert below.size is not None
     assert -0.5 * free.size < below.size < 0.0
+    assert below.widths is not None
+    assert min(below.widths.values()) > 0.0
+    # Room to spare is not used up: the step is the one that is needed.
+    spare = ident.analyse(
+        log, period=0.05, subspace=False, command_limits=(now - 5.0 * free.size, now + 2.0 * free.size)
+    ).record.advice
+    assert spare is not None
+    assert (spare.size, spare.repetitions, spare.widths) == (-free.size, free.repetitions, free.widths)
 
 
 @pytest.mark.parametrize("name", ["mouse_pid1_limitcycle", "mouse_pid2_disturbed"])
