@@ -32,6 +32,8 @@ RETRY_AFTER_S = 1
 class Analysis:
     """One log with one set of options, on its way to a report.
 
+    stage     queued, then reading, fitting, judging, tuning, storing; at the end done or failed
+    progress  share of the stages left behind, 0 to 1
     options   what it is done with, the loop's settings counted in; what is not named has its default
     """
 
