@@ -26,7 +26,7 @@ def create_app(settings: Settings | None = None, *, task: Task = report_bytes) -
     """The ASGI application; its worker processes run from start-up to shutdown.
 
     settings  None: from the environment
-    task      what a worker does with (bytes, options); tests put a failing one here
+    task      what a worker does with (a log's file, options); tests put a failing one here
     """
     settings = settings or Settings()
     workers = Workers(settings.workers, settings.max_waiting, settings.time_limit_s, task)

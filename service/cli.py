@@ -6,9 +6,12 @@ Exit status: 0 done, 1 a fault of the program, 2 a log or an option that cannot 
 from __future__ import annotations
 
 import argparse
+import shutil
 import sys
-from collections.abc import Sequence
+from collections.abc import Iterator, Sequence
+from contextlib import contextmanager
 from pathlib import Path
+from tempfile import TemporaryDirectory
 from typing import Any, Literal, get_args, get_origin
 
 from pydantic import ValidationError
@@ -115,18 +118,15 @@ def _report(asked: argparse.Namespace) -> int:
         options = Options.model_validate({name: text for name, text in given.items() if text is not None})
     except ValidationError as error:
         return _refuse(wrong_options(error))
-    try:
-        source = sys.stdin.buffer.read() if asked.file == "-" else Path(asked.file).read_bytes()
-    except OSError as error:
-        return _refuse(Problem("unreadable-file", f"{asked.file} cannot be opened: {error.strerror}."))
     from service.work.previewing import preview_bytes
     from service.work.report import report_bytes, report_summary
 
-    answer: bytes | str | Problem
-    if asked.preview:
-        answer = preview_bytes(source, options)
-    else:
-        answer = report_summary(source, options) if asked.summary else report_bytes(source, options)
+    task = preview_bytes if asked.preview else report_summary if asked.summary else report_bytes
+    try:
+        with _file(asked.file) as file:
+            answer = task(file, options)
+    except OSError as error:
+        return _refuse(Problem("unreadable-file", f"{asked.file} cannot be opened: {error.strerror}."))
     if isinstance(answer, Problem):
         return _refuse(answer)
     output = answer.encode() if isinstance(answer, str) else answer
@@ -136,6 +136,20 @@ def _report(asked: argparse.Namespace) -> int:
         sys.stdout.buffer.write(b"\n")
     sys.stdout.buffer.flush()
     return 0
+
+
+@contextmanager
+def _file(name: str) -> Iterator[Path]:
+    """The log as a file that can be opened. Raises OSError."""
+    if name != "-":
+        Path(name).open("rb").close()
+        yield Path(name)
+        return
+    with TemporaryDirectory() as folder:
+        file = Path(folder) / "log"
+        with file.open("wb") as log:
+            shutil.copyfileobj(sys.stdin.buffer, log)
+        yield file
 
 
 def _refuse(problem: Problem) -> int:

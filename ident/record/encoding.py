@@ -1,7 +1,7 @@
 """From a source to blocks of UTF-8 lines: byte order marks, Windows-1252, power-cut tails, and what is no text.
 
 The source is read twice, first to learn its encoding and end, then block by block, so that the text of a log
-is never in memory whole unless the caller brought it so.
+is never in memory whole unless the caller brought it so, or brought a pipe.
 """
 
 from __future__ import annotations
@@ -11,6 +11,7 @@ import hashlib
 import io
 import os
 from collections.abc import Callable, Iterator
+from contextlib import AbstractContextManager, nullcontext
 from dataclasses import dataclass
 from pathlib import Path
 from typing import BinaryIO
@@ -19,6 +20,8 @@ from ident.errors import ReadError
 from ident.findings import Finding
 
 LogSource = str | os.PathLike[str] | bytes | bytearray | memoryview | BinaryIO
+
+Opened = Callable[[], AbstractContextManager[BinaryIO]]
 
 BLOCK = 2**23
 LONGEST_LINE = 2**20
@@ -54,7 +57,7 @@ class Body:
     encoding: str
     complete: bool
     findings: tuple[Finding, ...]
-    _open: Callable[[], BinaryIO]
+    _open: Opened
     _mark: int
     _size: int
 
@@ -155,7 +158,7 @@ class _End:
     tail_nuls: int
 
 
-def _scan(opened: Callable[[], BinaryIO], encoding: str, mark: int) -> _End:
+def _scan(opened: Opened, encoding: str, mark: int) -> _End:
     digest = hashlib.sha256()
     size = text = last_line = nuls = tail_nuls = newline = 0
     ended = False
@@ -179,7 +182,7 @@ def _scan(opened: Callable[[], BinaryIO], encoding: str, mark: int) -> _End:
 
 
 def _decoded(
-    opened: Callable[[], BinaryIO],
+    opened: Opened,
     encoding: str,
     mark: int,
     most: int | None = None,
@@ -230,16 +233,16 @@ def _without_nuls(lines: bytes) -> bytes:
     return b"\n".join(b"" if b"\0" in line else line for line in lines.split(b"\n"))
 
 
-def _first_text(opened: Callable[[], BinaryIO], encoding: str, mark: int, most: int) -> bytes:
+def _first_text(opened: Opened, encoding: str, mark: int, most: int) -> bytes:
     return b"".join(_decoded(opened, encoding, mark, most))
 
 
-def _first_bytes(opened: Callable[[], BinaryIO], count: int) -> bytes:
+def _first_bytes(opened: Opened, count: int) -> bytes:
     with opened() as file:
         return file.read(count)
 
 
-def _opener(source: LogSource) -> Callable[[], BinaryIO]:
+def _opener(source: LogSource) -> Opened:
     """What opens the source anew at its start, as often as wanted."""
     if isinstance(source, str | os.PathLike):
         path = Path(source)
@@ -251,10 +254,19 @@ def _opener(source: LogSource) -> Callable[[], BinaryIO]:
     if isinstance(source, bytes | bytearray | memoryview):
         held = bytes(source)
         return lambda: io.BytesIO(held)
-    content = source.read()
-    if not isinstance(content, bytes):
+    if not isinstance(source.read(0), bytes):
         raise TypeError("read_csv needs a binary file: open it with mode 'rb'")
-    return lambda: io.BytesIO(content)
+    if not source.seekable():
+        content = source.read()  # a pipe can be read once only
+        return lambda: io.BytesIO(content)
+    begin = source.tell()
+    return lambda: _rewound(source, begin)
+
+
+def _rewound(file: BinaryIO, begin: int) -> AbstractContextManager[BinaryIO]:
+    """The caller's own file, to be read from there again and left open."""
+    file.seek(begin)
+    return nullcontext(file)
 
 
 def _too_long() -> ReadError:

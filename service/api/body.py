@@ -1,27 +1,42 @@
-"""The log in a request: raw, packed or a multipart field, received piece by piece under one limit.
+"""The log in a request: raw, packed or a multipart field, received piece by piece into a file, under one limit.
 
-request.stream() -> limited (as sent) -> gunzip or unpack_zstd -> limited (unpacked) -> raw bytes, or the form's `file`
+request.stream() -> limited (as sent) -> gunzip or unpack_zstd -> limited (unpacked), or the form's `file` -> a file
 """
 
 from __future__ import annotations
 
 import asyncio
-import io
 from collections.abc import AsyncGenerator, AsyncIterator
+from contextlib import asynccontextmanager
+from pathlib import Path
 
 from starlette.datastructures import UploadFile
 from starlette.formparsers import MultiPartException, MultiPartParser
 from starlette.requests import Request
 
 from service.api.gzip import gunzip
+from service.api.state import state
 from service.api.zstd import unpack_zstd
 from service.errors import ProblemError
 
 FIELD = "file"
+PIECE = 2**20  # bytes written at a time
 
 
-async def read_log(request: Request, limit: int, time_limit_s: float) -> bytes:
-    """The log's bytes, decoded.
+@asynccontextmanager
+async def received(request: Request) -> AsyncIterator[Path]:
+    """The log of a request in a file, decoded; the file is gone afterwards.
+
+    Raises ProblemError: as `receive`.
+    """
+    service = state(request)
+    with service.store.uploads.part() as file:
+        await receive(request, file, service.settings.max_upload_bytes, service.settings.upload_time_limit_s)
+        yield file
+
+
+async def receive(request: Request, file: Path, limit: int, time_limit_s: float) -> None:
+    """Write the log's bytes, decoded, to a file; a piece or two of it are in memory at a time.
 
     limit         bytes, as sent and unpacked
     time_limit_s  for all of it: a stalled upload must not hold its place for ever
@@ -31,7 +46,7 @@ async def read_log(request: Request, limit: int, time_limit_s: float) -> bytes:
     """
     try:
         async with asyncio.timeout(time_limit_s):
-            return await _read(request, limit)
+            await _write(_decoded(request, limit), file)
     except TimeoutError:
         raise ProblemError(
             "too-slow",
@@ -41,7 +56,7 @@ async def read_log(request: Request, limit: int, time_limit_s: float) -> bytes:
         ) from None
 
 
-async def _read(request: Request, limit: int) -> bytes:
+async def _decoded(request: Request, limit: int) -> AsyncGenerator[bytes, None]:
     announced = request.headers.get("content-length", "")
     if announced.isdecimal() and int(announced) > limit:
         raise too_large(limit)
@@ -57,8 +72,9 @@ async def _read(request: Request, limit: int) -> bytes:
             f"Content-Encoding {encoding!r} is not understood. Send the log plain, or as gzip or zstd.",
         )
     if request.headers.get("content-type", "").lower().startswith("multipart/form-data"):
-        return await _from_form(request, pieces)
-    return await _joined(pieces)
+        pieces = _from_form(request, pieces)
+    async for piece in pieces:
+        yield piece
 
 
 def too_large(limit: int) -> ProblemError:
@@ -80,14 +96,20 @@ async def limited(pieces: AsyncIterator[bytes], limit: int) -> AsyncGenerator[by
         yield piece
 
 
-async def _joined(pieces: AsyncIterator[bytes]) -> bytes:
-    whole = io.BytesIO()
-    async for piece in pieces:
-        whole.write(piece)
-    return whole.getvalue()
+async def _write(pieces: AsyncIterator[bytes], file: Path) -> None:
+    with file.open("wb") as log:
+        kept = bytearray()
+        async for piece in pieces:
+            kept += piece
+            if len(kept) >= PIECE:
+                # Another thread: a slow disk must not hold up the other requests.
+                await asyncio.to_thread(log.write, kept)
+                kept = bytearray()
+        log.write(kept)
 
 
-async def _from_form(request: Request, pieces: AsyncGenerator[bytes, None]) -> bytes:
+async def _from_form(request: Request, pieces: AsyncGenerator[bytes, None]) -> AsyncGenerator[bytes, None]:
+    # The parser keeps a large file on disk too; its end is known only when the whole form has been read.
     try:
         form = await MultiPartParser(request.headers, pieces, max_files=1, max_fields=1).parse()
     except MultiPartException as error:
@@ -106,6 +128,7 @@ async def _from_form(request: Request, pieces: AsyncGenerator[bytes, None]) -> b
         file = form.get(FIELD)
         if not isinstance(file, UploadFile):
             raise ProblemError("no-file-field", f"The form has no complete file in its field {FIELD!r}.")
-        return await file.read()
+        while piece := await file.read(PIECE):
+            yield piece
     finally:
         await form.close()

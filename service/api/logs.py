@@ -9,7 +9,7 @@ from typing import Annotated, Any, Literal
 
 from fastapi import APIRouter, Query, Request, Response
 
-from service.api.body import read_log
+from service.api.body import received
 from service.api.loops import existing
 from service.api.names import LoopName
 from service.api.paging import LINK, After, Limit, page
@@ -113,9 +113,8 @@ async def post_log(
     """
     service = state(request)
     with service.workers.admit():
-        source = await read_log(request, service.settings.max_upload_bytes, service.settings.upload_time_limit_s)
-        accepted = await keep(service.store, service.dispatcher, loop, source, options)
-        del source  # kept on disk; not held in memory while the client waits
+        async with received(request) as log:
+            accepted = await keep(service.store, service.dispatcher, loop, log, options)
     found = accepted.analysis
     seconds = wait_seconds(request.headers.getlist("prefer"))
     if seconds is not None:

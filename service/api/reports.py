@@ -7,7 +7,7 @@ from typing import Annotated, Any
 from fastapi import APIRouter, Query, Request, Response
 
 import ident
-from service.api.body import FIELD, read_log
+from service.api.body import FIELD, received
 from service.api.problems import documented
 from service.api.state import state
 from service.errors import Problem, ProblemError
@@ -49,8 +49,8 @@ async def post_report(request: Request, options: Annotated[Options, Query()]) ->
     """
     service = state(request)
     with service.workers.admit():
-        source = await read_log(request, service.settings.max_upload_bytes, service.settings.upload_time_limit_s)
-        answer = await service.workers.run(source, options)
+        async with received(request) as log:
+            answer = await service.workers.run(log, options)
     service.metrics.analysed(answer)
     if isinstance(answer, Problem):
         raise ProblemError.of(answer)
@@ -71,8 +71,8 @@ async def preview_log(request: Request, options: Annotated[Options, Query()]) ->
     """
     service = state(request)
     with service.workers.admit():
-        source = await read_log(request, service.settings.max_upload_bytes, service.settings.upload_time_limit_s)
-        answer = await service.workers.run(source, options, preview_bytes)
+        async with received(request) as log:
+            answer = await service.workers.run(log, options, preview_bytes)
     if isinstance(answer, Problem):
         raise ProblemError.of(answer)
     return Response(answer, media_type="application/json")

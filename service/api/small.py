@@ -18,7 +18,7 @@ TOO_LARGE = Problem(
 
 
 class SmallBodies:
-    """ASGI middleware; logs pass it untouched: `body.read_log` has their limit."""
+    """ASGI middleware; logs pass it untouched: `body.receive` has their limit."""
 
     def __init__(self, app: ASGIApp) -> None:
         self._app = app

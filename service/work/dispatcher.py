@@ -108,12 +108,13 @@ class Dispatcher:
 
     async def _do(self, lane: Lane, job: Job) -> None:
         try:
-            source = await asyncio.to_thread(self._store.uploads.get, job.sha256)
-            options = Options.model_validate_json(job.options)
-            async with _running(lane.run(source, options, self._workers.time_limit_s)) as working:
-                if not await self._attend(lane, job, working):
-                    return
-                answer = working.result()
+            with self._store.uploads.part() as file:
+                await asyncio.to_thread(self._store.uploads.get, job.sha256, file)
+                options = Options.model_validate_json(job.options)
+                async with _running(lane.run(file, options, self._workers.time_limit_s)) as working:
+                    if not await self._attend(lane, job, working):
+                        return
+                    answer = working.result()
         except ProblemError as error:
             answer = error.problem
         if answer == LOST:

@@ -14,6 +14,8 @@ from collections.abc import Callable
 from concurrent.futures import BrokenExecutor, Future, ProcessPoolExecutor
 from contextlib import suppress
 from multiprocessing.context import BaseContext
+from pathlib import Path
+from typing import Any
 
 from service.errors import Problem
 from service.work.options import Options
@@ -21,7 +23,8 @@ from service.work.stages import STAGES, Stage
 from service.work.worker import prepare
 
 Answer = bytes | Problem
-Task = Callable[[bytes, Options], Answer]
+Source = bytes | Path  # a log in a file, or JSON
+Task = Callable[[Any, Options], Answer]  # of one kind of source
 
 LOST = Problem("worker-lost", "The process that analysed this log died and was replaced. Send the log again.")
 
@@ -61,7 +64,7 @@ class Lane:
         """What its process is at, of `stages.STAGES`."""
         return self._stage.get()
 
-    async def run(self, source: bytes, options: Options, limit_s: float, task: Task | None = None) -> Answer:
+    async def run(self, source: Source, options: Options, limit_s: float, task: Task | None = None) -> Answer:
         """What the task returns, or the problem that the process died or took more than `limit_s` seconds.
 
         task   None: the lane's own
@@ -85,7 +88,7 @@ class Lane:
             self.close()
             raise
 
-    async def _submit(self, task: Task, source: bytes, options: Options) -> Future[Answer]:
+    async def _submit(self, task: Task, source: Source, options: Options) -> Future[Answer]:
         self._stage.set(STAGES[0])
         if self._executor is not None:
             try:

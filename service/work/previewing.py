@@ -2,6 +2,8 @@
 
 from __future__ import annotations
 
+from pathlib import Path
+
 from pydantic import TypeAdapter
 
 import ident
@@ -13,11 +15,11 @@ from service.work.stages import enter
 _preview = TypeAdapter(ident.Preview)
 
 
-def preview_bytes(source: bytes, options: Options) -> bytes | Problem:
+def preview_bytes(source: bytes | Path, options: Options) -> bytes | Problem:
     """JSON of an `ident.Preview`, or the problem that stands in its way. Never raises."""
     return told(lambda: _preview.dump_json(_previewed(source, options)))
 
 
-def _previewed(source: bytes, options: Options) -> ident.Preview:
+def _previewed(source: bytes | Path, options: Options) -> ident.Preview:
     enter("reading")
     return ident.previewed(read(source, options))

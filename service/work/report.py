@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import logging
 from collections.abc import Callable
+from pathlib import Path
 from typing import TypeVar
 
 from pydantic import TypeAdapter
@@ -23,7 +24,7 @@ INTERNAL = Problem("internal", "The analysis failed by a fault of the program; i
 _report = TypeAdapter(ident.Report)
 
 
-def report(source: bytes, options: Options) -> ident.Report:
+def report(source: bytes | Path, options: Options) -> ident.Report:
     """Read and analyse a log.
 
     Raises ident.IdentError where the log cannot be read or the request has no answer.
@@ -43,7 +44,7 @@ def report(source: bytes, options: Options) -> ident.Report:
     )
 
 
-def read(source: bytes, options: Options) -> ident.LoopRecord:
+def read(source: bytes | Path, options: Options) -> ident.LoopRecord:
     """A log as its options say. Raises ident.IdentError."""
     record = ident.read_csv(
         source,
@@ -61,7 +62,7 @@ def to_json(report: ident.Report) -> bytes:
     return _report.dump_json(report)
 
 
-def report_bytes(source: bytes, options: Options) -> bytes | Problem:
+def report_bytes(source: bytes | Path, options: Options) -> bytes | Problem:
     """The JSON of a log's report, or the problem that stands in its way. Never raises.
 
     It runs in worker processes, where an exception on its way back can break the pool, and SystemExit would
@@ -70,7 +71,7 @@ def report_bytes(source: bytes, options: Options) -> bytes | Problem:
     return told(lambda: to_json(report(source, options)))
 
 
-def report_summary(source: bytes, options: Options) -> str | Problem:
+def report_summary(source: bytes | Path, options: Options) -> str | Problem:
     """A log's report as text to read, or the problem that stands in its way. Never raises."""
     return told(lambda: ident.summary(report(source, options)))
 

@@ -7,7 +7,7 @@ from collections.abc import AsyncIterator, Iterator
 from contextlib import asynccontextmanager, contextmanager
 
 from service.errors import ProblemError
-from service.work.lane import Answer, Lane, Task
+from service.work.lane import Answer, Lane, Source, Task
 from service.work.options import Options
 from service.work.report import report_bytes
 from service.work.worker import context
@@ -52,7 +52,7 @@ class Workers:
 
     @contextmanager
     def admit(self) -> Iterator[None]:
-        """Hold one place from before a log is received, for logs in memory are what has to be bounded.
+        """Hold one place from before a log is received, for the room that logs take is what has to be bounded.
 
         Raises ProblemError: busy.
         """
@@ -77,7 +77,7 @@ class Workers:
         finally:
             self._idle.put_nowait(lane)
 
-    async def run(self, source: bytes, options: Options, task: Task | None = None) -> Answer:
+    async def run(self, source: Source, options: Options, task: Task | None = None) -> Answer:
         """The report's JSON or a problem, once a process is free.
 
         task   something else to do there than what these workers are for

@@ -5,14 +5,17 @@ from __future__ import annotations
 import os
 import signal
 import time
+from pathlib import Path
 
 from service.errors import Problem
 from service.work.options import Options
 from service.work.stages import enter
 
 
-def obey(source: bytes, options: Options) -> bytes | Problem:
+def obey(source: bytes | Path, options: Options) -> bytes | Problem:
     """Do what the body says; anything else comes back in capitals."""
+    if isinstance(source, Path):
+        source = source.read_bytes()
     if source == b"die":
         os.kill(os.getpid(), signal.SIGKILL)
     if source == b"hang":

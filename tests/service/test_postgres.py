@@ -54,7 +54,8 @@ def test_a_job_is_claimed_once_however_many_ask(url: str, tmp_path: Path) -> Non
     store.open()
     assert not store.alone
     for i in range(40):
-        sha256 = store.uploads.put(str(i).encode())
+        (log := tmp_path / "log").write_text(str(i))
+        sha256 = store.uploads.put(log)
         store.logs.accept("pan", sha256, 1, "{}", NOW, loop_settings="{}")
     claimed: list[str] = []
 

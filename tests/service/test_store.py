@@ -33,8 +33,20 @@ def store(tmp_path: Path) -> Iterator[Store]:
     store.close()
 
 
+def put(uploads: Uploads, source: bytes) -> str:
+    with uploads.part() as log:
+        log.write_bytes(source)
+        return uploads.put(log)
+
+
+def get(uploads: Uploads, sha256: str) -> bytes:
+    with uploads.part() as log:
+        uploads.get(sha256, log)
+        return log.read_bytes()
+
+
 def accept(store: Store, source: bytes = b"a,b", loop: str = "pan", options: str = "{}") -> Accepted:
-    sha256 = store.uploads.put(source)
+    sha256 = put(store.uploads, source)
     return store.logs.accept(loop, sha256, len(source), options, NOW, loop_settings="{}", try_again={"lost"})
 
 
@@ -154,33 +166,34 @@ def test_a_folder_is_one_service_s_at_a_time(store: Store, tmp_path: Path) -> No
 def test_uploads_come_back_and_take_little_room(tmp_path: Path) -> None:
     uploads = Uploads(tmp_path)
     source = b"0.1,42.00,591.5\n" * 10_000
-    sha256 = uploads.put(source)
-    assert uploads.put(source) == sha256
-    assert uploads.get(sha256) == source
+    sha256 = put(uploads, source)
+    assert put(uploads, source) == sha256
+    assert get(uploads, sha256) == source
     (file,) = tmp_path.glob("*/*")
     assert file.stat().st_size < len(source) / 10
 
 
 def test_a_damaged_upload_is_told_and_can_be_sent_again(tmp_path: Path) -> None:
     uploads = Uploads(tmp_path)
-    sha256 = uploads.put(b"speed")
+    sha256 = put(uploads, b"speed")
     (file,) = tmp_path.glob("*/*")
-    file.write_bytes(file.read_bytes()[:-3])
+    file.write_bytes(file.read_bytes()[:-6])  # into the content, beyond the checksum
     for _ in range(2):
         with pytest.raises(ProblemError, match="upload-damaged"):
-            uploads.get(sha256)
-    uploads.put(b"speed")
-    assert uploads.get(sha256) == b"speed"
+            get(uploads, sha256)
+    put(uploads, b"speed")
+    assert get(uploads, sha256) == b"speed"
 
 
 def test_what_a_kill_cut_off_is_removed_at_the_next_start(store: Store, tmp_path: Path) -> None:
-    kept = store.uploads.put(b"speed")
-    part = tmp_path / "uploads" / kept[:2] / "part-x"
-    part.write_bytes(b"sp")
+    kept = put(store.uploads, b"speed")
+    parts = [tmp_path / "uploads" / folder / "part-x" for folder in (kept[:2], "parts")]
+    for part in parts:
+        part.write_bytes(b"sp")
     store.close()
     store.open()
-    assert not part.exists()
-    assert store.uploads.get(kept) == b"speed"
+    assert not any(part.exists() for part in parts)
+    assert get(store.uploads, kept) == b"speed"
 
 
 # --- jobs
