@@ -114,3 +114,23 @@ def test_what_a_move_of_the_practical_size_costs_is_as_stated(L: float) -> None:
     assert 1.655 < K_up < 1.695
     assert max(T_down, T_up) < 1.685
     assert L_up == pytest.approx(1.8, abs=0.03)
+
+
+def test_the_interval_of_a_plant_with_one_uncertain_gain_runs_between_its_ends() -> None:
+    # Ms rises with K here, so the quantiles are those of K; 400 draws leave them open by a tenth of the half-width.
+    std, settings = 0.05 * 14.6, ident.PidSettings(0.12, 1.2)
+    one = ident.Night(14.6, 1.83, 0.37, ((std**2, 0.0, 0.0), (0.0, 1e-12, 0.0), (0.0, 0.0, 1e-12)))
+    found = ident.margin_interval(one, settings, period=0.1)
+    low, middle, high = (
+        ident.margins(ident.Fopdt(14.6 + k * std, 1.83, 0.37), settings, period=0.1).Ms or np.inf
+        for k in (-1.96, 0.0, 1.96)
+    )
+    assert low < middle < high
+    assert found.ci95 == pytest.approx((low, high), abs=0.15 * (high - low))
+    assert found.Ms_median == pytest.approx(middle, abs=0.05 * (high - low))
+    assert found.unstable_share == 0.0
+
+
+def test_the_interval_of_an_unstable_loop_says_so() -> None:
+    found = ident.margin_interval(night(60.0, 0.01), ident.PidSettings(0.40, 1.5), period=0.1)
+    assert (found.Ms_median, found.ci95, found.unstable_share) == (None, (None, None), 1.0)

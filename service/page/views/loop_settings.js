@@ -44,7 +44,7 @@ export function loopSettings(name, known, { onSave }) {
       refuse(form, error.evidence ?? {});
     }
   } },
-  group("Installed settings", "What is in the machine now, in the ideal form. Margins are followed for these. Leave all empty if they are not known.",
+  group("Installed settings", "What is in the machine now, in the ideal form. Margins are followed for these. Leave all empty if they are not known: then for those that the logs show, where they do.",
     number("installed.Kp", "Gain Kp", "Command unit per speed unit."), number("installed.Ti", "Integral time Ti, s"), number("installed.Td", "Derivative time Td, s", "Empty: 0, a PI controller.", { min: 0 }),
     number("installed.Tf", "Filter time Tf, s", "Empty: 0.", { min: 0 }), number("installed.b", "Setpoint weight b", "Empty: 1.")),
   group("Controller", null,
