@@ -31,7 +31,8 @@ class Columns:
 
     response     (rows,), deviation from the command level
     slopes       (k, rows), of the response in the shape's logarithms;  slope_L  (rows,), per s
-    nuisance     (m, rows): the offset, the drift where there is one, then the transients of each freed stretch
+    nuisance     (m, rows): the offset, the drift and the lead of reports on change where there are such,
+                 then the transients of each freed stretch
     transients   the last of these again: how they move with the shape
     """
 
@@ -61,7 +62,7 @@ def columns(layout: Layout, shape: Shape, L: float) -> Columns:
 def _nuisance(layout: Layout, shape: Shape) -> tuple[Floats, tuple[Moving, ...]]:
     moving: list[Moving] = []
     values: list[Floats] = []
-    first = column = 2 if layout.drifting else 1  # the offset and the drift do not move with the shape
+    first = column = 1 + layout.drifting + layout.on_change  # the offset and its like do not move with the shape
     row = 0
     for stretch in layout.stretches:
         if stretch.start != "settled":
@@ -76,6 +77,8 @@ def _nuisance(layout: Layout, shape: Shape) -> tuple[Floats, tuple[Moving, ...]]
     nuisance[0] = 1.0
     if layout.drifting:
         nuisance[1] = layout.clock
+    if layout.on_change:
+        nuisance[first - 1] = layout.ahead
     at = first
     for value, own in zip(values, moving, strict=True):
         nuisance[at : at + len(value), own.row : own.row + value.shape[1]] = value

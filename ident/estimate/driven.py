@@ -72,10 +72,10 @@ def _stds(layout: Layout, found: Found) -> tuple[float, float, float, float]:
 def _driven_layout(record: LoopRecord, layout: Layout, slowest: float) -> Layout | None:
     """The layout with the command that setpoint and hand moved in place of the logged one."""
     by_hand = hand_rows(record)
-    parts = [slice(s.row0, s.row0 + s.rows) for s in layout.stretches]
+    parts = [slice(s.row0, s.row0 + len(s.given.time)) for s in layout.stretches]
     bank = [_bank(record, part, s.intervals, slowest) for part, s in zip(parts, layout.stretches, strict=True)]
     automatic = np.concatenate([~by_hand[part] for part in parts])
-    command = np.concatenate([s.command for s in layout.stretches])
+    command = np.concatenate([s.given.command for s in layout.stretches])
     moved = np.zeros_like(command)
     kept = np.ones((1, len(command)))
     if all(b is not None for b in bank):
@@ -96,8 +96,8 @@ def _driven_layout(record: LoopRecord, layout: Layout, slowest: float) -> Layout
         moved[hands] = command[hands] - command[hands].mean()
     if not np.ptp(moved) > 0.0:
         return None
-    cut = np.split(moved, np.cumsum([s.rows for s in layout.stretches])[:-1])
-    stretches = tuple(replace(s, command=c - c[0]) for s, c in zip(layout.stretches, cut, strict=True))
+    cut = np.split(moved, np.cumsum([len(s.given.time) for s in layout.stretches])[:-1])
+    stretches = tuple(s.commanded(c - c[0]) for s, c in zip(layout.stretches, cut, strict=True))
     replaced = levelled(stretches, layout.command_level, layout.speed_level)
     return replace(replaced, drifting=layout.drifting).whitened(layout.colour)
 

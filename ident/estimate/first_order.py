@@ -44,7 +44,7 @@ class FirstOrder:
 
     def answer(self, stretch: Stretch, L: float) -> tuple[Floats, Floats, Floats]:
         """At the used rows: the answer to the delayed command (n,), its slope in log T (1, n), its slope in L (n,)."""
-        T, u, steps, straight = self.T, stretch.command, stretch.intervals, stretch.straight
+        T, u, steps, straight = self.T, stretch.given.command, stretch.intervals, stretch.straight
         gap = lag_gap(u, steps, T, straight=straight)
         slope = lag_gap_slope(gap, steps, T, command=u, straight=straight)
         series = (u, gap, slope, stretch.rates) if straight else (u, gap, slope)

@@ -134,7 +134,7 @@ def on_record(base: Ground, at: Point) -> Floats:
     """(rows of the record,): the simulated response; NaN on rows not used."""
     simulated = np.full(base.record.rows, np.nan)
     for s, left in zip(base.layout.stretches, base.layout.parts(at.raw), strict=True):
-        simulated[s.row0 + s.skip : s.row0 + s.rows] = s.speed[s.skip :] - left + base.layout.speed_level
+        simulated[np.arange(base.record.rows)[s.places][s.skip :]] = s.speed[s.skip :] - left + base.layout.speed_level
     simulated.flags.writeable = False
     return simulated
 
@@ -151,8 +151,9 @@ def _between_samples(layout: Layout, at: Point, hold: Hold | None) -> tuple[Layo
     explains the speed plainly worse: a hold would take half a step of its own out of the dead time, and by chance of
     where the samples fall can even fit a little better for it.
     """
-    moves = [np.diff(s.command) for s in layout.stretches]
-    if hold == "zero-order" or (hold is None and float(np.mean(np.concatenate(moves) != 0.0)) < MOVING):
+    moves = [np.diff(s.given.command) for s in layout.stretches]
+    seldom = float(np.mean(np.concatenate(moves) != 0.0)) < MOVING
+    if layout.on_change or hold == "zero-order" or (hold is None and seldom):
         return layout, at
     straight = layout.straightened()
     # A straight command leads a held one by half a step.
@@ -172,7 +173,7 @@ def _smooth(moves: list[Floats]) -> bool:
 
 def _require_movement(record: LoopRecord, layout: Layout) -> None:
     for name, unit, series in (
-        ("command", record.command_unit, [s.command for s in layout.stretches]),
+        ("command", record.command_unit, [s.given.command for s in layout.stretches]),
         ("speed", record.speed_unit, [s.speed for s in layout.stretches]),
     ):
         values = np.concatenate(series)

@@ -18,17 +18,29 @@ from dataclasses import dataclass, replace
 from typing import Literal
 
 import numpy as np
+from numpy.typing import NDArray
 
 from ident.errors import NotIdentifiable
+from ident.estimate import on_change
 from ident.evidence.colour import WHITE, Colour
 from ident.record import LoopRecord, Segment
 from ident.record.segments import Floats
 
 Start = Literal["settled", "free", "joined"]
+Places = NDArray[np.intp]
 
 QUIET_ROWS = 5  # rows before the first move that support an initial state of their own
 RICH_MOVES = 10  # moves that let a transient be told from the response
 SHORTEST = 8  # rows; a shorter segment cannot pay for its own initial condition
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class Logged:
+    """All rows of a segment whose speed is reported on change; time, command and speed (n,) as in a Stretch."""
+
+    time: Floats
+    command: Floats
+    speed: Floats
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -43,6 +55,7 @@ class Stretch:
     skip        rows at the start left out of the residuals
     straight    the command is taken as straight between samples, not held
     began       s, the segment's first row on the record's clock
+    log         all rows of the segment where its rows are the reports of a speed that is reported on change
     """
 
     row0: int
@@ -54,6 +67,7 @@ class Stretch:
     skip: int = 0
     straight: bool = False
     began: float = 0.0
+    log: Logged | None = None
 
     @property
     def rows(self) -> int:
@@ -62,12 +76,31 @@ class Stretch:
     @property
     def intervals(self) -> float | Floats:
         """The step, or the (n-1,) intervals where there is none."""
-        return self.step if self.step is not None else np.diff(self.time)
+        return self.step if self.step is not None else np.diff(self.given.time)
+
+    @property
+    def given(self) -> Stretch | Logged:
+        """Time and command of the rows that tell the command."""
+        return self.log or self
+
+    @property
+    def places(self) -> slice | Places:
+        """Where the rows stand in the record."""
+        if self.log is None:
+            return slice(self.row0, self.row0 + self.rows)
+        return self.row0 + np.searchsorted(self.log.time, self.time)
+
+    def commanded(self, command: Floats) -> Stretch:
+        """The same under another command, one value for each row that tells it."""
+        if self.log is None:
+            return replace(self, command=command)
+        own = command[np.searchsorted(self.log.time, self.time)]
+        return replace(self, command=own, log=replace(self.log, command=command))
 
     @property
     def rates(self) -> Floats:
         """(n,), the command's slope per s from each row to the next; 0 after the last."""
-        return np.append(np.diff(self.command) / np.diff(self.time), 0.0)
+        return np.append(np.diff(self.given.command) / np.diff(self.given.time), 0.0)
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -113,6 +146,21 @@ class Layout:
     def clock(self) -> Floats:
         """(rows,), s on the record's clock at the used rows."""
         return np.concatenate([s.began + s.time[s.skip :] for s in self.stretches])
+
+    @property
+    def on_change(self) -> bool:
+        """Whether the speed is reported on change."""
+        return any(s.log is not None for s in self.stretches)
+
+    @property
+    def ahead(self) -> Floats:
+        """(rows,): how far reports on change run ahead of the speed, up to a common factor."""
+        return np.concatenate([on_change.ahead(s.time, s.speed)[s.skip :] for s in self.stretches])
+
+    @property
+    def deadband(self) -> float:
+        """The least change that is reported; 0 where every row is."""
+        return on_change.deadband([s.speed for s in self.stretches]) if self.on_change else 0.0
 
     @property
     def straight(self) -> bool:
@@ -206,15 +254,20 @@ def _stretch(record: LoopRecord, segment: Segment, *, first: bool, levels: tuple
         # Stamps are rounded by the logger; the clock behind them is not.
         time = np.asarray(segment.step * np.arange(segment.rows), dtype=np.float64)
     speed = record.speed[segment.slice] - levels[1]
+    if record.held is not None:
+        told = ~record.held[segment.slice]
+        whole = Logged(time, command, speed)
+        return Stretch(segment.start, time[told], None, command[told], speed[told], "joined", began=began, log=whole)
     return Stretch(segment.start, time, segment.step, command, speed, start, began=began)
 
 
 def _even(stretch: Stretch, step: float) -> Stretch:
     time = np.arange(0.0, stretch.time[-1] + 0.5 * step, step)
-    held = np.searchsorted(stretch.time, time, side="right") - 1
-    speed = np.interp(time, stretch.time, stretch.speed)
+    given = stretch.given
+    held = np.searchsorted(given.time, time, side="right") - 1
+    speed = np.interp(time, given.time, given.speed)
     skip = int(np.searchsorted(time, stretch.time[min(stretch.skip, stretch.rows - 1)]))
-    return replace(stretch, time=time, step=step, command=stretch.command[held], speed=speed, skip=skip)
+    return replace(stretch, time=time, step=step, command=given.command[held], speed=speed, skip=skip, log=None)
 
 
 def _thin(stretch: Stretch, blocks: int) -> Stretch:

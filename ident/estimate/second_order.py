@@ -100,7 +100,7 @@ class SecondOrder:
         if stretch.step is not None:
             came = _arrived(stretch, L)
             return self._through(came), -self._rate_through(came)
-        u, straight = stretch.command, stretch.straight
+        u, straight = stretch.given.command, stretch.straight
         q, r = pair_states(u, stretch.intervals, self.S, self.P, straight=straight)
         at = delayed(stretch, L, (u, q, r, stretch.rates) if straight else (u, q, r))
         c0, c1, c2 = motion(self.S, self.P, at.since)

@@ -66,10 +66,10 @@ def delayed(stretch: Stretch, L: float, series: tuple[Floats, ...]) -> Delayed:
         )
         return Delayed(parts, shift * stretch.step - L)
     instant = stretch.time[skip:] - L
-    index = np.searchsorted(stretch.time, instant, side="right") - 1
+    index = np.searchsorted(stretch.given.time, instant, side="right") - 1
     early = index < 0
     index[early] = 0
-    since = instant - stretch.time[index]
+    since = instant - stretch.given.time[index]
     since[early] = 0.0
     # At row 0 the states are zero (settled), so early instants take it as it is.
     return Delayed(tuple(values[index] for values in series), since)

@@ -67,6 +67,12 @@ def uncertainty(layout: Layout, at: Point, colour: Colour) -> Uncertainty:
     else:
         true = coloured_covariance(to_logs @ at.jacobian, colour)[: k + 2, : k + 2]
     true = true * rows / max(rows - known, 1)
+    if layout.on_change:
+        # A report tells the speed no better than a reading rounded to the deadband would, and the dead time no finer
+        # than the gaps. Reports that were picked by their noise alternate about the model: nothing is gained by that.
+        least = white * max(1.0, layout.deadband**2 / 12.0 / variance)
+        true = true * max(1.0, float((np.diag(least) / np.diag(true)).max()))
+        true[-1, -1] = max(true[-1, -1], layout.step**2 / 12.0)
     back = np.eye(k + 2)
     back[0, 1] = 1.0  # log|K| = log|K/T| + log T
     inflation = float(true[-1, -1] / white[-1, -1]) if white[-1, -1] > 0 else 1.0

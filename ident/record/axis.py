@@ -3,20 +3,23 @@
 from __future__ import annotations
 
 import numpy as np
+from numpy.typing import NDArray
 
 from ident.findings import Finding
-from ident.record.segments import Floats, Lines, gaps, uniform_step
+from ident.record.segments import Floats, Lines, uniform_step
+
+Rows = NDArray[np.intp]
 
 
-def findings(time: Floats, line: Lines, breaks: tuple[int, ...] = ()) -> list[Finding]:
+def findings(time: Floats, line: Lines, jumps: Rows, breaks: tuple[int, ...] = ()) -> list[Finding]:
     """gap and irregular-sampling, with figures and places.
 
     time     (n,), s, strictly increasing
     line     (n,) file lines
+    jumps    rows before which there is a gap
     breaks   rows before which the clock was set
     """
     found = []
-    jumps = gaps(time)
     if len(jumps):
         steps = time[jumps] - time[jumps - 1]
         largest = int(np.argmax(steps))

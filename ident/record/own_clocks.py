@@ -14,7 +14,7 @@ from numpy.typing import NDArray
 
 from ident.errors import ReadError
 from ident.findings import Finding, Value
-from ident.record.segments import Floats, Lines, steady_step
+from ident.record.segments import Flags, Floats, Lines, steady_step
 
 Rows = NDArray[np.intp]
 
@@ -35,11 +35,15 @@ class Signal:
 
 @dataclass(frozen=True, slots=True, eq=False)
 class Merged:
-    """Rows of all signals together; a value is NaN where its last report was bad."""
+    """Rows of all signals together; a value is NaN where its last report was bad.
+
+    held    (n,), rows whose speed is its last report, where it is reported on change; else None
+    """
 
     time: Floats
     values: dict[str, Floats]
     line: Lines
+    held: Flags | None
     findings: tuple[Finding, ...]
 
 
@@ -72,7 +76,8 @@ def merge(signals: dict[str, Signal], *, on_change: bool | None = None) -> Merge
         at = np.searchsorted(signal.time, time, side="right") - 1
         values[role] = np.where(at >= 0, signal.value[np.maximum(at, 0)], np.nan)
     told = _on_change(speed, command, time, step, early) if on_change else _held(command, time, early)
-    return Merged(time, values, line, (told,))
+    held = ~np.isin(time, speed.time) if on_change else None
+    return Merged(time, values, line, held, (told,))
 
 
 def _on_change(speed: Signal, command: Signal, time: Floats, step: float, early: int) -> Finding:
@@ -82,8 +87,8 @@ def _on_change(speed: Signal, command: Signal, time: Floats, step: float, early:
     gap = float(np.diff(speed.time).max()) if len(speed.time) > 1 else 0.0
     message = (
         f"The log is reported on change: values hold until their next report, and in {held} rows the speed is its "
-        f"last report. No two reports of the speed lie closer than {deadband:.4g}: that deadband is a noise floor, "
-        f"it biases fits, and a dead time is known no finer than the reports, {step:.4g} s apart and up to {gap:.4g} s."
+        f"last report. No two reports of the speed lie closer than {deadband:.4g}: that deadband is a noise floor "
+        f"of the fit, and a dead time is known no finer than the reports, {step:.4g} s apart and up to {gap:.4g} s."
     )
     evidence: dict[str, Value] = {
         "rows_held": held,

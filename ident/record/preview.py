@@ -14,7 +14,7 @@ from ident.record.columns import Columns
 from ident.record.encoding import LogSource
 from ident.record.read import read_csv
 from ident.record.record import LoopRecord
-from ident.record.segments import Floats, gaps
+from ident.record.segments import Floats
 
 SHOWN = 5  # gaps, clock steps and first rows shown; all are counted
 
@@ -138,7 +138,7 @@ def previewed(record: LoopRecord) -> Preview:
     if source is None or source.understood is None:
         raise TypeError("previewed needs a record that read_csv made")
     how = source.understood
-    jumps = gaps(record.time)
+    jumps = record.gaps
     steps = np.delete(np.diff(record.time), jumps - 1)
     shown = sorted(jumps[np.argsort(np.diff(record.time)[jumps - 1])[::-1][:SHOWN]].tolist())
     left_out: dict[str, int] = {}

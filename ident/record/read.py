@@ -20,6 +20,7 @@ from ident.record.options import Options, checked
 from ident.record.quote import quoted
 from ident.record.record import LoopRecord, Source, Understood, exclusions
 from ident.record.rows import Rows
+from ident.record.segments import gaps, outages
 from ident.record.stamps import told
 from ident.record.table import Wanted, read_table
 from ident.record.times import is_iso
@@ -90,7 +91,8 @@ def _read(body: Body, dialect: Dialect, options: Options) -> LoopRecord:
         setpoint, converted = speed_units.in_speed_unit(setpoint, _unit("setpoint", mapped, got), speed_unit)
         said += [*tracked, *converted]
     findings += [*said, *_missing(got, mapped, findings), *told(got.stamps, options.start, mapped)]
-    findings += axis.findings(got.time, got.line, breaks)
+    jumps = gaps(got.time) if got.held is None else outages(got.time, speed, got.held)
+    findings += axis.findings(got.time, got.line, jumps, breaks)
     findings += speed_units.cell_units({role: n.units for role, n in got.read.items() if n.units})
     begin = got.stamps.start or options.start
     looks = {"speed": character.character(speed), "command": character.character(got.values["command"])}
@@ -120,6 +122,7 @@ def _read(body: Body, dialect: Dialect, options: Options) -> LoopRecord:
         excluded=exclusions(got.bad, BAD_QUALITY),
         breaks=breaks,
         modes=spans,
+        held=got.held,
     )
 
 

@@ -6,11 +6,11 @@ from dataclasses import dataclass, field, fields
 from datetime import UTC, datetime, timedelta
 
 import numpy as np
-from numpy.typing import ArrayLike
+from numpy.typing import ArrayLike, NDArray
 
 from ident.errors import IdentError
 from ident.findings import Finding
-from ident.record.segments import Exclusion, Flags, Floats, Segment, runs, spans, uniform_step
+from ident.record.segments import Exclusion, Flags, Floats, Segment, gaps, outages, runs, spans, uniform_step
 
 MISSING = "missing value"
 LONE = "single row between gaps"
@@ -78,6 +78,7 @@ class LoopRecord:
     excluded   spans left out with their reason; rows with a missing command or speed join them, and so do
                single rows between gaps, which cannot carry an initial condition
     breaks     rows before which the clock was set: no segment crosses them
+    held       (n,) of a log that reports on change: rows whose speed is its last report; else None
     modes      spans by the controller's mode, where logged; in manual the setpoint does not command anything
     segments   runs of two or more usable rows without a gap; estimators give each its own initial condition
 
@@ -96,14 +97,19 @@ class LoopRecord:
     excluded: tuple[Exclusion, ...] = field(default=(), kw_only=True)
     breaks: tuple[int, ...] = field(default=(), kw_only=True)
     modes: tuple[ModeSpan, ...] = field(default=(), kw_only=True)
+    held: Flags | None = field(default=None, kw_only=True)
     segments: tuple[Segment, ...] = field(default=(), init=False)
 
     def __post_init__(self) -> None:
         columns = {name: _column(getattr(self, name)) for name in ("time", "command", "speed")}
         if self.setpoint is not None:
             columns["setpoint"] = _column(self.setpoint)
-        _check(columns)
+        _check(columns, self.held)
         columns["time"] = columns["time"] - columns["time"][0]
+        if self.held is not None:
+            held = np.array(self.held, dtype=np.bool_).reshape(-1)
+            held.flags.writeable = False
+            object.__setattr__(self, "held", held)
         for name, column in columns.items():
             column.flags.writeable = False
             object.__setattr__(self, name, column)
@@ -123,7 +129,7 @@ class LoopRecord:
             usable[span.start : span.stop] = False
         missing = usable & (np.isnan(self.command) | np.isnan(self.speed))
         usable &= ~missing
-        found = runs(self.time, usable, self.breaks)
+        found = runs(usable, (*self.gaps.tolist(), *self.breaks))
         single = found[:, 1] - found[:, 0] < 2
         lone = np.zeros(self.rows, dtype=np.bool_)
         lone[found[single, 0]] = True
@@ -138,6 +144,11 @@ class LoopRecord:
     @property
     def rows(self) -> int:
         return len(self.time)
+
+    @property
+    def gaps(self) -> NDArray[np.intp]:
+        """Rows before which the log is silent although it should not be."""
+        return gaps(self.time) if self.held is None else outages(self.time, self.speed, self.held)
 
     @property
     def duration(self) -> float:
@@ -178,10 +189,11 @@ def _utc(start: datetime) -> datetime:
     return start.astimezone(UTC)
 
 
-def _check(columns: dict[str, Floats]) -> None:
-    n = len(columns["time"])
-    if any(len(c) != n for c in columns.values()):
-        lengths = ", ".join(f"{name} {len(c)}" for name, c in columns.items())
+def _check(columns: dict[str, Floats], held: Flags | None) -> None:
+    sizes = {name: len(c) for name, c in columns.items()} | ({} if held is None else {"held": np.size(held)})
+    n = sizes["time"]
+    if any(size != n for size in sizes.values()):
+        lengths = ", ".join(f"{name} {size}" for name, size in sizes.items())
         raise IdentError("length-mismatch", f"All columns need the same number of rows; here: {lengths}.")
     if n < 2:
         raise IdentError("too-few-rows", "A record needs at least two rows.", {"rows": n})

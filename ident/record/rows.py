@@ -35,6 +35,7 @@ class Rows:
     breaks    (row, s) where the clock was set back
     bad       (n,), rows of bad quality
     mode      words of the mode column, or None
+    held      (n,), rows whose speed is its last report, of a log that reports on change; else None
     """
 
     time: Floats
@@ -49,6 +50,7 @@ class Rows:
     why: dict[str, str]
     dropped: dict[str, int]
     findings: tuple[Finding, ...]
+    held: Flags | None = None
 
 
 def wide(table: Table, mapped: Mapped, options: Options, decimal: str, bad: Flags) -> Rows:
@@ -68,12 +70,12 @@ def wide(table: Table, mapped: Mapped, options: Options, decimal: str, bad: Flag
     rows = np.arange(len(order.rows))
     time, line = order.time, line[pick]
     findings = [*axis.findings, *order.findings]
-    held = _held_roles(values, blank, options)
+    held, unreported = _held_roles(values, blank, options), None
     if held & {"command", "speed"}:
         merged = _merged_columns(time, values, blank, line, held, bad[kept][order.rows])
         rows = np.searchsorted(time, merged.time)
         findings += merged.findings
-        time, values, line = merged.time, merged.values, merged.line
+        time, values, line, unreported = merged.time, merged.values, merged.line, merged.held
     elif held:
         values["setpoint"] = _held(values["setpoint"], blank["setpoint"])
         message = "The setpoint is logged where it changes and holds in between."
@@ -95,6 +97,7 @@ def wide(table: Table, mapped: Mapped, options: Options, decimal: str, bad: Flag
         mapped.why,
         order.dropped | ({"no time stamp": int((~kept).sum())} if not kept.all() else {}),
         tuple(findings),
+        unreported,
     )
 
 
@@ -187,6 +190,7 @@ def _from_signals(
         why,
         dropped,
         (*findings, *merged.findings),
+        merged.held,
     )
 
 

@@ -19,6 +19,8 @@ IRREGULAR_GAP = 10.0
 # A clock is steady when all steps but a few lie this close to the typical one (stamps of 3, 3, 4 ms do).
 STEADY_SPREAD = 0.35
 ODD_SHARE = 0.1
+# Steps of the usual size that one report on change may make after a silence before something must have been missed.
+MISSED = 5.0
 # Stamps rounded to a few percent of the step still describe one grid.
 UNIFORM_TOLERANCE = 0.1
 # The sample time is given to this many digits: stamps carry no more, and the rounding of sums stays out.
@@ -106,16 +108,28 @@ def spans(flags: Flags) -> NDArray[np.intp]:
     return edges.reshape(-1, 2)
 
 
-def runs(time: Floats, usable: Flags, breaks: tuple[int, ...] = ()) -> NDArray[np.intp]:
-    """Runs of usable rows without a gap, as rows of (start, stop); single rows included.
+def outages(time: Floats, speed: Floats, held: Flags) -> NDArray[np.intp]:
+    """The same of a log that reports on change, where silence says that the speed stands still.
 
-    time    (n,), s, strictly increasing
+    An outage shows where the speed is plainly another one after a silence than before.
+
+    speed   (n,);  held  (n,), rows without a report of the speed
+    """
+    told = np.flatnonzero(~held & np.isfinite(speed))
+    moves = np.abs(np.diff(speed[told]))
+    silent = gaps(time[told]) if len(told) else told
+    return np.asarray(told[silent[moves[silent - 1] > MISSED * np.median(moves)]] if len(silent) else silent)
+
+
+def runs(usable: Flags, breaks: tuple[int, ...] = ()) -> NDArray[np.intp]:
+    """Runs of usable rows, as rows of (start, stop); single rows included.
+
     usable  (n,), False where a row is left out
-    breaks  rows before which a run ends whatever the stamps say
+    breaks  rows before which a run ends: gaps, clocks that were set
     """
     first = usable.copy()
     first[1:] &= ~usable[:-1]
-    jumps = np.concatenate((gaps(time), np.array(breaks, dtype=np.intp)))
+    jumps = np.array(breaks, dtype=np.intp)
     first[jumps] = usable[jumps]
     starts = np.flatnonzero(first)
     # A run ends where rows stop being usable or where the next one starts.

@@ -69,7 +69,7 @@ def test_runs_cover_the_usable_rows_exactly_and_in_order(flags: list[bool], seed
     usable = np.array(flags)
     rng = np.random.default_rng(seed)
     time = np.cumsum(rng.choice([0.1, 5.0], size=len(flags), p=[0.9, 0.1]))
-    found = runs(time, usable)
+    found = runs(usable, tuple(gaps(time).tolist()))
     covered = np.concatenate([np.arange(a, b) for a, b in found] or [np.zeros(0, int)])
     assert covered.tolist() == np.flatnonzero(usable).tolist()
     jumps = set(gaps(time).tolist())
