@@ -2,11 +2,11 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 import numpy as np
 
-from ident.estimate.layout import Layout
+from ident.estimate.layout import Layout, Stretch
 from ident.estimate.shape import Shape
 from ident.record.segments import Floats
 
@@ -15,7 +15,7 @@ FORGOTTEN = 40.0  # time constants after which a free motion is below rounding
 
 @dataclass(frozen=True, slots=True, eq=False)
 class Moving:
-    """Transients of one stretch, nuisances `first`..., which move with the shape at the rows from `row` on.
+    """Nuisances `first`... that move with the shape at the rows from `row` on: the transients of one stretch.
 
     slopes   (k, m, few), in the shape's logarithms; 0 after those rows
     """
@@ -31,9 +31,9 @@ class Columns:
 
     response     (rows,), deviation from the command level
     slopes       (k, rows), of the response in the shape's logarithms;  slope_L  (rows,), per s
-    nuisance     (m, rows): the offset, the drift and the lead of reports on change where there are such,
-                 then the transients of each freed stretch
-    transients   the last of these again: how they move with the shape
+    nuisance     (m, rows): the offset; the drift, the lead of reports on change and the answer to the direction of
+                 motion where there are such; then the transients of each freed stretch
+    transients   what of these moves with the shape, and how
     """
 
     response: Floats
@@ -62,7 +62,7 @@ def columns(layout: Layout, shape: Shape, L: float) -> Columns:
 def _nuisance(layout: Layout, shape: Shape) -> tuple[Floats, tuple[Moving, ...]]:
     moving: list[Moving] = []
     values: list[Floats] = []
-    first = column = 1 + layout.drifting + layout.on_change  # the offset and its like do not move with the shape
+    first = column = layout.first_transient
     row = 0
     for stretch in layout.stretches:
         if stretch.start != "settled":
@@ -78,9 +78,27 @@ def _nuisance(layout: Layout, shape: Shape) -> tuple[Floats, tuple[Moving, ...]]
     if layout.drifting:
         nuisance[1] = layout.clock
     if layout.on_change:
-        nuisance[first - 1] = layout.ahead
+        nuisance[1 + layout.drifting] = layout.ahead
+    if layout.rubbing:
+        nuisance[first - 1], slopes = rubbed(layout, shape)
+        moving.append(Moving(first - 1, 0, slopes[:, None]))
     at = first
-    for value, own in zip(values, moving, strict=True):
+    for value, own in zip(values, moving, strict=False):
         nuisance[at : at + len(value), own.row : own.row + value.shape[1]] = value
         at += len(value)
     return nuisance, tuple(moving)
+
+
+def rubbed(layout: Layout, shape: Shape) -> tuple[Floats, Floats]:
+    """The shape's answer (rows,) to the direction of motion, and its slopes (k, rows).
+
+    Friction acts on the shaft itself: no dead time lies before it.
+    """
+    parts = [shape.answer(replace(s, command=_direction(s), straight=False), 0.0)[:2] for s in layout.stretches]
+    answers, slopes = zip(*parts, strict=True)
+    return np.concatenate(answers), np.concatenate(slopes, axis=-1)
+
+
+def _direction(stretch: Stretch) -> Floats:
+    assert stretch.direction is not None
+    return stretch.direction

@@ -63,3 +63,11 @@ class FirstOrder:
         """Free motions from t = 0: exp(-t/T) (1, n), and its slope in log T (1, 1, n)."""
         decay = np.exp(-time / self.T)
         return decay[None], (decay * time / self.T)[None, None]
+
+    def step(self, time: Floats) -> Floats:
+        """The answer to a unit step, `time` s after it."""
+        return np.asarray(-np.expm1(-time / self.T))
+
+    def impulse(self, time: Floats) -> Floats:
+        """The answer to a unit impulse, `time` s after it, per s."""
+        return np.asarray(np.exp(-time / self.T) / self.T)

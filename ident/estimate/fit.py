@@ -44,6 +44,7 @@ class Fit:
     driven       what was moved on purpose in the log, and how well that alone tells the plant; None where not asked
     noise        the colour of what the model leaves, None where not kept
     simulated    (rows of the record,), the model's response to the logged command; NaN on rows not used
+    friction_speed  the same, what dry friction adds to it; None where none is fitted
     """
 
     name: str
@@ -59,3 +60,4 @@ class Fit:
     spread: Spread | None = None
     driven: Driven | None = None
     noise: Colour | None = None
+    friction_speed: Floats | None = None

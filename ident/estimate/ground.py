@@ -12,6 +12,8 @@ from ident.errors import NotIdentifiable
 from ident.estimate.by_hand import automatic
 from ident.estimate.cells import Cells
 from ident.estimate.coloured import coloured
+from ident.estimate.columns import rubbed
+from ident.estimate.dry_friction import turning
 from ident.estimate.layout import Layout, lay_out
 from ident.estimate.point import Point
 from ident.estimate.refine import refine
@@ -20,6 +22,7 @@ from ident.estimate.slow_drift import allow_drift
 from ident.estimate.unseen import seen
 from ident.evidence.colour import Colour, noise_colour
 from ident.evidence.feedback import feedback
+from ident.findings import Finding
 from ident.record import LoopRecord
 from ident.record.segments import Floats
 
@@ -42,6 +45,7 @@ class Ground:
 
     window   the cells about that point, at its T, where they are known
     unseen   s of the record from and to which the command moved faster than the log shows, left out
+    noticed  what the steps to that point gave rise to notice
     """
 
     record: LoopRecord
@@ -49,6 +53,7 @@ class Ground:
     first: Point
     window: Cells | None = None
     unseen: tuple[float, float] | None = None
+    noticed: tuple[Finding, ...] = ()
 
     @property
     def closed(self) -> bool:
@@ -69,6 +74,7 @@ class Found:
     colour: Colour
     set_aside: bool = False
     unseen: tuple[float, float] | None = None
+    noticed: tuple[Finding, ...] = ()
 
 
 def ground(record: LoopRecord, hold: Hold | None = None) -> Ground:
@@ -113,7 +119,8 @@ def _ground(record: LoopRecord, hold: Hold | None) -> Ground:
     plain = at
     layout, at = _between_samples(layout, at, hold)
     layout, at = allow_drift(layout, at)
-    return Ground(record, layout, at, window if at is plain else None)
+    layout, at, noticed = turning(layout, at, record.command_unit)
+    return Ground(record, layout, at, window if at is plain else None, noticed=noticed)
 
 
 def with_noise(base: Ground, at: Point) -> Found:
@@ -122,12 +129,13 @@ def with_noise(base: Ground, at: Point) -> Found:
     In an open loop the plain fit is unbiased whatever the noise's colour, and stays so where the shape is too simple.
     """
     colour = noise_colour(base.layout.parts(at.raw))
+    plain = Found(base.layout, at, colour, unseen=base.unseen, noticed=base.noticed)
     if colour.white or not base.closed:
-        return Found(base.layout, at, colour, unseen=base.unseen)
+        return plain
     layout, white = coloured(base.layout, at)
     if _spread(white.raw) > WORTH * _spread(at.raw):
-        return Found(base.layout, at, colour, set_aside=True, unseen=base.unseen)
-    return Found(layout, white, layout.colour, unseen=base.unseen)
+        return replace(plain, set_aside=True)
+    return replace(plain, layout=layout, at=white, colour=layout.colour)
 
 
 def on_record(base: Ground, at: Point) -> Floats:
@@ -137,6 +145,19 @@ def on_record(base: Ground, at: Point) -> Floats:
         simulated[np.arange(base.record.rows)[s.places][s.skip :]] = s.speed[s.skip :] - left + base.layout.speed_level
     simulated.flags.writeable = False
     return simulated
+
+
+def friction_on_record(base: Ground, found: Found) -> Floats | None:
+    """(rows of the record,): what dry friction adds to the speed; NaN on rows not used. None where none is fitted."""
+    layout, at = found.layout, found.at
+    if not layout.rubbing:
+        return None
+    share = np.full(base.record.rows, np.nan)
+    added = float(at.nuisance[layout.first_transient - 1]) * rubbed(layout, at.shape)[0]
+    for s, own in zip(layout.stretches, layout.parts(added), strict=True):
+        share[s.row0 + s.skip : s.row0 + s.rows] = own
+    share.flags.writeable = False
+    return share
 
 
 def _spread(values: Floats) -> float:

@@ -56,6 +56,7 @@ class Stretch:
     straight    the command is taken as straight between samples, not held
     began       s, the segment's first row on the record's clock
     log         all rows of the segment where its rows are the reports of a speed that is reported on change
+    direction   (n,), of motion from each row to the next, -1 to 1, where dry friction is fitted
     """
 
     row0: int
@@ -68,10 +69,18 @@ class Stretch:
     straight: bool = False
     began: float = 0.0
     log: Logged | None = None
+    direction: Floats | None = None
 
     @property
     def rows(self) -> int:
         return len(self.time)
+
+    def until(self, stop: int) -> Stretch:
+        """The rows before `stop`."""
+        direction = None if self.direction is None else self.direction[:stop]
+        return replace(
+            self, time=self.time[:stop], command=self.command[:stop], speed=self.speed[:stop], direction=direction
+        )
 
     @property
     def intervals(self) -> float | Floats:
@@ -138,6 +147,16 @@ class Layout:
         """Whether every stretch has its rows on one grid."""
         return all(s.step is not None for s in self.stretches)
 
+    @property
+    def rubbing(self) -> bool:
+        """Whether dry friction is fitted: one more nuisance, the answer to the direction of motion."""
+        return self.stretches[0].direction is not None
+
+    @property
+    def first_transient(self) -> int:
+        """Index of the first transient among the nuisances: after the offset and what else there is."""
+        return 1 + self.drifting + self.on_change + self.rubbing
+
     def straightened(self) -> Layout:
         """The same rows, the command taken as straight between samples."""
         return replace(self, stretches=tuple(replace(s, straight=True) for s in self.stretches))
@@ -176,7 +195,7 @@ class Layout:
             if own < SHORTEST:
                 break
             stop = s.skip + own
-            kept.append(replace(s, time=s.time[:stop], command=s.command[:stop], speed=s.speed[:stop]))
+            kept.append(s.until(stop))
             taken += own
         return (self._of(kept), taken) if kept else (None, 0)
 
@@ -267,19 +286,34 @@ def _even(stretch: Stretch, step: float) -> Stretch:
     held = np.searchsorted(given.time, time, side="right") - 1
     speed = np.interp(time, given.time, given.speed)
     skip = int(np.searchsorted(time, stretch.time[min(stretch.skip, stretch.rows - 1)]))
-    return replace(stretch, time=time, step=step, command=given.command[held], speed=speed, skip=skip, log=None)
+    direction = None if stretch.direction is None else stretch.direction[held]
+    return replace(
+        stretch,
+        time=time,
+        step=step,
+        command=given.command[held],
+        speed=speed,
+        skip=skip,
+        log=None,
+        direction=direction,
+    )
 
 
 def _thin(stretch: Stretch, blocks: int) -> Stretch:
     rows = stretch.rows // blocks * blocks
-    command, speed = (series[:rows].reshape(-1, blocks).mean(axis=1) for series in (stretch.command, stretch.speed))
+
+    def mean(series: Floats) -> Floats:
+        return np.asarray(series[:rows].reshape(-1, blocks).mean(axis=1))
+
+    speed = mean(stretch.speed)
     step = (stretch.step or 0.0) * blocks
     return replace(
         stretch,
         time=np.asarray(step * np.arange(len(speed)), dtype=np.float64),
         step=step,
-        command=command,
+        command=mean(stretch.command),
         speed=speed,
+        direction=None if stretch.direction is None else mean(stretch.direction),
         skip=min(-(-stretch.skip // blocks), len(speed) - 1),
     )
 

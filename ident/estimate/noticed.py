@@ -30,6 +30,7 @@ def findings(
     layout, at = found.layout, found.at
     return (
         *_start(layout),
+        *found.noticed,
         *_integrating(layout, at, parameters, derived),
         *_set_aside(found),
         *_straight(layout),

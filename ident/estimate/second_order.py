@@ -143,6 +143,14 @@ class SecondOrder:
         c0, c1, _ = motion(self.S, self.P, time)
         return np.stack((c0, c1 / self.S))
 
+    def step(self, time: Floats) -> Floats:
+        """The answer to a unit step, `time` s after it."""
+        return 1.0 - motion(self.S, self.P, time)[0]
+
+    def impulse(self, time: Floats) -> Floats:
+        """The answer to a unit impulse, `time` s after it, per s."""
+        return np.asarray(motion(self.S, self.P, time)[1] / self.P)
+
     def _nearby(self) -> tuple[SecondOrder, ...]:
         more = 1.0 + NUDGE
         if self.equal:

@@ -34,6 +34,12 @@ class Shape(Protocol):
     def transients(self, time: Floats) -> tuple[Floats, Floats]:
         """Free motions from t = 0 (m, n), and their slopes in the logarithms (k, m, n)."""
 
+    def step(self, time: Floats) -> Floats:
+        """The answer to a unit step, `time` s after it."""
+
+    def impulse(self, time: Floats) -> Floats:
+        """The answer to a unit impulse, `time` s after it, per s."""
+
 
 @dataclass(frozen=True, slots=True, eq=False)
 class Delayed:

@@ -13,7 +13,8 @@ import numpy as np
 from ident.estimate.diagnostics import statistics
 from ident.estimate.driven import driven
 from ident.estimate.fit import Fit, Spread
-from ident.estimate.ground import Ground, on_record, with_noise
+from ident.estimate.friction import friction_levels
+from ident.estimate.ground import Ground, friction_on_record, on_record, with_noise
 from ident.estimate.known import require_known
 from ident.estimate.layout import Layout
 from ident.estimate.noticed import findings
@@ -74,7 +75,7 @@ def fit_sopdt(base: Ground) -> Fit:
         parameters=parameters,
         derived=derived,
         covariance=covariance_of(tuple(parameters), slopes, known),
-        friction=None,
+        friction=friction_levels(layout, at, found.colour, base.record.command_unit),
         statistics=figures,
         findings=findings(found, parameters, derived, figures),
         simulated=on_record(base, at),
@@ -82,6 +83,7 @@ def fit_sopdt(base: Ground) -> Fit:
         spread=Spread(at.shape, known.log_covariance),
         driven=driven(base, found),
         noise=found.colour,
+        friction_speed=friction_on_record(base, found),
     )
 
 

@@ -95,10 +95,16 @@ def dead_time_profile(
 ) -> DeadTimeProfile | None:
     """The profile over the cells around the minimum, `window` where it is wide enough.
 
-    None where rows are off one grid or fit exactly.
+    None where rows are off one grid, fit exactly, or dry friction turns with the speed.
     """
     std = math.sqrt(known.log_covariance[-1, -1])
-    if not layout.uniform or layout.straight or at.rss <= 1e-20 * float(layout.target @ layout.target) or std == 0.0:
+    if (
+        not layout.uniform
+        or layout.straight
+        or layout.rubbing
+        or at.rss <= 1e-20 * float(layout.target @ layout.target)
+        or std == 0.0
+    ):
         return None
     h = layout.step
     reach = max(1, min(math.ceil(4.5 * std / h), PROFILE_CELLS))

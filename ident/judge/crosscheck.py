@@ -8,7 +8,7 @@ difference is that one less the fit's own (Hausman 1978, Econometrica 46, 1251-1
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 import numpy as np
 
@@ -69,7 +69,11 @@ def cross_check(record: LoopRecord, fitted: Fit, *, subspace: bool = True) -> Cr
     """Compare a fit with models that presume no structure. Never raises for what a record holds.
 
     subspace  also ask sippy-unipi, which is slow to load
+
+    Such models are linear: where dry friction was fitted, its share is taken off the speed first.
     """
+    if fitted.friction_speed is not None:
+        record = replace(record, speed=record.speed - fitted.friction_speed)
     try:
         runs = even_runs(record)
     except NotIdentifiable as error:
