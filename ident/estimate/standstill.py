@@ -143,7 +143,7 @@ def _from(stretch: Stretch, row: int, crept: int, skip: int, sense: float) -> St
         skip,
         stretch.straight,
         stretch.began + float(stretch.time[row]),
-        turned,
+        direction=turned,
     )
 
 
