@@ -1,4 +1,5 @@
-"""The sample logs: made again byte for byte, the packaged copy the same, their plant as the README says."""
+"""The sample logs: made again byte for byte, the packaged copy the same, read as they were
+written, their plant as the README says."""
 
 from __future__ import annotations
 
@@ -6,13 +7,16 @@ import csv
 import importlib.util
 import io
 import sys
+from datetime import datetime
 from pathlib import Path
 from types import ModuleType
+from typing import Any
 
 import numpy as np
 import pytest
 from scipy.integrate import solve_ivp
 
+import ident
 from service.api.samples import ABOUT
 
 ROOT = Path(__file__).resolve().parents[1]
@@ -45,6 +49,36 @@ def test_the_packaged_sample_is_the_same_file() -> None:
     assert [path.name for path in packaged] == ["step_test.csv"]
     assert set(ABOUT) == {"step_test.csv"}
     assert packaged[0].read_bytes() == (FOLDER / "step_test.csv").read_bytes()
+
+
+@pytest.fixture(scope="module")
+def written(make: ModuleType) -> dict[str, tuple[list[Any], datetime]]:
+    """{name: (rows, time of the first)}, as the script hands them to its writer."""
+    with pytest.MonkeyPatch.context() as patch:
+        patch.setattr(make, "as_csv", lambda rows, start: (rows, start))
+        made: dict[str, tuple[list[Any], datetime]] = make.logs()
+        return made
+
+
+@pytest.mark.parametrize("name", NAMES)
+def test_what_is_read_is_what_was_written(name: str, written: dict[str, tuple[list[Any], datetime]]) -> None:
+    rows, start = written[name]
+    record = ident.read_csv(FOLDER / name)
+    assert record.start == start
+    np.testing.assert_array_equal(record.time, np.arange(len(rows)) / 10)  # the panel's cycle is 0.1 s
+    # To the digits written: two of the command, one of the speeds; decimal rounding is Python's own.
+    assert record.command.tolist() == [float(f"{row.command:.2f}") for row in rows]
+    assert record.speed.tolist() == [float(f"{row.speed:.1f}") for row in rows]
+    if rows[0].setpoint is None:
+        assert record.setpoint is None
+    else:
+        assert record.setpoint is not None
+        assert record.setpoint.tolist() == [float(f"{row.setpoint:.1f}") for row in rows]
+    assert (record.speed_unit, record.command_unit) == ("rpm", "%")
+    assert record.source is not None
+    assert record.source.rows == len(rows)
+    assert record.excluded == ()
+    assert [(s.start, s.stop, s.step) for s in record.segments] == [(0, len(rows), 0.1)]
 
 
 @pytest.mark.parametrize("name", NAMES)

@@ -9,6 +9,7 @@ from numpy.typing import NDArray
 
 from ident.errors import ReadError
 from ident.findings import Finding
+from ident.record.quote import counted
 from ident.record.segments import IRREGULAR_GAP, STEADY_GAP, Flags, Floats, Lines, steady_step
 
 Rows = NDArray[np.intp]
@@ -63,8 +64,8 @@ def ordered(time: Floats, columns: list[Floats], line: Lines, *, local: bool = F
         time = _spread(time, line[rows])
         share = int(np.sum(steps == 0))
         message = (
-            f"{share} rows share their stamp with the row before, because the stamps are coarser than the sampling; "
-            "the rows were spread evenly."
+            counted(share, "row shares its stamp", "rows share their stamp")
+            + " with the row before, because the stamps are coarser than the sampling; the rows were spread evenly."
         )
         found.append(_said("stamps-spread", "warning", message, count=share))
     late, shifts = _late(time, [column[rows] for column in columns], line[rows])
@@ -74,7 +75,10 @@ def ordered(time: Floats, columns: list[Floats], line: Lines, *, local: bool = F
         order = np.argsort(time, kind="stable")
         time, rows = time[order], rows[order]
         first = int(line[np.flatnonzero(late)[0]])
-        message = f"{int(late.sum())} rows came late and were put in their place; the first is line {first}."
+        came = counted(
+            int(late.sum()), "row came late and was put in its place", "rows came late and were put in their place"
+        )
+        message = f"{came}; the first is line {first}."
         found.append(_said("rows-sorted", "warning", message, count=int(late.sum()), first_line=first))
     kept, dropped, more = _unique(time, columns, rows, line)
     breaks = tuple((int(np.count_nonzero(kept[:row])), -by) for row, by in shifts)
@@ -226,7 +230,10 @@ def _unique(
     found, dropped = [], {}
     if len(repeated):
         first = int(line[rows[repeated]].min())
-        message = f"{len(repeated)} rows repeat another row exactly and were dropped; the first is line {first}."
+        repeat = counted(
+            len(repeated), "row repeats another exactly and was dropped", "rows repeat another exactly and were dropped"
+        )
+        message = f"{repeat}; the first is line {first}."
         found.append(_said("dropped-duplicates", "warning", message, count=len(repeated), first_line=first))
         dropped["exact repetition"] = len(repeated)
     if len(other):
@@ -239,7 +246,8 @@ def _unique(
                 {"line": first, "count": len(other)},
             )
         message = (
-            f"{len(other)} rows have the stamp of another row but other values; the first of each was kept. "
+            f"{counted(len(other), 'row has', 'rows have')} the stamp of another row but other values; the first of "
+            "each was kept. "
             f"The first dropped is line {first}."
         )
         found.append(_said("conflicting-rows", "warning", message, count=len(other), first_line=first))

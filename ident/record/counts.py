@@ -6,7 +6,7 @@ import numpy as np
 
 from ident.errors import ReadError
 from ident.findings import Finding
-from ident.record.quote import printable, quoted
+from ident.record.quote import counted, printable, quoted
 from ident.record.segments import Floats, gaps, spans
 
 UNIT = "rpm"
@@ -48,8 +48,8 @@ def speed_from_counts(
     lost = len(spans(np.isnan(speed)))
     message = (
         f"Speed was computed from encoder counts ({counts_per_rev:g} per revolution, rolling over at {modulus:.0f}, "
-        f"{rollovers} times): one count is {quantum:.4g} rpm, and each value is the mean over the {typical:.4g} s "
-        "before its row, which looks like half of that as dead time."
+        f"{counted(rollovers, 'time', 'times')}): one count is {quantum:.4g} rpm, and each value is the mean over "
+        f"the {typical:.4g} s before its row, which looks like half of that as dead time."
     )
     return speed, Finding(
         "encoder-counts",

@@ -18,6 +18,7 @@ from typing import BinaryIO
 
 from ident.errors import ReadError
 from ident.findings import Finding
+from ident.record.quote import counted
 
 LogSource = str | os.PathLike[str] | bytes | bytearray | memoryview | BinaryIO
 
@@ -131,7 +132,10 @@ def load(source: LogSource) -> Body:
             )
         )
     if end.nuls:
-        message = f"The file holds {end.nuls} NUL bytes, as after a power cut; the lines they stand in were dropped."
+        message = (
+            f"The file holds {counted(end.nuls, 'NUL byte', 'NUL bytes')}, as after a power cut; the lines with one "
+            "were dropped."
+        )
         findings.append(Finding("nul-bytes", "warning", message, {"count": end.nuls}))
     head = _without_nuls(b"".join(_unended(_decoded(opened, encoding, mark, LONGEST_LINE + _PROBE), size)))
     if len(head) > LONGEST_LINE and max(map(len, head.split(b"\n"))) > LONGEST_LINE:

@@ -7,7 +7,7 @@ from itertools import pairwise
 import numpy as np
 
 from ident.findings import Finding
-from ident.record.quote import listed, quoted
+from ident.record.quote import counted, listed, quoted
 from ident.record.record import ModeSpan
 from ident.record.segments import Floats
 from ident.record.words import BLANK, Words
@@ -53,7 +53,7 @@ def without_tracking(setpoint: Floats, speed: Floats, modes: tuple[ModeSpan, ...
     if not rows:
         return setpoint, []
     message = (
-        f"In {rows} rows in manual the setpoint only follows the measured speed (setpoint tracking): it commands "
-        "nothing there and is taken as unknown."
+        f"In {counted(rows)} in manual the setpoint only follows the measured speed (setpoint tracking): it "
+        "commands nothing there and is taken as unknown."
     )
     return out, [Finding("setpoint-tracks-speed", "info", message, {"count": rows})]

@@ -21,6 +21,9 @@ _INFINITE = re.compile(r"[+-]?(?:inf(?:inity)?|∞|1\.#INF)", re.IGNORECASE)
 # By character code: whether a plain number may hold it (0 ends a cell).
 _PLAIN = {d: np.isin(np.arange(256), [0, *f"0123456789+-eE{d}".encode()]) for d in ".,"}
 _WORDS_KEPT = 5
+# Different words counted in a column: a log of nothing else must not fill the memory.
+MOST_WORDS = 1000
+OTHERS = "other words"
 # More cells than this share that hold digits and yet are no numbers: the log was not understood.
 _NOT_UNDERSTOOD = 0.02
 
@@ -85,8 +88,12 @@ def read_cells(column: pd.Series, decimal: str) -> Cells:
     blank[rest[~odd][empty]] = True
     word = ~empty & ~infinite
     counts: Counter[str] = Counter()
-    for code, count in zip(*np.unique(codes[word], return_counts=True), strict=True):
-        counts[printable(stripped[code])] += int(count)
+    which, many = np.unique(codes[word], return_counts=True)
+    kept = np.argsort(-many, kind="stable")[:MOST_WORDS]
+    for code, count in zip(which[kept].tolist(), many[kept].tolist(), strict=True):
+        counts[printable(stripped[code])] += count
+    if len(kept) < len(many):
+        counts[OTHERS] += int(many.sum() - many[kept].sum())
     return Cells(values, blank, rest[odd], cells[rest[odd]], rest[~odd][word], counts)
 
 
@@ -120,6 +127,10 @@ def joined(pieces: list[Cells]) -> Cells:
     counts: Counter[str] = Counter()
     for p in pieces:
         counts.update(p.counts)
+        if len(counts) > 2 * MOST_WORDS:
+            rest = counts.total()
+            counts = Counter(dict(counts.most_common(MOST_WORDS)))
+            counts[OTHERS] += rest - counts.total()
     return Cells(
         np.concatenate([p.values for p in pieces]),
         np.concatenate([p.blank for p in pieces]),

@@ -14,6 +14,7 @@ from numpy.typing import NDArray
 
 from ident.errors import ReadError
 from ident.findings import Finding, Value
+from ident.record.quote import counted
 from ident.record.segments import Flags, Floats, Lines, steady_step
 
 Rows = NDArray[np.intp]
@@ -86,7 +87,7 @@ def _on_change(speed: Signal, command: Signal, time: Floats, step: float, early:
     held = int(len(time) - np.isin(time, speed.time).sum())
     gap = float(np.diff(speed.time).max()) if len(speed.time) > 1 else 0.0
     message = (
-        f"The log is reported on change: values hold until their next report, and in {held} rows the speed is its "
+        f"The log is reported on change: values hold until their next report, and in {counted(held)} the speed is its "
         f"last report. No two reports of the speed lie closer than {deadband:.4g}: that deadband is a noise floor "
         f"of the fit, and a dead time is known no finer than the reports, {step:.4g} s apart and up to {gap:.4g} s."
     )
@@ -112,7 +113,7 @@ def _held(command: Signal, time: Floats, early: int) -> Finding:
     message = (
         f"Each signal has its own clock: the rows are those of the speed, command and setpoint hold between their "
         f"reports. Moves of the command stand up to {largest:.4g} s late ({mean:.4g} s on average)"
-        + (f", and {lost} of them lie hidden between two rows" if lost else "")
+        + (f", and {counted(lost, 'of them lies', 'of them lie')} hidden between two rows" if lost else "")
         + "; a dead time is known no finer."
     )
     evidence: dict[str, Value] = {

@@ -8,7 +8,7 @@ from collections.abc import Callable
 import numpy as np
 
 from ident.findings import Finding, Value
-from ident.record.quote import listed, quoted
+from ident.record.quote import counted, listed, quoted
 from ident.record.segments import Flags, Lines
 from ident.record.words import BLANK, Words
 
@@ -45,7 +45,8 @@ def judge(columns: dict[str, Words], line: Lines) -> tuple[Flags, list[Finding]]
         if here.any():
             bad |= here
             count, first = int(here.sum()), int(line[np.argmax(here)])
-            message = f"{count} rows are of bad, uncertain or forced quality by column {quoted(name)} and are left out"
+            left = counted(count, "row is left out", "rows are left out")
+            message = f"{left}, of bad, uncertain or forced quality by column {quoted(name)}"
             evidence: dict[str, Value] = {"column": name, "count": count, "first_line": first}
             found.append(Finding("bad-quality", "warning", f"{message}; the first is line {first}.", evidence))
         if good is _da_good:
@@ -91,8 +92,8 @@ def _limited(counts: dict[str, int], name: str) -> list[Finding]:
     if not any(rows.values()):
         return []
     message = (
-        f"Column {quoted(name)} says that the value is held at its low limit in {rows['low']} rows and at its high "
-        f"limit in {rows['high']}: the signal is saturated there."
+        f"Column {quoted(name)} says that the value is held at its low limit in {counted(rows['low'])} and at its "
+        f"high limit in {rows['high']}: the signal is saturated there."
     )
     evidence: dict[str, Value] = {"column": name, "low": rows["low"], "high": rows["high"]}
     return [Finding("limit-flags", "warning", message, evidence)]
@@ -108,7 +109,8 @@ def _ignored(counts: dict[str, int], words: Words, name: str) -> Finding:
             {"column": name, "count": int((words.codes != BLANK).sum())},
         )
     other = len(words.codes) - max(counts.values(), default=len(words.codes))
-    differ = f"; it holds {listed(list(counts)[:4])}, and {other} rows differ from the first of these" if other else ""
+    apart = counted(other, "row differs", "rows differ")
+    differ = f"; it holds {listed(list(counts)[:4])}, and {apart} from the first of these" if other else ""
     return Finding(
         "status-ignored",
         "warning" if other else "info",

@@ -1,4 +1,4 @@
-"""Quoting what stood in a file: a message must never carry a control character or a novel."""
+"""Words of messages: what stood in a file, without control characters and never a novel; counts that agree."""
 
 from __future__ import annotations
 
@@ -19,3 +19,8 @@ def listed(texts: list[str], most: int = 12) -> str:
     """The texts quoted, one after the other; the rest counted."""
     shown = ", ".join(quoted(t) for t in texts[:most])
     return shown if len(texts) <= most else f"{shown} and {len(texts) - most} more"
+
+
+def counted(count: int, one: str = "row", many: str = "rows") -> str:
+    """The count with what goes on after it: "1 row was dropped", "2 rows were dropped"."""
+    return f"{count} {one if count == 1 else many}"

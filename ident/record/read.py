@@ -17,7 +17,7 @@ from ident.record.encoding import Body, LogSource, load
 from ident.record.grouping import OtherDecimal
 from ident.record.numbers import Numbers
 from ident.record.options import Options, checked
-from ident.record.quote import quoted
+from ident.record.quote import counted, quoted
 from ident.record.record import LoopRecord, Source, Understood, exclusions
 from ident.record.rows import Rows
 from ident.record.segments import gaps, outages
@@ -165,6 +165,7 @@ def _missing_of(role: str, column: Numbers, header: str, *, held: bool) -> list[
     if not lost:
         return []
     words = ", ".join(f"{word} ({count})" for word, count in column.words.items())
+    have = "has" if lost == 1 else "have"
     also = f"; in their place stood {words}" if words else ""
     matter = "those rows are left out" if role != "setpoint" else "the setpoint is unknown there"
     unchanged = ' If an empty cell means "unchanged", give the option "blanks" as held.' if blank else ""
@@ -172,7 +173,7 @@ def _missing_of(role: str, column: Numbers, header: str, *, held: bool) -> list[
         Finding(
             "missing-values",
             "error" if 2 * lost > rows_ and role != "setpoint" else "warning",
-            f"{lost} of {rows_} rows have no number for {role} ({quoted(header)}): {matter}{also}.{unchanged}",
+            f"{lost} of {rows_} rows {have} no number for {role} ({quoted(header)}): {matter}{also}.{unchanged}",
             {"role": role, "count": lost, "blank": blank, **{f"word: {w}": c for w, c in column.words.items()}},
         )
     ]
@@ -182,6 +183,7 @@ def _unread(mapped: Mapped, dialect: Dialect) -> list[Finding]:
     if mapped.unread == 0:
         return []
     message = (
-        f"{mapped.unread} lines between the header and the first row of numbers (line {dialect.line}) were not read."
+        counted(mapped.unread, "line was", "lines were")
+        + f" not read between the header and the first row of numbers (line {dialect.line})."
     )
     return [Finding("unread-lines", "info", message, {"count": mapped.unread, "first_row_line": dialect.line})]

@@ -14,7 +14,7 @@ from ident.record.columns import Mapped, map_tags
 from ident.record.numbers import Numbers, to_numbers
 from ident.record.options import Options
 from ident.record.own_clocks import Merged, Signal, merge
-from ident.record.quote import quoted
+from ident.record.quote import counted, quoted
 from ident.record.segments import Flags, Floats, Lines
 from ident.record.stamps import stamped
 from ident.record.table import Table
@@ -118,7 +118,7 @@ def long(table: Table, mapped: Mapped, options: Options, decimal: str, bad: Flag
         signals[role] = _signal(axis.stamps.time[mine], value, line[mine], role, dropped, findings)
     other = len(tags.counts()) - len(roles)
     if other:
-        message = f"{other} other signals in the log were not used."
+        message = counted(other, "other signal in the log was not used.", "other signals in the log were not used.")
         findings.append(Finding("signals-unused", "info", message, {"count": other}))
     headers = {"time": mapped.headers["time"], **roles}
     why = {"time": mapped.why.get("time", ""), **why}

@@ -14,7 +14,7 @@ from ident.findings import Finding
 from ident.record.columns import Mapped
 from ident.record.numbers import read_cells, to_numbers
 from ident.record.options import Options
-from ident.record.quote import printable, quoted
+from ident.record.quote import counted, printable, quoted
 from ident.record.ragged import FEW, SHORT_SHARE
 from ident.record.segments import Flags, Lines
 from ident.record.table import Table, TimeCells
@@ -56,7 +56,8 @@ def stamped(
                 "those rows or fill it.",
                 {"line": int(table.line[row]), "column": printable(name), "count": lost},
             )
-        message = f"{lost} rows have no time stamp and were dropped; the first is line {table.line[row]}."
+        without = counted(lost, "row has no time stamp and was dropped", "rows have no time stamp and were dropped")
+        message = f"{without}; the first is line {table.line[row]}."
         evidence: dict[str, float | int | str | bool | None] = {"count": lost, "first_line": int(table.line[row])}
         findings.append(Finding("rows-without-time", "warning", message, evidence))
     kept = ~blank

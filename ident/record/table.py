@@ -17,6 +17,7 @@ from ident.findings import Finding
 from ident.record.dialect import Dialect
 from ident.record.encoding import Body
 from ident.record.numbers import Cells, joined, read_cells
+from ident.record.quote import counted
 from ident.record.ragged import FEW, SHORT_SHARE, Combed, comb
 from ident.record.segments import Flags, Lines
 from ident.record.words import Words, read_words, spelled
@@ -69,14 +70,18 @@ class Table:
 
 @dataclass(frozen=True, slots=True, eq=False)
 class _Block:
-    """One block read; `notes` are file lines with one filled field."""
+    """One block read.
+
+    notes    how many lines have one filled field;  note  the file line of the first of them
+    """
 
     time: dict[int, TimeCells]
     blank: dict[int, Flags]
     numbers: dict[int, Cells]
     words: dict[int, Words]
     line: Lines
-    notes: Lines
+    notes: int
+    note: int
     ragged: Lines
     fields: Lines
     unclosed: Lines
@@ -99,7 +104,8 @@ def read_table(body: Body, dialect: Dialect, wanted: Wanted) -> Table:
     if len(line) < LEAST_ROWS:
         raise ReadError(
             "too-few-rows",
-            f"The log has {len(line)} rows of data; at least {LEAST_ROWS} are needed, and a useful test has hundreds.",
+            f"The log has {counted(len(line))} of data; at least {LEAST_ROWS} are needed, and a useful test has "
+            "hundreds.",
             {"rows": len(line)},
         )
     return Table(
@@ -137,7 +143,9 @@ def _block(
     # A comment or footer fills its first field and nothing else.
     empty = np.logical_and.reduce([flags for i, flags in blank.items() if i != 0])
     noted = empty & ~blank[0] if 0 in blank else np.zeros(len(cells), dtype=np.bool_)
-    notes = np.concatenate((combed.notes + first_line, line[noted]))
+    # Counted only: a log of nothing but such lines must not fill the memory.
+    notes = len(combed.notes) + int(np.count_nonzero(noted))
+    note = min((int(lines[0]) for lines in (combed.notes + first_line, line[noted]) if len(lines)), default=0)
     if empty.any():
         cells, line = cells[~empty], line[~empty]
         blank = {i: flags[~empty] for i, flags in blank.items()}
@@ -149,6 +157,7 @@ def _block(
         {i: read_words(cells[i]) for i in wanted.words},
         line,
         notes,
+        note,
         combed.ragged[~last] + first_line,
         combed.fields[~last],
         combed.unclosed + first_line,
@@ -218,9 +227,10 @@ def _left_out(blocks: list[_Block], rows: int, dialect: Dialect) -> tuple[dict[s
 
     Raises ReadError: ragged-row, where the lines of another width are no exception.
     """
-    notes, ragged, fields, unclosed, cut = (
-        np.concatenate([getattr(b, name) for b in blocks]) for name in ("notes", "ragged", "fields", "unclosed", "cut")
+    ragged, fields, unclosed, cut = (
+        np.concatenate([getattr(b, name) for b in blocks]) for name in ("ragged", "fields", "unclosed", "cut")
     )
+    notes, note = sum(b.notes for b in blocks), min((b.note for b in blocks if b.notes), default=0)
     findings = []
     many = max(FEW, SHORT_SHARE * rows)
     if len(unclosed) > many:
@@ -251,20 +261,22 @@ def _left_out(blocks: list[_Block], rows: int, dialect: Dialect) -> tuple[dict[s
             Finding(
                 "ragged-rows",
                 "warning",
-                f"{len(lines)} lines have another number of fields than the table, or a quote left open, and were "
-                f"dropped; the first is line {lines[0]}.",
+                counted(len(lines), "line has", "lines have")
+                + " another number of fields than the table, or a quote left open, and "
+                + f"{'was' if len(lines) == 1 else 'were'} dropped; the first is line {lines[0]}.",
                 {"count": len(lines), "first_line": int(lines[0])},
             )
         )
-    if len(notes):
+    if notes:
         findings.append(
             Finding(
                 "dropped-lines",
                 "warning",
-                f"{len(notes)} lines with one filled field (comments, a footer) were dropped, "
-                f"the first is line {notes.min()}.",
-                {"count": len(notes), "first_line": int(notes.min())},
+                counted(notes, "line", "lines")
+                + f" with one filled field (comments, a footer) {'was' if notes == 1 else 'were'} dropped, "
+                f"the first is line {note}.",
+                {"count": notes, "first_line": note},
             )
         )
-    counts = {CUT: len(cut), RAGGED: len(ragged) + len(unclosed), NOTES: len(notes)}
+    counts = {CUT: len(cut), RAGGED: len(ragged) + len(unclosed), NOTES: notes}
     return {reason: count for reason, count in counts.items() if count}, findings
