@@ -5,6 +5,7 @@ from __future__ import annotations
 from collections.abc import Callable
 from dataclasses import replace
 from importlib.metadata import PackageNotFoundError, version
+from typing import Any
 
 import numpy as np
 
@@ -106,9 +107,7 @@ def analyse(
         drawn = plausible(fitted, np.random.default_rng(seed), PLANTS)
         lag = float(getattr(fitted.model, "T", 0.0) or getattr(fitted.model, "T1", 0.0) or held)
         allowed = cloud(drawn, delay=fitted.model.dead_time, lag=lag, **timing)
-        proposal, untunable = _propose(
-            fitted, Ms=Ms, form=form, goal=goal, period=held, delay=compute_delay, allowed=allowed, robust=robust
-        )
+        proposal, untunable = _propose(fitted, Ms=Ms, form=form, goal=goal, allowed=allowed, robust=robust, **timing)
         found += untunable
     else:
         assert refused is not None
@@ -199,28 +198,10 @@ def _period(record: LoopRecord, period: float | None, recovered: Recovered | Non
     ]
 
 
-def _propose(
-    fitted: Fit,
-    *,
-    Ms: float,
-    form: str,
-    goal: str,
-    period: float,
-    delay: float,
-    allowed: Cloud | None,
-    robust: bool | None,
-) -> tuple[Proposals | None, list[Finding]]:
+def _propose(fitted: Fit, **asked: Any) -> tuple[Proposals | None, list[Finding]]:
+    """Proposals for a fit, asked as for `propose`; none, with the reason, for a plant that has no answer."""
     try:
-        return propose(
-            fitted.model,
-            Ms=Ms,
-            form=form,
-            goal=goal,
-            period=period,
-            compute_delay=delay,
-            allowed=allowed,
-            robust=robust,
-        ), []
+        return propose(fitted.model, **asked), []
     except Refused as error:
         if error.code not in ("unbounded", "target-unreachable"):
             raise

@@ -7,19 +7,17 @@ from typing import Any
 
 from ident.errors import Refused
 from ident.findings import Finding
-from ident.loop import Margins, PidSettings, margins
-from ident.loop.held_plant import held_plant
+from ident.loop import Margins, PidSettings
 from ident.plants import Fopdt, Sopdt
 from ident.tune.band import find_band
 from ident.tune.ellipses import FILTER, Limits
 from ident.tune.hold import hold, wide
 from ident.tune.no_cliff import no_cliff
-from ident.tune.predicted import Predicted
 from ident.tune.rules import Rule, published
 from ident.tune.setpoint_weight import OVERSHOOT
 from ident.tune.simc import simc
-from ident.tune.target import TOLERANCE, Target, target_of
-from ident.tune.tuning import Tuning, optimum, rehearse, tune
+from ident.tune.target import Target, target_of
+from ident.tune.tuning import Asked, Tuning, optimum
 from ident.tune.worst_case import Cloud
 
 
@@ -34,27 +32,6 @@ class Proposals:
     recommended: int | None
     because: str
     rules: tuple[Rule, ...] = ()
-
-
-@dataclass(frozen=True, slots=True)
-class _Asked:
-    """What every proposal for one request shares."""
-
-    plant: Any
-    target: Target
-    form: str
-    goal: str
-    period: float
-    compute_delay: float
-    overshoot_percent: float
-
-    @property
-    def timing(self) -> dict[str, float]:
-        return {"period": self.period, "compute_delay": self.compute_delay}
-
-    def rehearse(self, settings: PidSettings) -> tuple[PidSettings, Predicted | None, tuple[Finding, ...]]:
-        """Setpoint weight and predicted steps."""
-        return rehearse(self.plant, settings, self.period, self.compute_delay, self.overshoot_percent)
 
 
 def propose(
@@ -79,26 +56,18 @@ def propose(
     What misses the target is shown with a finding, never recommended.
     """
     target = target_of(Ms, **wanted)
-    asked = _Asked(getattr(plant, "model", plant), target, form, goal, period, compute_delay, overshoot_percent)
-    best = tune(
-        plant,
-        Ms=Ms,
-        form=form,
-        goal=goal,
-        period=period,
-        compute_delay=compute_delay,
-        filter_ratio=filter_ratio,
-        overshoot_percent=overshoot_percent,
-        **wanted,
-    )
-    calm = _no_cliff(asked, best, filter_ratio)
-    held = _held(asked, calm or best, filter_ratio, allowed, robust)
+    model = getattr(plant, "model", plant)
+    asked = Asked(model, target, form, goal, period, compute_delay, filter_ratio, overshoot_percent)
+    best = asked.best()
+    calm = _no_cliff(asked, best)
+    held = _held(asked, calm or best, allowed, robust)
     first = [found for found in (held, calm, best) if found]
-    reduced = half_rule(asked.plant)
+    reduced = half_rule(model)
     if reduced is None:
         k = next((k for k, one in enumerate(first) if _sound(one, target)), None)
         return Proposals(tuple(first), k, first[k].because if k is not None else "The only proposal does not settle.")
-    rules = published(asked.plant, reduced, target.Ms or _reached(best), form, **asked.timing)
+    limit = target.Ms or _reached(best)
+    rules = published(model, reduced, limit, form, period=period, compute_delay=compute_delay)
     try:
         rule = _simc(asked, reduced)
     except Refused:  # no dead time at all: the rule needs some
@@ -119,32 +88,23 @@ def _reached(best: Tuning) -> float:
     return max(best.margins.Ms or 1.0, best.margins.Mt or 1.0)
 
 
-def _no_cliff(asked: _Asked, best: Tuning, ratio: float) -> Tuning | None:
+def _no_cliff(asked: Asked, best: Tuning) -> Tuning | None:
     """The same PID with less derivative action, where a little more of it would cost the margin."""
     if asked.form != "pid" or asked.goal != "integral" or asked.target.Ms is None or asked.target.bounds:
         return None
-    held = held_plant(asked.plant, **asked.timing)
-    settings = no_cliff(find_band(held, "pid"), Limits(asked.target.Ms, ratio=ratio), best.settings)
+    settings = no_cliff(find_band(asked.held, "pid"), Limits(asked.target.Ms, ratio=asked.ratio), best.settings)
     if settings is None:
         return None
     share = 100.0 * (1.0 - settings.ki / best.settings.ki)
-    found = margins(asked.plant, settings, **asked.timing)
-    settings, predicted, findings = rehearse(
-        asked.plant, settings, asked.period, asked.compute_delay, asked.overshoot_percent
-    )
-    return Tuning(
+    return asked.tuning(
         "largest-ki-calm-derivative",
-        "pid",
         settings,
-        found,
-        predicted,
-        findings,
         f"It gives up {share:.0f} % of the integral gain for a loop that keeps its margin where the derivative acts a "
         f"little more than meant, with {asked.target.says}.",
     )
 
 
-def _held(asked: _Asked, nominal: Tuning, ratio: float, allowed: Cloud | None, robust: bool | None) -> Tuning | None:
+def _held(asked: Asked, nominal: Tuning, allowed: Cloud | None, robust: bool | None) -> Tuning | None:
     """Settings that hold the target on 95 % of the allowed plants; None where not wanted or not needed."""
     target = asked.target
     if allowed is None or target.Ms is None or robust is False:
@@ -152,10 +112,10 @@ def _held(asked: _Asked, nominal: Tuning, ratio: float, allowed: Cloud | None, r
     M = target.Ms
     if not (robust or wide(allowed, nominal.settings, M)):
         return None
-    held = held_plant(asked.plant, **asked.timing)
+    held = asked.held
 
     def best(limit: float) -> PidSettings:
-        return optimum(held, replace(target, Ms=limit), asked.form, asked.goal, ratio)[0]
+        return optimum(held, replace(target, Ms=limit), asked.form, asked.goal, asked.ratio)[0]
 
     try:
         settings = hold(allowed, M, best)
@@ -163,18 +123,10 @@ def _held(asked: _Asked, nominal: Tuning, ratio: float, allowed: Cloud | None, r
         if robust:
             raise
         return None
-    found = margins(asked.plant, settings, **asked.timing)
-    settings, predicted, findings = rehearse(
-        asked.plant, settings, asked.period, asked.compute_delay, asked.overshoot_percent
-    )
     share = 100.0 * (1.0 - settings.ki / nominal.settings.ki)
-    return Tuning(
+    return asked.tuning(
         "held-for-95-percent",
-        asked.form,
         settings,
-        found,
-        predicted,
-        findings,
         f"It keeps Ms and Mt at most {M:g} on 95 % of the plants that this log allows, for "
         f"{max(share, 0.0):.0f} % less integral gain than the settings for the fitted plant alone.",
     )
@@ -184,13 +136,6 @@ def _sound(tuning: Tuning, target: Target) -> bool:
     return target.kept_by(tuning.margins) and not any(
         f.severity == "error" or f.code == "target-missed" for f in tuning.findings
     )
-
-
-def meets(found: Margins, Ms: float) -> bool:
-    """Whether a loop is stable with Ms and Mt at most the target, within TOLERANCE."""
-    if found.Ms is None or found.Mt is None:
-        return False
-    return found.stable and max(found.Ms, found.Mt) <= Ms + TOLERANCE
 
 
 def half_rule(plant: Any) -> Fopdt | None:
@@ -205,29 +150,15 @@ def half_rule(plant: Any) -> Fopdt | None:
     return None
 
 
-def _simc(asked: _Asked, reduced: Fopdt) -> Tuning:
-    model, target = asked.plant, asked.target
-    Tc = target.closed_loop_s
+def _simc(asked: Asked, reduced: Fopdt) -> Tuning:
+    target, Tc = asked.target, asked.target.closed_loop_s
     settings = simc(reduced.K, reduced.T, reduced.L + asked.period / 2.0 + asked.compute_delay, Tc=Tc)
-    found = margins(model, settings, **asked.timing)
-    findings: tuple[Finding, ...] = ()
-    predicted = None
-    if found.stable:
-        settings, predicted, findings = rehearse(
-            model, settings, asked.period, asked.compute_delay, asked.overshoot_percent
-        )
-    if not (target.kept_by(found) and target.quiet(held_plant(model, **asked.timing), settings)):
-        findings = (*findings, _missed(found, target))
     what = "equal to the dead time in the loop" if Tc is None else f"{Tc:g} s"
-    return Tuning(
-        "simc",
-        "pi",
-        settings,
-        found,
-        predicted,
-        findings,
-        f"The SIMC rule with the closed-loop time constant {what} (Skogestad 2003).",
-    )
+    because = f"The SIMC rule with the closed-loop time constant {what} (Skogestad 2003)."
+    found = asked.tuning("simc", settings, because, "pi")
+    if target.kept_by(found.margins) and target.quiet(asked.held, found.settings):
+        return found
+    return replace(found, findings=(*found.findings, _missed(found.margins, target)))
 
 
 def _missed(found: Margins, target: Target) -> Finding:

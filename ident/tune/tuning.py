@@ -79,7 +79,6 @@ def tune(
     Raises Refused: target-out-of-range, target-unreachable, unbounded, not-offered, no-settings-found, not-simulated
     (load, setpoint: a response too long to follow) and those of `margins`.
     """
-    check_request(form, goal)
     target = target_of(
         Ms,
         gain_margin=gain_margin,
@@ -89,11 +88,46 @@ def tune(
         command_noise_std=command_noise_std,
         speed_noise_std=speed_noise_std,
     )
-    held = held_plant(plant, period, compute_delay)
-    settings, _ = optimum(held, target, form, goal, filter_ratio)
-    found = margins(held.plant, settings, period=period, compute_delay=compute_delay)
-    settings, predicted, findings = rehearse(plant, settings, period, compute_delay, overshoot_percent)
-    return Tuning(METHODS[goal], form, settings, found, predicted, findings, _because(goal, settings, target))
+    return Asked(plant, target, form, goal, period, compute_delay, filter_ratio, overshoot_percent).best()
+
+
+@dataclass(frozen=True, slots=True)
+class Asked:
+    """One request, as for `tune`: what every proposal for it shares. ratio  Td/Tf."""
+
+    plant: Any
+    target: Target
+    form: str
+    goal: str
+    period: float
+    compute_delay: float
+    ratio: float
+    overshoot_percent: float
+
+    @property
+    def held(self) -> HeldPlant:
+        """The plant as the controller meets it."""
+        return held_plant(self.plant, self.period, self.compute_delay)
+
+    def best(self) -> Tuning:
+        """The proposal that is best for the goal."""
+        check_request(self.form, self.goal)
+        settings, _ = optimum(self.held, self.target, self.form, self.goal, self.ratio)
+        return self.tuning(METHODS[self.goal], settings, _because(self.goal, settings, self.target))
+
+    def tuning(self, method: str, settings: PidSettings, because: str, form: str | None = None) -> Tuning:
+        """A proposal of these settings: their margins, the setpoint weight and the predicted steps of a stable loop.
+
+        form   None: the one asked for
+        """
+        found = margins(self.plant, settings, period=self.period, compute_delay=self.compute_delay)
+        predicted: Predicted | None = None
+        findings: tuple[Finding, ...] = ()
+        if found.stable:
+            settings, predicted, findings = rehearse(
+                self.plant, settings, self.period, self.compute_delay, self.overshoot_percent
+            )
+        return Tuning(method, form or self.form, settings, found, predicted, findings, because)
 
 
 def optimum(held: HeldPlant, target: Target, form: str, goal: str, ratio: float) -> tuple[PidSettings, Limits]:
