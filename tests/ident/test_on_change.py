@@ -84,6 +84,15 @@ def test_silence_is_no_gap_but_an_outage_is() -> None:
     assert len(found) < 3
 
 
+@pytest.mark.parametrize(("deadband", "chatters"), [(0.02, True), (0.1, False), (0.4, False)])
+def test_a_deadband_within_the_noise_is_said(deadband: float, chatters: bool) -> None:
+    # The noise has a standard deviation of 0.02.
+    record = on_change(np.random.default_rng(8), deadband=deadband)
+    assert record.source is not None
+    (said,) = (f for f in record.source.findings if f.code == "exception-reported")
+    assert ("turn back" in said.message) == chatters
+
+
 def test_reports_run_from_reading_to_settings() -> None:
     report = ident.analyse(on_change(np.random.default_rng(7)))
     assert report.selected is not None
