@@ -7,6 +7,7 @@ moves between such stands, are a hand's (or a limit's: there the loop is open as
 from __future__ import annotations
 
 import numpy as np
+from numpy.typing import NDArray
 
 from ident.record import LoopRecord
 from ident.record.segments import Flags, Floats, spans
@@ -56,13 +57,21 @@ def held_rows(command: Floats) -> tuple[int, int]:
     moved = np.flatnonzero(np.diff(command)) + 1
     if len(moved) < MOVES or len(moved) > 0.6 * len(command):
         return 1, 0
-    for n in range(min(MOST_HELD, len(command) // MOVES), 1, -1):
+    for n in _common_steps(np.diff(moved), min(MOST_HELD, len(command) // MOVES)):
         counts = np.bincount(moved % n, minlength=n)
         phase = int(np.argmax(counts))
         slots = (moved[-1] - moved[0]) // n + 1
         if counts[phase] >= ON_PHASE * len(moved) and counts[phase] >= 0.5 * slots:
             return n, phase
     return 1, 0
+
+
+def _common_steps(gaps: NDArray[np.int64], most: int) -> list[int]:
+    """The n of most..2, the largest first, that divide as many gaps as they must for ON_PHASE of the moves."""
+    # A move off phase spoils two gaps at most.
+    needed = len(gaps) - 2.0 * (1.0 - ON_PHASE) * (len(gaps) + 1)
+    length = np.bincount(gaps)
+    return [n for n in range(most, 1, -1) if length[::n].sum() >= needed]
 
 
 def _usual_gap(record: LoopRecord) -> int:
@@ -75,13 +84,10 @@ def _usual_gap(record: LoopRecord) -> int:
 
 def _stands(command: Floats, least: int, usual: int) -> Flags:
     """The stands of `least` rows or more, with what lies between them where that is no controller's."""
-    edges = np.concatenate(([0], np.flatnonzero(np.diff(command)) + 1, [len(command)]))
-    out = np.zeros(len(command), dtype=np.bool_)
-    for start, stop in zip(edges[:-1].tolist(), edges[1:].tolist(), strict=True):
-        out[start:stop] = stop - start >= least
-    busy = np.flatnonzero(np.diff(np.concatenate(([0], (~out).astype(np.int8), [0])))).reshape(-1, 2)
-    moved = np.concatenate(([0.0], np.diff(command))) != 0.0
-    for start, stop in busy.tolist():
+    moved = np.concatenate(([False], np.diff(command) != 0.0))
+    lengths = np.diff(np.concatenate(([0], np.flatnonzero(moved), [len(command)])))
+    out = np.repeat(lengths >= least, lengths)
+    for start, stop in spans(~out).tolist():
         moves = int(np.count_nonzero(moved[start:stop]))
         if moves < MOVES or moves * usual < SELDOM * (stop - start):
             out[start:stop] = True

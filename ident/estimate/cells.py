@@ -21,7 +21,7 @@ from scipy.signal import lfilter
 
 from ident.estimate.columns import FORGOTTEN
 from ident.estimate.layout import Layout, Stretch
-from ident.evidence.normal import RIDGE, solve_normal
+from ident.evidence.normal import RIDGE, gram_of, solve_normal
 from ident.plants.hold import lag_gap, lag_gap_slope
 from ident.record.segments import Floats
 
@@ -163,19 +163,19 @@ def _stretch_products(
     whole = series[:, low[0] : high[0]]
     left, joined = series[:, high[-1] : high[0]][:, ::-1], series[:, low[-1] : low[0]][:, ::-1]
     dropped, taken = high[0] - high, low[0] - low
-    own = _running(whole @ whole.T, np.einsum("in,jn->nij", left, left), np.einsum("in,jn->nij", joined, joined))(
+    own = _running(gram_of(whole), np.einsum("in,jn->nij", left, left), np.einsum("in,jn->nij", joined, joined))(
         dropped, taken
     )
     own += before[:, None, None] * np.outer(history, history)
     sums = _running(whole.sum(axis=1), left.T, joined.T)(dropped, taken) + before[:, None] * history
     crossed = []
     for weight in weights:
-        product = np.empty((count, 3))
-        for i, (lo, hi, gone) in enumerate(zip(low, high, before, strict=True)):
-            n_weight = min(len(weight) - gone, hi - lo)
-            product[i] = series[:, lo : lo + n_weight] @ weight[gone : gone + n_weight] if n_weight > 0 else 0.0
-            if gone:
-                product[i] += history * weight[:gone].sum()
+        begun = np.concatenate(([0.0], np.cumsum(weight[: int(before[-1])])))
+        product = begun[np.minimum(before, len(weight))][:, None] * history
+        lengths = np.minimum(len(weight) - before, high - low)
+        for i, (lo, gone, length) in enumerate(zip(low.tolist(), before.tolist(), lengths.tolist(), strict=True)):
+            if length > 0:
+                product[i] += series[:, lo : lo + length] @ weight[gone : gone + length]
         crossed.append(product)
     return own, sums, crossed
 

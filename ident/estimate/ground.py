@@ -46,6 +46,7 @@ class Ground:
     window   the cells about that point, at its T, where they are known
     unseen   s of the record from and to which the command moved faster than the log shows, left out
     noticed  what the steps to that point gave rise to notice
+    closed   the command answers to the speed, where it is not set by hand
     """
 
     record: LoopRecord
@@ -54,12 +55,7 @@ class Ground:
     window: Cells | None = None
     unseen: tuple[float, float] | None = None
     noticed: tuple[Finding, ...] = ()
-
-    @property
-    def closed(self) -> bool:
-        """Whether the command answers to the speed, where it is not set by hand."""
-        runs = automatic(self.record)
-        return bool(runs) and feedback(*map(list, zip(*runs, strict=True)))
+    closed: bool = False
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -85,7 +81,10 @@ def ground(record: LoopRecord, hold: Hold | None = None) -> Ground:
     Raises NotIdentifiable.
     """
     base = _ground(record, hold)
-    return base if hold == "zero-order" or _unexplained(base) < PLAIN else _where_seen(record, base, hold)
+    if hold != "zero-order" and _unexplained(base) >= PLAIN:
+        base = _where_seen(record, base, hold)
+    runs = automatic(base.record)
+    return replace(base, closed=bool(runs) and feedback(*map(list, zip(*runs, strict=True))))
 
 
 def _where_seen(record: LoopRecord, whole: Ground, hold: Hold | None) -> Ground:

@@ -5,11 +5,12 @@ from __future__ import annotations
 from dataclasses import dataclass
 
 import numpy as np
+from numpy.typing import NDArray
 
 from ident.estimate.columns import columns
 from ident.estimate.layout import Layout
 from ident.estimate.shape import Shape
-from ident.evidence.normal import solve_normal
+from ident.evidence.normal import gram_of, solve_normal
 from ident.record.segments import Floats
 
 NEARLY_EXACT = 1e-10  # of the speed's sum of squares
@@ -51,7 +52,7 @@ def point(layout: Layout, shape: Shape, L: float, side: int = 1) -> Point:
     jacobian = np.empty((2 + k + len(at.nuisance), rows))
     jacobian[0], jacobian[1 : 1 + k], jacobian[2 + k :] = at.response, at.slopes, at.nuisance
     jacobian[1 + k] = at.slope_L if side > 0 else _slope_below(layout, shape, L)
-    linear = [0, *range(2 + k, len(jacobian))]
+    linear = np.array([0, *range(2 + k, len(jacobian))])
     plain = jacobian if layout.colour.white else jacobian[linear]
     if not layout.colour.white:
         jacobian[linear] = layout.whiten(plain)
@@ -73,26 +74,28 @@ def point(layout: Layout, shape: Shape, L: float, side: int = 1) -> Point:
         residual,
         float(residual @ residual),
         jacobian,
-        jacobian @ jacobian.T,
+        gram_of(jacobian),
         jacobian @ residual,
     )
 
 
-def _linear_part(jacobian: Floats, linear: list[int], target: Floats) -> tuple[Floats, Floats]:
+def _linear_part(jacobian: Floats, linear: NDArray[np.int64], target: Floats) -> tuple[Floats, Floats]:
     """Least squares of the target on the jacobian's rows `linear`, and what it leaves."""
-    rows = jacobian[linear]
-    solution = solve(rows, target)
-    residual = target - solution @ rows
+    # Products of all rows, and zeros for the others: quicker than a copy of the few.
+    gram = gram_of(jacobian)[np.ix_(linear, linear)]
+    solution = np.zeros(len(jacobian))
+    solution[linear] = solve_normal(gram, (jacobian @ target)[linear])
+    residual = target - solution @ jacobian
     if float(residual @ residual) < NEARLY_EXACT * float(target @ target):
         # Normal equations lose half the digits; without noise they are wanted back.
-        solution = solution + solve(rows, residual)
-        residual = target - solution @ rows
-    return solution, residual
+        solution[linear] += solve_normal(gram, (jacobian @ residual)[linear])
+        residual = target - solution @ jacobian
+    return solution[linear], residual
 
 
 def solve(rows: Floats, right: Floats) -> Floats:
     """Least squares of `right` (n,) on the rows (k, n)."""
-    return solve_normal(rows @ rows.T, rows @ right)
+    return solve_normal(gram_of(rows), rows @ right)
 
 
 def _slope_below(layout: Layout, shape: Shape, L: float) -> Floats:

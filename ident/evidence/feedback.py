@@ -24,33 +24,38 @@ def feedback(commands: list[Floats], speeds: list[Floats], setpoints: list[Float
     moves = np.concatenate([np.diff(u) for u in commands])
     if not np.any(moves):
         return False
-    own, answer, target = [], [], []
-    for u, y, r in zip(commands, speeds, setpoints or [None] * len(commands), strict=True):
-        n = len(u)
-        if n <= 4 * LAGS:
-            continue
-        past = [u[LAGS - i : n - i] for i in range(1, LAGS + 1)]
-        # A setpoint may drive the command without any feedback, and its steps would hide what the speed adds.
-        told = np.zeros(n) if r is None else r
-        past += [told[LAGS - i : n - i] for i in range(LAGS + 1)]
-        own.append(np.stack(past))
-        answer.append(np.stack([y[LAGS - i : n - i] for i in range(LAGS + 1)]))
-        target.append(np.diff(u)[LAGS - 1 :])
-    if not own:
+    setpoints = setpoints or [None] * len(commands)
+    # A setpoint may drive the command without any feedback, and its steps would hide what the speed adds.
+    told = any(r is not None for r in setpoints)
+    parts = [
+        _with_past(u, y, np.zeros(len(u)) if r is None and told else r)
+        for u, y, r in zip(commands, speeds, setpoints, strict=True)
+        if len(u) > 4 * LAGS
+    ]
+    if not parts:
         return False
-    X, Z, move = (_level(np.concatenate(part, axis=-1)) for part in (own, answer, target))
-    alone, both = _unexplained(X, move), _unexplained(np.vstack((X, Z)), move)
+    rows = parts[0] if len(parts) == 1 else np.concatenate(parts, axis=1)
+    rows -= rows.mean(axis=1, keepdims=True)  # levels far above the moves would cost digits
+    gram = rows @ rows.T
+    answer = LAGS + 1
+    alone, both = (_unexplained(rows, gram, own) for own in (len(rows) - 1 - answer, len(rows) - 1))
     if alone <= 0.0:
         return False
     share = 1.0 - both / alone
-    return share >= SHARE and float(chdtrc(len(Z), len(move) * share)) < CLEARLY
+    return share >= SHARE and float(chdtrc(answer, rows.shape[1] * share)) < CLEARLY
 
 
-def _level(rows: Floats) -> Floats:
-    """Less their means: levels far above the moves would cost digits."""
-    return np.asarray(rows - rows.mean(axis=-1, keepdims=True))
+def _with_past(u: Floats, y: Floats, r: Floats | None) -> Floats:
+    """Past commands, setpoints where there are any, present and past speeds, and last the next move: rows of one run."""
+    n = len(u)
+    series = [u[LAGS - i : n - i] for i in range(1, LAGS + 1)]
+    for known in (r, y):
+        if known is not None:
+            series += [known[LAGS - i : n - i] for i in range(LAGS + 1)]
+    return np.stack([*series, np.diff(u)[LAGS - 1 :]])
 
 
-def _unexplained(rows: Floats, target: Floats) -> float:
-    rest = target - solve_normal(rows @ rows.T, rows @ target) @ rows
+def _unexplained(rows: Floats, gram: Floats, own: int) -> float:
+    """Sum of squares that the first `own` rows leave of the last."""
+    rest = rows[-1] - solve_normal(gram[:own, :own], gram[:own, -1]) @ rows[:own]
     return float(rest @ rest)
