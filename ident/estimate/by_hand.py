@@ -70,8 +70,10 @@ def _common_steps(gaps: NDArray[np.int64], most: int) -> list[int]:
     """The n of most..2, the largest first, that divide as many gaps as they must for ON_PHASE of the moves."""
     # A move off phase spoils two gaps at most.
     needed = len(gaps) - 2.0 * (1.0 - ON_PHASE) * (len(gaps) + 1)
-    length = np.bincount(gaps)
-    return [n for n in range(most, 1, -1) if length[::n].sum() >= needed]
+    count = np.bincount(gaps)
+    length, steps = np.flatnonzero(count), np.arange(most, 1, -1)
+    divided = (length % steps[:, None] == 0) @ count[length]
+    return [int(n) for n in steps[divided >= needed]]
 
 
 def _usual_gap(record: LoopRecord) -> int:

@@ -149,7 +149,7 @@ def _stretch_products(
     stretch: Stretch, T: float, shift: Ints, skip: int, taps: Floats, weights: list[Floats]
 ) -> tuple[Floats, Floats, list[Floats]]:
     """Gram (count, 3, 3), sums (count, 3) and products with each weight (count, 3) of the shifted columns."""
-    n, count = stretch.rows, len(shift)
+    n = stretch.rows
     gap = lag_gap(stretch.command, stretch.intervals, T)
     series = np.stack([stretch.command, gap, lag_gap_slope(gap, stretch.intervals, T)])
     history = np.array([stretch.command[0], 0.0, 0.0])  # before the first row: held and settled

@@ -51,7 +51,8 @@ class FirstOrder:
         at = delayed(stretch, L, series)
         e, decay = at.since, np.exp(-at.since / T)
         held, q, q_T = at.series[:3]
-        answer, slope_T, slope_L = held + decay * q, decay * (T * q_T + e / T * q), decay * q / T
+        left = decay * q
+        answer, slope_T, slope_L = held + left, decay * T * q_T + e / T * left, left / T
         if straight:
             m, late = at.series[3], 1.0 - decay
             answer = answer + m * (e - T * late)

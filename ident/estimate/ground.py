@@ -17,7 +17,7 @@ from ident.estimate.dry_friction import turning
 from ident.estimate.layout import Layout, lay_out
 from ident.estimate.point import Point
 from ident.estimate.refine import refine
-from ident.estimate.search import search, settle
+from ident.estimate.search import Place, search, settle
 from ident.estimate.slow_drift import allow_drift
 from ident.estimate.unseen import seen
 from ident.evidence.colour import Colour, noise_colour
@@ -112,9 +112,11 @@ def _unexplained(base: Ground) -> float:
 def _ground(record: LoopRecord, hold: Hold | None) -> Ground:
     layout = lay_out(record)
     _require_movement(record, layout)
-    at, window = search(layout)
+    place = search(layout)
     if any(s.start == "joined" for s in layout.stretches):
-        layout, at, window = _leave_out_unknown_past(layout, at)
+        layout, at, window = _leave_out_unknown_past(layout, place)
+    else:
+        at, window = settle(layout, place)
     plain = at
     layout, at = _between_samples(layout, at, hold)
     layout, at = allow_drift(layout, at)
@@ -206,13 +208,14 @@ def _require_movement(record: LoopRecord, layout: Layout) -> None:
             )
 
 
-def _leave_out_unknown_past(layout: Layout, at: Point) -> tuple[Layout, Point, Cells | None]:
+def _leave_out_unknown_past(layout: Layout, place: Place) -> tuple[Layout, Point, Cells | None]:
     """Without the rows that answer to a command before the log; again where L turns out longer."""
-    margin = 2.0 * layout.step
     for _ in range(4):
-        shorter = layout.skipping(at.L + margin)
-        at, window = settle(shorter, at.shape.lags, at.L)
+        # A place is good to the resolution of the level that it was found on.
+        shorter = layout.skipping(place.L + 2.0 * place.window.step)
+        at, window = settle(shorter, place)
         last = shorter.stretches[-1]
         if at.L <= last.time[last.skip] or last.start != "joined":
             break
+        place = replace(place, T=at.shape.lags, L=at.L)
     return shorter, at, window

@@ -8,6 +8,7 @@ down to the full record; the best is refined there, and its neighbouring cells a
 from __future__ import annotations
 
 import math
+from dataclasses import dataclass
 
 import numpy as np
 
@@ -21,21 +22,34 @@ from ident.estimate.start import Start, starts, thinning
 FINER = 8  # block means shrink by this factor from level to level
 MARGIN = 2  # cells beyond the window that a level's resolution asks for
 MOST_ROUNDS = 6
-SETTLED = 0.1  # relative change of T below which the first level has done its work
+SETTLED = 0.1  # change of log T below which the first level has done its work
 PLACED = 0.5  # the same on a finer level, whose T is close from the start and refined afterwards
 ENOUGH = 2000  # rows for a first look, where they show the answer plainly:
 PLAIN = 1000.0  # times its own noise, in power
+SAME = 0.05  # of one residual's variance: a difference in the sum of squares that says nothing
 NEIGHBOURS = 6  # cells on either side of the refined minimum
 
 
-def search(layout: Layout) -> tuple[Point, Cells | None]:
-    """The least-squares FOPDT of a layout, global over L up to half the longest stretch, and the cells about it."""
+@dataclass(frozen=True, slots=True, eq=False)
+class Place:
+    """(T, L), s, of the least sum of squares `rss` among the cells of a level of so many rows, `window` the last."""
+
+    T: float
+    L: float
+    rss: float
+    rows: int
+    window: Cells
+
+
+def search(layout: Layout) -> Place:
+    """Where the least-squares FOPDT of a layout lies, global over L up to half the longest stretch."""
     even = layout.evened()
     blocks = thinning(even)
     level, found = _starts(even.thinned(blocks))
-    ends = [_follow(even, level, start, blocks) for start in found]
-    _, T, L = min(ends)
-    return settle(layout, T, L)
+    places = [_follow(even, level, start, blocks) for start in found]
+    if len(places) > 1 or not layout.uniform:
+        places = [_closer(even, place) for place in places]
+    return min(places, key=lambda place: place.rss)
 
 
 def _starts(layout: Layout) -> tuple[Layout, tuple[Start, ...]]:
@@ -49,18 +63,21 @@ def _starts(layout: Layout) -> tuple[Layout, tuple[Start, ...]]:
     return layout, starts(layout)
 
 
-def settle(layout: Layout, T: float, L: float) -> tuple[Point, Cells | None]:
-    """Refine from (T, L), then look at the neighbouring cells from the refined T and keep the least.
+def settle(layout: Layout, place: Place) -> tuple[Point, Cells | None]:
+    """Look at every cell about a place, refine from the best, look at its neighbours and keep the least.
 
-    The cells are those about the point, at its T; None where the rows are not on one grid or the point has moved on.
+    The cells are those about the point, near its T; None where the rows are not on one grid or the point has moved on.
     """
-    shape = FirstOrder(T)
     if not layout.uniform:
-        h = layout.step
-        return min((refine(layout, shape, L + s * h) for s in (-0.5, 0.0, 0.5)), key=lambda p: p.rss), None
-    best = refine(layout, shape, L)
+        shape, h = FirstOrder(place.T), layout.step
+        tries = [refine(layout, shape, place.L + s * h) for s in (-0.5, 0.0, 0.5)]
+        # Within a sample of a fast plant every dead time may do as well: of equals the longest, for care in the tuning.
+        equal = min(p.rss for p in tries) * (1.0 + 1e-9)
+        return max((p for p in tries if p.rss <= equal), key=lambda p: p.L), None
+    near = _closer(layout, place)
+    best = refine(layout, FirstOrder(near.T), near.L)
     at = FirstOrder(best.shape.lags)
-    window = around(layout, at.T, best.L)
+    window = near.window if _agrees(near.window, best) else around(layout, at.T, best.L)
     rss, T_there, L_there = window.minima()
     here = rss[int(best.L / layout.step) - window.first]
     i = int(np.argmin(rss))
@@ -72,6 +89,15 @@ def settle(layout: Layout, T: float, L: float) -> tuple[Point, Cells | None]:
     return best, window
 
 
+def _agrees(window: Cells, at: Point) -> bool:
+    """Whether cells at a nearby T, linear in its change, reach the point's sum of squares and lie well about it."""
+    cell = int(at.L / window.step) - window.first
+    if not (MARGIN <= cell or window.first == 0) or cell + MARGIN >= len(window.gram):
+        return False
+    rss, _ = window.profile(np.array([at.L]))
+    return abs(float(rss[0]) - at.rss) <= SAME * at.rss / len(at.raw)
+
+
 def around(layout: Layout, T: float, L: float, neighbours: int = NEIGHBOURS) -> Cells:
     """The cells within `neighbours` of a dead time."""
     cell = int(L / layout.step)
@@ -79,28 +105,31 @@ def around(layout: Layout, T: float, L: float, neighbours: int = NEIGHBOURS) -> 
     return cells(layout, T, first, cell - first + neighbours + 1)
 
 
-def _follow(layout: Layout, level: Layout, start: Start, blocks: int) -> tuple[float, float, float]:
-    """One start settled on its level, of `blocks` rows to a mean, and followed to the full record: (rss, T, L)."""
-    rss, T, L = _settle_cells(level, start.T, start.L, 1, SETTLED)
-    finer = [] if blocks > 1 or level.rows == layout.rows else [1]
-    while blocks > 1:
-        blocks = max(blocks // FINER, 1)
-        finer.append(blocks)
-    for blocks in finer:
-        spacing = level.step
-        level = layout.thinned(blocks)
-        # The coarser level has already placed L within its cell.
-        rss, T, L = _settle_cells(level, T, L, math.ceil(0.5 * spacing / level.step), PLACED)
-    return rss, T, L
+def _follow(layout: Layout, level: Layout, start: Start, blocks: int) -> Place:
+    """One start settled on its level, of `blocks` rows to a mean, and followed to the last before the full record."""
+    place = _settle_cells(level, start.T, start.L, 1, SETTLED)
+    while blocks > FINER:
+        blocks //= FINER
+        place = _closer(layout.thinned(blocks), place)
+    return place
 
 
-def _settle_cells(layout: Layout, T: float, L: float, width: int, settled: float) -> tuple[float, float, float]:
+def _closer(layout: Layout, place: Place) -> Place:
+    """A place on a finer level, where the coarser one has put L within its cell; as it is where it is on that level."""
+    if place.rows == layout.rows:
+        return place
+    width = max(math.ceil(0.5 * place.window.step / layout.step), NEIGHBOURS)
+    return _settle_cells(layout, place.T, place.L, width, PLACED)
+
+
+def _settle_cells(layout: Layout, T: float, L: float, width: int, settled: float) -> Place:
     """Alternate the best cell, of those `width` and MARGIN on either side, and a step of T until both stay."""
     rss = math.inf
     width += MARGIN
     for _ in range(MOST_ROUNDS):
         first = max(int(L / layout.step) - width, 0)
-        values, T_there, L_there = cells(layout, T, first, 2 * width + 1).minima()
+        window = cells(layout, T, first, 2 * width + 1)
+        values, T_there, L_there = window.minima()
         i = int(np.argmin(values))
         rss, L = float(values[i]), float(L_there[i])
         T_next = float(T_there[i]) if np.isfinite(T_there[i]) and T_there[i] > 0 else 0.5 * T
@@ -111,4 +140,4 @@ def _settle_cells(layout: Layout, T: float, L: float, width: int, settled: float
             break
         if not at_edge:
             width = min(width, MARGIN + 1)
-    return rss, T, L
+    return Place(T, L, rss, layout.rows, window)

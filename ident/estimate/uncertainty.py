@@ -16,7 +16,7 @@ from ident.estimate.coloured import noise_slopes
 from ident.estimate.fit import DeadTimeProfile
 from ident.estimate.layout import Layout
 from ident.estimate.point import Point
-from ident.estimate.search import NEIGHBOURS, around
+from ident.estimate.search import around
 from ident.estimate.slow_drift import without_drift
 from ident.evidence.colour import Colour, coloured_covariance, inverse_gram
 from ident.evidence.estimates import NORMAL_95, Covariance, Estimate
@@ -108,7 +108,8 @@ def dead_time_profile(
         return None
     h = layout.step
     reach = max(1, min(math.ceil(4.5 * std / h), PROFILE_CELLS))
-    if window is None or reach > NEIGHBOURS:
+    cell = int(at.L / h)
+    if window is None or window.first > max(cell - reach, 0) or cell + reach >= window.first + len(window.gram):
         window = around(without_drift(layout, at), at.shape.lags, at.L, reach)
     low = max(at.L - 4.5 * std, window.first * h)
     high = min(at.L + 4.5 * std, (window.first + len(window.gram)) * h)

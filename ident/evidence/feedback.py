@@ -6,7 +6,7 @@ import numpy as np
 from numpy.typing import NDArray
 from scipy.special import chdtrc
 
-from ident.evidence.normal import solve_normal
+from ident.evidence.normal import gram_of, solve_normal
 
 Floats = NDArray[np.float64]
 
@@ -36,7 +36,7 @@ def feedback(commands: list[Floats], speeds: list[Floats], setpoints: list[Float
         return False
     rows = parts[0] if len(parts) == 1 else np.concatenate(parts, axis=1)
     rows -= rows.mean(axis=1, keepdims=True)  # levels far above the moves would cost digits
-    gram = rows @ rows.T
+    gram = gram_of(rows)
     answer = LAGS + 1
     alone, both = (_unexplained(rows, gram, own) for own in (len(rows) - 1 - answer, len(rows) - 1))
     if alone <= 0.0:
@@ -46,7 +46,7 @@ def feedback(commands: list[Floats], speeds: list[Floats], setpoints: list[Float
 
 
 def _with_past(u: Floats, y: Floats, r: Floats | None) -> Floats:
-    """Past commands, setpoints where there are any, present and past speeds, and last the next move: rows of one run."""
+    """Past commands, setpoints where there are any, speeds, and last the next move: rows of one run."""
     n = len(u)
     series = [u[LAGS - i : n - i] for i in range(1, LAGS + 1)]
     for known in (r, y):

@@ -21,12 +21,19 @@ def gram_of(rows: Floats) -> Floats:
 
 def lengths(gram: Floats) -> Floats:
     """Lengths (..., k) of the rows behind Gram matrices (..., k, k); a row of nothing has length 1."""
-    size = np.sqrt(np.maximum(np.diagonal(gram, axis1=-2, axis2=-1), 0.0))
-    return np.where(size == 0.0, 1.0, size)
+    size = np.sqrt(np.maximum(_diagonal(gram), 0.0))
+    size[size == 0.0] = 1.0
+    return np.asarray(size)
 
 
 def solve_normal(gram: Floats, against: Floats) -> Floats:
     """Solutions (..., k) of gram x = against, (..., k, k) and (..., k); a row that adds nothing gets nothing."""
     size = lengths(gram)
-    scaled = gram / (size[..., :, None] * size[..., None, :]) + RIDGE * np.eye(gram.shape[-1])
+    scaled = gram / (size[..., :, None] * size[..., None, :])
+    _diagonal(scaled)[...] += RIDGE
     return np.asarray(np.linalg.solve(scaled, (against / size)[..., None])[..., 0] / size)
+
+
+def _diagonal(matrices: Floats) -> Floats:
+    """A view of the diagonals (..., k) of (..., k, k)."""
+    return np.asarray(np.einsum("...ii->...i", matrices))

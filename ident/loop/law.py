@@ -7,7 +7,7 @@ Any rule of integration has this shape: backward and forward sums differ from it
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from dataclasses import dataclass, field
 from typing import Literal
 
 import numpy as np
@@ -22,6 +22,7 @@ from ident.plants import Arx
 from ident.plants.steps import Lagged
 
 Complex = NDArray[np.complex128]
+Floats = NDArray[np.float64]
 FilterOn = Literal["none", "derivative", "speed", "speed, second order"]
 
 
@@ -73,6 +74,10 @@ class HoldEquivalent:
 
     plant: Lagged
     h: float
+    sampled: tuple[int, Floats, Floats] = field(init=False, repr=False, compare=False)
+
+    def __post_init__(self) -> None:
+        object.__setattr__(self, "sampled", zero_order(self.plant, self.h))
 
     @property
     def static_gain(self) -> float:
@@ -84,7 +89,7 @@ class HoldEquivalent:
 
     def frequency_response(self, w: ArrayLike) -> Complex:
         """B(z)/A(z) at z = exp(jwh)."""
-        delay, numerator, denominator = zero_order(self.plant, self.h)
+        delay, numerator, denominator = self.sampled
         back = np.exp(-1j * self.h * np.asarray(w, dtype=np.float64))
         polynomial = np.polynomial.polynomial.polyval
         return np.asarray(

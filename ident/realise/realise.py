@@ -71,6 +71,7 @@ def realise(
     filter_on: FilterOn = "speed",
     N: float | None = None,
     bits: int | None = None,
+    add_half: Margins | None = None,
 ) -> Realisations:
     """Every form of a controller and, with a period and a plant, its coefficients and the margins they have.
 
@@ -80,6 +81,7 @@ def realise(
     filter_on, N  second-order filter on the speed, or first-order on the derivative with Tf = Td/N
     bits          word length for whole-number coefficients, 8 to 32; None: none. Where both spans are given the
                   signals are fractions of them.
+    add_half      the margins with half a period added, where they are already known
     For an op-amp card see `choose_card`: it is chosen for the plant, not for these settings.
     Raises Refused: span-out-of-range, period-out-of-range, filter-out-of-range, word-out-of-range and those of
     `margins`.
@@ -107,7 +109,7 @@ def realise(
             left, _ = _sampled(plant, words.feedback, period, compute_delay)
             rounded = Rounded(words, left, _lost(left, exact))
         made.append(Coded(one, exact, _lost(exact, continuous), unknown, rounded))
-    add_half = margins(plant, settings, period=period, compute_delay=compute_delay)
+    add_half = add_half or margins(plant, settings, period=period, compute_delay=compute_delay)
     return Realisations(shown, continuous, add_half, tuple(made), because)
 
 

@@ -132,6 +132,7 @@ def analyse(
                 fitted if proposal and i == proposal.recommended else None,
                 period=held,
                 compute_delay=compute_delay,
+                add_half=t.margins,
             ),
             t.findings,
         )

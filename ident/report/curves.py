@@ -60,7 +60,10 @@ def _trend(record: LoopRecord, fit: Fit | None) -> Trend:
     index = np.array(rows, dtype=int)
 
     def drawn(values: Floats) -> Gappy:
-        out: list[float | None] = [None if math.isnan(v) else v for v in _rounded(values[index]).tolist()]
+        shown = _rounded(values[index])
+        out: list[float | None] = shown.tolist()
+        for gap in np.flatnonzero(np.isnan(shown)).tolist():
+            out[gap] = None
         for at in reversed(breaks[:-1]):
             out.insert(at, None)
         return tuple(out)

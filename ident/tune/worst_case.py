@@ -45,7 +45,7 @@ class Cloud:
         loop = self.response * settings.frequency_response(self.w)
         back = 1.0 + loop
         # With one integrator and a stable plant, 1 + L turns from -90 degrees to 0; each encirclement takes 360 off.
-        turned = np.sum(np.angle(back[:, 1:] / back[:, :-1]), axis=1)
+        turned = _turned(back)
         stable = turned > -np.pi / 2.0
         S = 1.0 / np.abs(back)
         Mt = np.maximum((np.abs(loop) * S).max(axis=1), 1.0)
@@ -68,6 +68,18 @@ class Cloud:
             float(np.mean(np.isinf(Ms))),
             float(top) if np.isfinite(top) else None,
         )
+
+
+def _turned(points: NDArray[np.complex128]) -> NDArray[np.float64]:
+    """(m,) rad by which each path of points (m, n) turns about 0, less than half a turn at a time."""
+    below = points.imag < 0.0
+    before, after = points[:, :-1], points[:, 1:]
+    # Only steps over the negative real axis change the branch of the angle.
+    path, step = np.nonzero(below[:, 1:] != below[:, :-1])
+    p, q = before[path, step], after[path, step]
+    behind = (p.real * q.imag - q.real * p.imag > 0.0) == (p.imag >= 0.0)
+    turns = np.bincount(path[behind], np.where(p.imag >= 0.0, 1.0, -1.0)[behind], len(points))
+    return np.asarray(np.angle(points[:, -1]) - np.angle(points[:, 0]) + 2.0 * np.pi * turns)
 
 
 def cloud(
