@@ -57,6 +57,11 @@ class Ground:
     noticed: tuple[Finding, ...] = ()
     closed: bool = False
 
+    @property
+    def unexplained(self) -> float:
+        """Share of the speed's variance that the point leaves."""
+        return self.first.rss / _spread(self.layout.speed)
+
 
 @dataclass(frozen=True, slots=True, eq=False)
 class Found:
@@ -81,7 +86,7 @@ def ground(record: LoopRecord, hold: Hold | None = None) -> Ground:
     Raises NotIdentifiable.
     """
     base = _ground(record, hold)
-    if hold != "zero-order" and _unexplained(base) >= PLAIN:
+    if hold != "zero-order" and base.unexplained >= PLAIN:
         base = _where_seen(record, base, hold)
     runs = automatic(base.record)
     return replace(base, closed=bool(runs) and feedback(*map(list, zip(*runs, strict=True))))
@@ -101,12 +106,8 @@ def _where_seen(record: LoopRecord, whole: Ground, hold: Hold | None) -> Ground:
         left = shorter.excluded[len(record.excluded)]
         span = (float(record.time[left.start]), float(record.time[left.stop - 1]))
         tries.append(replace(base, unseen=span))
-    best = min(_unexplained(b) for b in tries)
-    return next(b for b in tries if _unexplained(b) <= AGREE * best)
-
-
-def _unexplained(base: Ground) -> float:
-    return base.first.rss / _spread(base.layout.speed)
+    best = min(b.unexplained for b in tries)
+    return next(b for b in tries if b.unexplained <= AGREE * best)
 
 
 def _ground(record: LoopRecord, hold: Hold | None) -> Ground:

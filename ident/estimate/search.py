@@ -54,13 +54,26 @@ def search(layout: Layout) -> Place:
 
 def _starts(layout: Layout) -> tuple[Layout, tuple[Start, ...]]:
     """Starts from the first rows alone, where those say it plainly, else from all of them; and the rows looked at."""
-    if layout.rows > 2 * ENOUGH:
-        head, rows = layout.leading(ENOUGH)
-        if head is not None and float(np.ptp(np.concatenate([s.command for s in head.stretches]))) > 0.0:
-            found = starts(head)
-            if rows * found[0].explained > PLAIN * (1.0 - found[0].explained):
-                return head, found
+    head = leading_part(layout)
+    if head is not None:
+        found = starts(head)
+        if says_plainly(head, found[0].explained):
+            return head, found
     return layout, starts(layout)
+
+
+def leading_part(layout: Layout) -> Layout | None:
+    """The first rows of a layout that has many more, where the command moves in them."""
+    if layout.rows <= 2 * ENOUGH:
+        return None
+    head, _ = layout.leading(ENOUGH)
+    moves = head is not None and float(np.ptp(np.concatenate([s.command for s in head.stretches]))) > 0.0
+    return head if moves else None
+
+
+def says_plainly(layout: Layout, explained: float) -> bool:
+    """Whether rows of which a model explains this share of the speed's variance are enough for a first look."""
+    return layout.rows * explained > PLAIN * (1.0 - explained)
 
 
 def settle(layout: Layout, place: Place) -> tuple[Point, Cells | None]:

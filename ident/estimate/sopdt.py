@@ -20,6 +20,7 @@ from ident.estimate.layout import Layout
 from ident.estimate.noticed import findings
 from ident.estimate.point import Point
 from ident.estimate.refine import refine
+from ident.estimate.search import leading_part, says_plainly
 from ident.estimate.second_order import SecondOrder
 from ident.estimate.start import thinning
 from ident.estimate.uncertainty import (
@@ -43,15 +44,16 @@ RATIOS = (0.05, 0.2, 0.5, 2.0)
 TRIED = 2  # best starts descended
 ROUGHLY = 1e-2  # of one residual's variance: enough to choose between them
 EQUAL = 3.84  # of a residual's variance: less than this in the sum of squares does not tell lags from equal ones
-FAR = 4.0  # times EQUAL, by the slopes alone: plainly not equal
+FAR = 4.0  # times EQUAL, by the slopes or by the coarse rows alone: plainly not equal
 CLOSELY = 1e-4  # of one residual's variance: a hundredth of a standard deviation
 ANGLES = 720
 
 
 def fit_sopdt(base: Ground) -> Fit:
     """Least-squares SOPDT. Raises NotIdentifiable where neither its gain nor K/(T1 + T2) comes out."""
-    at = _search(base)
-    found = with_noise(base, _equal_if_untold(base, at))
+    coarse = _coarse(base)
+    rough = _search(base, coarse)
+    found = with_noise(base, _equal_if_untold(base, _refined(base, coarse, rough), coarse, rough))
     layout, at = found.layout, found.at
     shape = at.shape
     assert isinstance(shape, SecondOrder)
@@ -87,19 +89,27 @@ def fit_sopdt(base: Ground) -> Fit:
     )
 
 
-def _search(base: Ground) -> Point:
-    """The best of a few starts around the first-order fit, descended on block means before the full record."""
-    total = base.first.shape.lags + base.first.L
+def _coarse(base: Ground) -> Layout:
+    """Block means of the rows, the first of them alone where those are enough."""
     even = base.layout.evened()
-    blocks = thinning(even)
-    coarse = even.thinned(blocks)
+    coarse = even.thinned(thinning(even))
+    head = leading_part(coarse)
+    return head if head is not None and says_plainly(head, 1.0 - base.unexplained) else coarse
+
+
+def _search(base: Ground, coarse: Layout) -> Point:
+    """The best of a few starts around the first-order fit, descended on the coarse rows."""
+    total = base.first.shape.lags + base.first.L
     delays = sorted({delay * base.first.L for delay in DELAYS})
     starts = [(SecondOrder(total - L, ratio * (total - L) ** 2), L) for L in delays for ratio in RATIOS]
     starts.sort(key=lambda start: _unexplained(coarse, *start))
-    descended = [refine(coarse, shape, L, ROUGHLY) for shape, L in starts[:TRIED]]
-    best = min(descended, key=lambda p: p.rss)
+    return min((refine(coarse, shape, L, ROUGHLY) for shape, L in starts[:TRIED]), key=lambda p: p.rss)
+
+
+def _refined(base: Ground, coarse: Layout, rough: Point) -> Point:
+    """The same on every row."""
     # A mean of rows stands half a block later than its first row, at which its command begins.
-    return refine(base.layout, best.shape, best.L + 0.5 * (blocks - 1) * even.step, CLOSELY)
+    return refine(base.layout, rough.shape, rough.L + 0.5 * (coarse.step - base.layout.step), CLOSELY)
 
 
 def _unexplained(layout: Layout, shape: SecondOrder, L: float) -> float:
@@ -111,7 +121,7 @@ def _unexplained(layout: Layout, shape: SecondOrder, L: float) -> float:
     return float(speed @ speed) - (float(answer @ speed) ** 2 / size if size > 0.0 else 0.0)
 
 
-def _equal_if_untold(base: Ground, at: Point) -> Point:
+def _equal_if_untold(base: Ground, at: Point, coarse: Layout, rough: Point) -> Point:
     """Equal lags in place of nearly equal or faintly ringing ones that the sum of squares does not tell from them."""
     S = at.shape.lags
     assert isinstance(at.shape, SecondOrder)
@@ -121,7 +131,11 @@ def _equal_if_untold(base: Ground, at: Point) -> Point:
     information = inverse_gram(at.gram)[2, 2]
     if apart**2 > FAR * EQUAL * information * at.rss / base.layout.rows:
         return at
-    equal = refine(base.layout, SecondOrder(S, S * S / 4.0, True), at.L)
+    lags = SecondOrder(S, S * S / 4.0, True)
+    # Most that are plainly unlike are so in the coarse rows already.
+    if refine(coarse, lags, rough.L, ROUGHLY).rss - rough.rss > FAR * EQUAL * rough.rss / coarse.rows:
+        return at
+    equal = refine(base.layout, lags, at.L)
     return equal if equal.rss - at.rss <= EQUAL * at.rss / base.layout.rows else at
 
 
