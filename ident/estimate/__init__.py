@@ -1,5 +1,6 @@
 """The fits: start values, separable least squares, dead-time profile, what was noticed."""
 
+from ident.estimate.applied import applied
 from ident.estimate.dispatch import fit_all
 from ident.estimate.driven import Driven
 from ident.estimate.fit import DeadTimeProfile, Fit
@@ -8,4 +9,15 @@ from ident.estimate.ground import Hold
 from ident.estimate.installed import Recovered, recover
 from ident.estimate.plausible import plausible
 
-__all__ = ["DeadTimeProfile", "Driven", "Fit", "Friction", "Hold", "Recovered", "fit_all", "plausible", "recover"]
+__all__ = [
+    "DeadTimeProfile",
+    "Driven",
+    "Fit",
+    "Friction",
+    "Hold",
+    "Recovered",
+    "applied",
+    "fit_all",
+    "plausible",
+    "recover",
+]

@@ -8,10 +8,12 @@ linear fit gives half the gain where friction takes half the command. (Armstrong
 from __future__ import annotations
 
 import math
+from collections.abc import Callable
 from dataclasses import replace
 
 import numpy as np
 
+from ident.estimate.coloured import coloured
 from ident.estimate.columns import rubbed
 from ident.estimate.crossings import follow
 from ident.estimate.first_order import FirstOrder
@@ -34,8 +36,13 @@ ROUGHLY = 1e-3  # of one residual's variance: enough while the direction is not 
 UNLIKE = 0.05  # P/S^2 of the unlike lags at which a second one is looked for
 
 
-def turning(layout: Layout, at: Point, unit: str) -> tuple[Layout, Point, tuple[Finding, ...]]:
+def turning(
+    layout: Layout, at: Point, unit: str, closed: Callable[[], bool]
+) -> tuple[Layout, Point, tuple[Finding, ...]]:
     """The layout and the first-order point with dry friction where the data ask for it, else both as they are.
+
+    closed  whether the command answers to the speed; asked for only where it matters. The direction then goes with the
+            noise as the command does, and counts only beside a model of the noise.
 
     A direction that *helps* the motion is no friction; a gain that varies with level does that, and is a finding.
     """
@@ -44,9 +51,10 @@ def turning(layout: Layout, at: Point, unit: str) -> tuple[Layout, Point, tuple[
     rubbing = rub(layout, at)
     if rubbing is None:
         return layout, at, ()
-    if clear_level(*rubbing) > CLEAR and survives_second_lag(*rubbing):
+    feedback = closed()
+    if clear_level(*(coloured(*rubbing) if feedback else rubbing)) > CLEAR and survives_second_lag(*rubbing):
         return *rubbing, (rubs(*rubbing, unit),)
-    return layout, at, level_varies(layout, at, unit) if clear_level(*rubbing) < 0.0 else ()
+    return layout, at, level_varies(layout, at, unit) if not feedback and clear_level(*rubbing) < 0.0 else ()
 
 
 def _asked_for(layout: Layout, at: Point) -> bool:
@@ -88,7 +96,7 @@ def clear_level(layout: Layout, at: Point) -> float:
     """The level of friction in standard deviations, above 0 where it opposes the motion; 0 where it is negligible."""
     if at.K == 0.0:
         return 0.0
-    level, std = mean_level(layout, at, noise_colour(layout.parts(at.raw)))
+    level, std = mean_level(layout, at, noise_colour(layout.parts(at.raw)) if layout.colour.white else layout.colour)
     command = np.concatenate([s.command[s.skip :] for s in layout.stretches])
     if abs(level) < NOTABLE * float(command.std()):
         return 0.0

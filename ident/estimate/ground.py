@@ -9,6 +9,7 @@ from typing import Literal
 import numpy as np
 
 from ident.errors import NotIdentifiable
+from ident.estimate.broken import Span, broken, told
 from ident.estimate.by_hand import automatic
 from ident.estimate.cells import Cells
 from ident.estimate.coloured import coloured
@@ -31,6 +32,7 @@ Hold = Literal["zero-order", "linear"]
 # Taking the noise's colour into account costs some of the simulated fit: up to 1.4 times its sum of squares in
 # simulated loops with slow disturbances. Past this factor the rest is not noise but dynamics that the shape lacks.
 WORTH = 2.0
+LOOKS = 2  # for broken spans
 MOVING = 0.5  # share of rows with a move, above which a command may be smooth
 SMOOTH = 0.7  # mean square of the second differences over that of the first; 2 for noise and for steps
 TOLERATED = 1.3  # times the held sum of squares, for a smooth command
@@ -88,8 +90,31 @@ def ground(record: LoopRecord, hold: Hold | None = None) -> Ground:
     base = _ground(record, hold)
     if hold != "zero-order" and base.unexplained >= PLAIN:
         base = _where_seen(record, base, hold)
-    runs = automatic(base.record)
-    return replace(base, closed=bool(runs) and feedback(*map(list, zip(*runs, strict=True))))
+    base = _where_whole(base, hold)
+    return replace(base, closed=_closed(base.record))
+
+
+def _closed(record: LoopRecord) -> bool:
+    runs = automatic(record)
+    return bool(runs) and feedback(*map(list, zip(*runs, strict=True)))
+
+
+def _where_whole(base: Ground, hold: Hold | None) -> Ground:
+    """The ground of the rows that are not broken; found once more with those left out, as they bend the first look."""
+    left_out: tuple[Span, ...] = ()
+    for _ in range(LOOKS):
+        more = broken(base.layout, base.first)
+        if not more:
+            break
+        record = replace(base.record, excluded=(*base.record.excluded, *(s.exclusion for s in more)))
+        try:
+            shorter = _ground(record, hold)
+        except NotIdentifiable:
+            break
+        left_out = (*left_out, *more)
+        base = replace(shorter, unseen=base.unseen)
+    noticed = told(tuple(sorted(left_out, key=lambda s: s.start)), base.record.speed_unit)
+    return replace(base, noticed=(*base.noticed, *noticed)) if noticed else base
 
 
 def _where_seen(record: LoopRecord, whole: Ground, hold: Hold | None) -> Ground:
@@ -121,8 +146,11 @@ def _ground(record: LoopRecord, hold: Hold | None) -> Ground:
     plain = at
     layout, at = _between_samples(layout, at, hold)
     layout, at = allow_drift(layout, at)
-    layout, at, noticed = turning(layout, at, record.command_unit)
-    return Ground(record, layout, at, window if at is plain else None, noticed=noticed)
+    base = Ground(record, layout, at, window if at is plain else None)
+    rubbing, at, noticed = turning(layout, at, record.command_unit, lambda: _closed(record))
+    if at is base.first:
+        return replace(base, noticed=noticed)
+    return replace(base, layout=rubbing, first=at, window=None, noticed=noticed)
 
 
 def with_noise(base: Ground, at: Point) -> Found:

@@ -19,7 +19,8 @@ SMOOTHED = 0.1  # of T + L: over so long the speed is averaged before it is call
 CLEAR = 4.0  # standard deviations of that average
 SLIGHT = 0.01  # of the usual speed: slower is standing in any case
 LINGERS = 3.0  # times as long as the speed takes through that band on its way: longer is standing
-BOTH = 0.05  # of the rows: what each direction must have at least
+TURNS = 0.2  # of the usual speed: slower may be noise about standstill
+BOTH = 0.05  # of the rows: what each direction must have at least beyond that
 BREAKAWAY = 0.4  # of T + L after standstill: over so long the direction of breaking away is seen
 LEAD = 4.0  # times T + L of commands kept before each span of motion
 USUAL = 0.9  # quantile of the speed's size that is called the usual speed
@@ -46,7 +47,7 @@ def motion(layout: Layout, lag: float) -> Motion | None:
     absolute = [s.speed + layout.speed_level for s in layout.stretches]
     whole = np.concatenate(absolute)
     usual = float(np.quantile(np.abs(whole), USUAL))
-    if min(np.mean(whole > SLIGHT * usual), np.mean(whole < -SLIGHT * usual)) < BOTH:
+    if min(np.mean(whole > TURNS * usual), np.mean(whole < -TURNS * usual)) < BOTH:
         return None
     width = max(int(SMOOTHED * lag / layout.step), 1)
     sense = np.concatenate([_averaged(part, width) for part in absolute])

@@ -5,6 +5,7 @@ from ident.judge.choice import Choice, believed, choose, fit
 from ident.judge.crosscheck import CrossCheck, CrossChecks, cross_check
 from ident.judge.excitation import Excitation, excitation
 from ident.judge.information import unlogged_setpoint
+from ident.judge.load_moved import load_moved
 from ident.judge.operation import Operated, Operation, mixed, operation, operations
 from ident.judge.oscillation import sustained
 
@@ -22,6 +23,7 @@ __all__ = [
     "cross_check",
     "excitation",
     "fit",
+    "load_moved",
     "mixed",
     "operation",
     "operations",

@@ -10,7 +10,7 @@ from typing import Any
 import numpy as np
 
 from ident.errors import NotIdentifiable, Refused
-from ident.estimate import Fit, Hold, Recovered, fit_all, plausible, recover
+from ident.estimate import Fit, Hold, Recovered, applied, fit_all, plausible, recover
 from ident.findings import Finding
 from ident.judge import (
     CrossChecks,
@@ -19,6 +19,7 @@ from ident.judge import (
     choose,
     cross_check,
     excitation,
+    load_moved,
     mixed,
     operations,
     sustained,
@@ -68,7 +69,8 @@ def analyse(
     seed           of every random draw: the same record and options give the same report
     subspace       cross-check the model by a subspace method too, which is slow to load the first time
     installed      settings told to be in the machine; compared with those that a closed-loop log shows
-    command_limits (low, high) of the command, where known: a test that is advised stays within them
+    command_limits (low, high) of the command, where known: a test that is advised stays within them, and a logged
+                   command beyond them is taken as having been cut there
     on_stage       called with fitting, judging, tuning as each begins; tuning only where there is a model
 
     A record with too little in it gives a report without fits that says so. Raises Refused for options without
@@ -87,11 +89,13 @@ def analyse(
     }
     found: list[Finding] = []
     on_stage("fitting")
-    fits, refused = _fit(record, model, hold)
+    reached, limited = applied(record, command_limits)
+    found += limited
+    fits, refused = _fit(reached, model, hold)
     on_stage("judging")
     guess = fits
     if fits:
-        fits, refused = believed(record, fits)
+        fits, refused = believed(reached, fits)
     choice = choose(fits, model == "auto") if fits else None
     fitted = fits[choice.index] if choice else None
     recovered, seen = recover(record)
@@ -100,7 +104,7 @@ def analyse(
     allowed: Cloud | None = None
     checked = CrossChecks((), ())
     if fitted is not None:
-        checked = cross_check(record, fitted, subspace=subspace)
+        checked = cross_check(reached, fitted, subspace=subspace)
         found += [*assumed, *unlogged_setpoint(fitted), *checked.findings]
         on_stage("tuning")
         timing = {"period": held, "compute_delay": compute_delay}
@@ -116,7 +120,8 @@ def analyse(
     if in_machine is not None and fitted is not None:
         in_machine = replace(in_machine, predicted=installed_outcome(in_machine, fitted, held, compute_delay))
     operated = operations(record, recovered)
-    found += [*mixed(record, operated), *sustained(record), *seen, *compared]
+    swings = sustained(record)
+    found += [*mixed(record, operated), *swings, *(() if swings else load_moved(record, operated)), *seen, *compared]
     moved = excitation(record, refused)
     advised = None if moved.sufficient else advice(record, guess[0] if guess else None, command_limits)
     tunings = tuple(
