@@ -102,13 +102,13 @@ def _all_decades(loop: OpenLoop) -> Floats:
 def _start(w: Floats, response: Complex) -> tuple[int, float]:
     # One decade apart, so that the slope is the number of integrators.
     slope = -float(np.log10(np.abs(response[COARSE_PER_DECADE] / response[0])))
-    order = round(slope)
-    if abs(slope - order) > 0.05:
+    if not np.isfinite(slope) or abs(slope - round(slope)) > 0.05:
         raise Refused(
             "low-frequency-unclear",
             f"The loop has no clear slope at {w[0]:.3g} rad/s, so stability cannot be counted; "
             "frequencies must be in rad/s and the plant settled at that frequency.",
         )
+    order = round(slope)
     return order, float((response[0] * (1j * w[0]) ** order).real)
 
 

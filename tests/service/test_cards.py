@@ -80,8 +80,13 @@ def test_a_card_as_found_on_a_given_plant(client: TestClient) -> None:
         ({"parts": PARTS | {"R1": -1.0}, "plant": PLANT}, 422, "invalid-body"),
         ({"parts": PARTS, "plant": PLANT | {"K": 0.0}}, 422, "plant-out-of-range"),
         ({"parts": PARTS, "plant": PLANT, "R_low": 1e5, "R_high": 1e4, "Ms": 1.2}, 422, "parts-out-of-range"),
+        # Found by tests/service/test_openapi.py: the loop's gain overflows.
+        ({"parts": {"R1": 6.492146439582028e-266, "R2": 301168866147190.1, "C2": 645905482983618.5},
+          "plant": {"K": -3.951571883940449e+16, "T": 2.5459434942820748e-79, "L": 507456368268770.2},
+          "speed_volts": 73451439948605.05, "command_volts": 1e6, "C_high": 822062546219964.6},
+         422, "low-frequency-unclear"),
     ],
-)
+)  # fmt: skip
 def test_what_cannot_be_judged_is_refused(client: TestClient, body: dict[str, Any], status: int, code: str) -> None:
     expect.answer(client.post("/v1/cards", json=body), expected=status, code=code)
 
