@@ -31,6 +31,7 @@ from ident.findings import Finding
 CLEAR = 6.0  # standard deviations of the level, the residuals' colour accounted for
 NOTABLE = 0.02  # of the command's std: less friction changes no setting
 SLOW = 0.2  # of the speed's rms: slower rows may stand, and do not count when friction is looked for
+BOTH_WAYS = 0.02  # share of the rows that must be faster than that in either direction
 STARTS = (1.0, 2.0)  # times the linear fit's T: friction makes a motor look quicker than it is
 ROUGHLY = 1e-3  # of one residual's variance: enough while the direction is not settled
 UNLIKE = 0.05  # P/S^2 of the unlike lags at which a second one is looked for
@@ -60,9 +61,10 @@ def turning(
 def _asked_for(layout: Layout, at: Point) -> bool:
     """Whether the motor turns both ways, and its direction explains some of what the linear fit leaves as it moves."""
     whole = np.concatenate([s.speed for s in layout.stretches]) + layout.speed_level
-    if float(whole.min()) >= 0.0 or float(whole.max()) <= 0.0:
-        return False
     slow = SLOW * float(np.sqrt(np.mean(whole**2)))
+    # Noise about a standstill turns both ways as well.
+    if min(float(np.mean(whole > slow)), float(np.mean(whole < -slow))) < BOTH_WAYS:
+        return False
     senses = np.split(np.clip(whole / slow, -1.0, 1.0), np.cumsum([s.rows for s in layout.stretches])[:-1])
     seen = replace(
         layout, stretches=tuple(replace(s, direction=d) for s, d in zip(layout.stretches, senses, strict=True))
