@@ -66,7 +66,7 @@ def uncertainty(layout: Layout, at: Point, colour: Colour) -> Uncertainty:
         true = white
     else:
         true = coloured_covariance(to_logs @ at.jacobian, colour)[: k + 2, : k + 2]
-    true = true * rows / max(rows - known, 1)
+    true = true * _spectrum_unknown(rows, colour.order) * rows / max(rows - known, 1)
     if layout.on_change:
         # A report tells the speed no better than a reading rounded to the deadband would, and the dead time no finer
         # than the gaps. Reports that were picked by their noise alternate about the model: nothing is gained by that.
@@ -77,6 +77,18 @@ def uncertainty(layout: Layout, at: Point, colour: Colour) -> Uncertainty:
     back[0, 1] = 1.0  # log|K| = log|K/T| + log T
     inflation = float(true[-1, -1] / white[-1, -1]) if white[-1, -1] > 0 else 1.0
     return Uncertainty(back @ true @ back.T, inflation)
+
+
+def _spectrum_unknown(rows: int, order: int) -> float:
+    """What the noise's own spectrum, estimated with so many terms, adds to a variance: that of a t-distribution.
+
+    At low frequency its logarithm has the variance 4 order/rows (Berk 1974, Annals of Statistics 2, 489-502), as that
+    of a chi-squared with rows/(2 order) degrees of freedom, which the noise model keeps at ten or more.
+    """
+    if order == 0:
+        return 1.0
+    degrees = rows / (2.0 * order)
+    return degrees / (degrees - 2.0)
 
 
 def log_estimate(value: float, std_log: float, unit: str) -> Estimate:
