@@ -1,7 +1,7 @@
 """Closed loops that nobody moves: does a model or a tuning ever come out?  python -m tests.benchmarks.excitation [RUNS]
 
-PI loops around drawn plants, disturbed by load and measurement noise alone (tests/reference/closed_loop.py), some with
-a coarsely written command; 2,000 to 20,000 rows. The bar: never a model, advice every time.
+PI and PID loops around drawn plants, disturbed by load and measurement noise alone (tests/reference/closed_loop.py), some
+with a coarsely written command; 2,000 to 20,000 rows. The bar: never a model, advice every time.
 """
 
 from __future__ import annotations
@@ -20,6 +20,7 @@ def drawn(rng: np.random.Generator) -> Loop:
     h = T * rng.choice([0.02, 0.05, 0.1])
     L = max(round(rng.uniform(0.1, 0.6) * T / (h / SUBSTEPS)), 1) * h / SUBSTEPS
     K = np.exp(rng.uniform(-1.0, 4.0))
+    Td = float(rng.choice([0.0, rng.uniform(0.1, 0.4)]) * L)
     return Loop(
         K,
         T,
@@ -32,6 +33,7 @@ def drawn(rng: np.random.Generator) -> Loop:
         load=rng.uniform(0.1, 1.0) / K,
         load_time=T * np.exp(rng.uniform(-3.0, 3.0)),
         setpoint_half_period=1e9,
+        Td=Td,
     )
 
 
@@ -40,10 +42,15 @@ def main(runs: int) -> None:
     seen: Counter[str] = Counter()
     for run in range(runs):
         loop = drawn(rng)
+        form = "PID" if loop.Td else "PI"
         time, command, speed, setpoint = next(iter(simulate(loop, 1, seed=run)))
         if rng.random() < 0.3:
             step = np.ptp(command) / rng.choice([20, 100, 500])
             command = np.round(command / step) * step
+        if not np.isfinite(speed).all() or np.abs(speed).max() > 1e6:
+            seen["unstable, left out"] += 1
+            continue
+        seen[form] += 1
         report = ident.analyse(ident.LoopRecord(time, command, speed, setpoint), subspace=False)
         seen["model"] += bool(report.fits)
         seen["tuning"] += bool(report.tunings)

@@ -1,4 +1,4 @@
-"""A PI loop around a FOPDT with a slow load disturbance, simulated step by step: logs for Monte Carlo checks."""
+"""A PI or PID loop around a FOPDT with a slow load disturbance, simulated step by step: logs for Monte Carlo checks."""
 
 from __future__ import annotations
 
@@ -12,7 +12,10 @@ SUBSTEPS = 5  # per period: the disturbance moves between samples too; the dead 
 
 @dataclass(frozen=True)
 class Loop:
-    """Plant K, T, L; period h s; rows; PI in the trapezoidal reading; noise and load standard deviations."""
+    """Plant K, T, L; period h s; rows; PI in the trapezoidal reading; noise and load standard deviations.
+
+    Td  s, of a derivative of the measured speed by backward difference through a lag of Td/10 or a period
+    """
 
     K: float
     T: float
@@ -25,6 +28,7 @@ class Loop:
     load: float
     load_time: float
     setpoint_half_period: float = 10.0
+    Td: float = 0.0
 
 
 def simulate(loop: Loop, runs: int, seed: int) -> Iterator[tuple[np.ndarray, np.ndarray, np.ndarray, np.ndarray]]:
@@ -40,13 +44,17 @@ def simulate(loop: Loop, runs: int, seed: int) -> Iterator[tuple[np.ndarray, np.
     pipe = np.zeros((delay + 1, runs))
     load = loop.load * rng.standard_normal(runs)
     U, Y = np.empty((loop.rows, runs)), np.empty((loop.rows, runs))
+    slope, last = np.zeros(runs), np.zeros(runs)
+    smooth = np.exp(-loop.h / max(loop.Td / 10.0, loop.h))
     at = 0
     for k in range(loop.rows):
         Y[k] = speed + loop.noise * rng.standard_normal(runs)
         error = setpoint[k] - Y[k]
         integral += loop.Kp * loop.h / (2.0 * loop.Ti) * (error + before)
         before = error
-        command = loop.Kp * error + integral
+        slope = smooth * slope + (1.0 - smooth) * (Y[k] - last) / loop.h
+        last = Y[k].copy()
+        command = loop.Kp * (error - loop.Td * slope) + integral
         U[k] = command
         for _ in range(SUBSTEPS):
             load = forget * load + loop.load * np.sqrt(1.0 - forget**2) * rng.standard_normal(runs)
