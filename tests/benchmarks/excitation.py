@@ -1,7 +1,8 @@
 """Closed loops that nobody moves: does a model or a tuning ever come out?  python -m tests.benchmarks.excitation [RUNS]
 
-PI and PID loops around drawn plants, disturbed by load and measurement noise alone (tests/reference/closed_loop.py), some
-with a coarsely written command; 2,000 to 20,000 rows. The bar: never a model, advice every time.
+PI and PID loops around drawn plants, disturbed by load and measurement noise alone
+(tests/reference/closed_loop.py), some with a coarsely written command; 2,000 to 20,000 rows. The bar:
+never a model, advice every time.
 """
 
 from __future__ import annotations
