@@ -23,6 +23,7 @@ TURNS = 0.2  # of the usual speed: slower may be noise about standstill
 BOTH = 0.05  # of the rows: what each direction must have at least beyond that
 BREAKAWAY = 0.4  # of T + L after standstill: over so long the direction of breaking away is seen
 LEAD = 4.0  # times T + L of commands kept before each span of motion
+MOST_TURNS = 1.0  # in T + L: more is noise about standstill
 USUAL = 0.9  # quantile of the speed's size that is called the usual speed
 
 Series = TypeVar("Series", Floats, Flags)
@@ -43,7 +44,7 @@ class Motion:
 
 
 def motion(layout: Layout, lag: float) -> Motion | None:
-    """How a motor moves, for a plant with T + L = `lag` s; None where it does not turn both ways."""
+    """How a motor moves, for a plant with T + L = `lag` s; None where it does not turn both ways, or only trembles."""
     absolute = [s.speed + layout.speed_level for s in layout.stretches]
     whole = np.concatenate(absolute)
     usual = float(np.quantile(np.abs(whole), USUAL))
@@ -51,6 +52,9 @@ def motion(layout: Layout, lag: float) -> Motion | None:
         return None
     width = max(int(SMOOTHED * lag / layout.step), 1)
     sense = np.concatenate([_averaged(part, width) for part in absolute])
+    clearly = sense[np.abs(sense) > TURNS * usual]
+    if np.count_nonzero(np.diff(clearly > 0.0)) * lag > MOST_TURNS * layout.duration:
+        return None
     band = max(CLEAR * _noise(whole) / math.sqrt(width), SLIGHT * usual)
     return Motion(sense, np.abs(sense) < band, 2.0 * band / usual * lag / layout.step, lag)
 
