@@ -25,7 +25,7 @@ from ident.estimate.refine import refine
 from ident.estimate.second_order import SecondOrder
 from ident.estimate.standstill import lingering, motion, moving
 from ident.evidence.colour import noise_colour
-from ident.evidence.normal import solve_normal
+from ident.evidence.normal import gram_of, solve_normal
 from ident.findings import Finding
 
 CLEAR = 6.0  # standard deviations of the level, the residuals' colour accounted for
@@ -70,13 +70,13 @@ def _asked_for(layout: Layout, at: Point) -> bool:
         layout, stretches=tuple(replace(s, direction=d) for s, d in zip(layout.stretches, senses, strict=True))
     )
     moves = np.abs(layout.speed + layout.speed_level) > slow
-    rows = np.vstack((at.jacobian, rubbed(seen, at.shape)[0], at.raw))[:, moves]
-    gram = rows @ rows.T
+    # Slow rows count for nothing.
+    gram = gram_of(np.vstack((at.jacobian, rubbed(seen, at.shape)[0], at.raw)) * moves)
     onto = solve_normal(gram[:-2, :-2], gram[:-2, -2])
     own = float(gram[-2, -2] - onto @ gram[:-2, -2])
     left = float(gram[-1, -1] - gram[:-2, -1] @ solve_normal(gram[:-2, :-2], gram[:-2, -1]))
     toward = float(gram[-2, -1] - onto @ gram[:-2, -1])
-    return own > 0.0 and toward**2 / own > CLEAR**2 * left / rows.shape[1]
+    return own > 0.0 and toward**2 / own > CLEAR**2 * left / np.count_nonzero(moves)
 
 
 def rub(layout: Layout, at: Point) -> tuple[Layout, Point] | None:
