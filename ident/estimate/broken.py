@@ -119,6 +119,8 @@ def _repeats(speed: Floats, level: float) -> list[tuple[int, int]]:
     """Runs of one value, far longer than usual and not at standstill."""
     edges = np.concatenate(([0], np.flatnonzero(np.diff(speed)) + 1, [len(speed)]))
     lengths = np.diff(edges)
+    if int(lengths.max()) < STUCK:
+        return []  # as in most logs
     least = max(STUCK, ODD * float(np.quantile(lengths, 0.95)))
     still = np.abs(speed[edges[:-1]] + level) <= 0.01 * float(np.abs(speed + level).max())
     long = np.flatnonzero((lengths >= least) & ~still)

@@ -76,7 +76,7 @@ def _asked_for(layout: Layout, at: Point) -> bool:
     own = float(gram[-2, -2] - onto @ gram[:-2, -2])
     left = float(gram[-1, -1] - gram[:-2, -1] @ solve_normal(gram[:-2, :-2], gram[:-2, -1]))
     toward = float(gram[-2, -1] - onto @ gram[:-2, -1])
-    return own > 0.0 and toward**2 / own > CLEAR**2 * left / np.count_nonzero(moves)
+    return own > 0.0 and toward**2 / own > CLEAR**2 * left / int(np.count_nonzero(moves))
 
 
 def rub(layout: Layout, at: Point) -> tuple[Layout, Point] | None:
