@@ -4,6 +4,8 @@ from __future__ import annotations
 
 from collections.abc import Iterator
 
+import numpy as np
+
 from ident.estimate.asymmetry import up_and_down
 from ident.estimate.first_order import LONGEST_T
 from ident.estimate.ground import Found
@@ -108,12 +110,13 @@ def _unseen(found: Found) -> Iterator[Finding]:
 def _drift(layout: Layout, at: Point) -> Iterator[Finding]:
     if layout.drifting:
         slope = float(at.nuisance[1])
+        over_log = slope * float(np.ptp(layout.clock))
         yield Finding(
             "slow-drift",
             "warning",
-            f"The speed drifts by {slope * layout.duration:.3g} over this log along a straight line that the command "
+            f"The speed drifts by {over_log:.3g} of its units over this log along a straight line that the command "
             "does not explain (warming, a load that fills, a supply that sags). The line was fitted beside the model.",
-            {"slope_per_s": slope, "over_log": slope * layout.duration},
+            {"slope_per_s": slope, "over_log": over_log},
         )
 
 

@@ -21,8 +21,8 @@ TRIED = 40  # networks whose margins are computed in full before the search give
 N_PID = 10.0  # common practice, no source: the damping resistor is much smaller than the resistor it sits beside
 
 INVERSIONS = (
-    "The network inverts once. With the error amplifier taking speed minus setpoint the command has the right sign{}; "
-    "with setpoint minus speed put one inverter of gain 1 behind the network."
+    "The network inverts once. With the error amplifier taking {} the command has the right sign for this plant{}; "
+    "with {} put one inverter of gain 1 behind the network."
 )
 CARD_CAUTIONS = (
     "Clamp the output (Zener diodes or a diode clamp across R2 and C2) at the command's limits: the clamp is also what "
@@ -159,9 +159,9 @@ def _report(
         high_gain=card.high_gain,
         corners_hz=card.corners_hz,
         spread=about,
-        inversions=INVERSIONS.format(
-            " for this plant" if card.sign > 0 else " once more inverted (the plant's is < 0)"
-        ),
+        inversions=INVERSIONS.format("speed minus setpoint", "", "setpoint minus speed")
+        if card.sign > 0
+        else INVERSIONS.format("setpoint minus speed", ", whose gain is negative", "speed minus setpoint"),
         wanted=wanted,
         wanted_Ms=target,
         change=change,

@@ -15,8 +15,9 @@ from ident.realise.difference import Difference, Row, Rule, substitute
 FilterOn = Literal["speed", "derivative"]
 
 BUMPLESS = (
-    "At the switch from manual set I = u_manual - Kp (b r - y) - D with the filters run in on the measured speed, so "
-    "that the first output is the manual one. When Kp changes while running, add (Kp_old - Kp_new) e to I."
+    "I is the integral part of the command, D the derivative part. At the switch from manual set "
+    "I = u_manual - Kp (b r - y) - D with the filters run in on the measured speed, so that the first output "
+    "is the manual one. When Kp changes while running, add (Kp_old - Kp_new) e to I."
 )
 
 
