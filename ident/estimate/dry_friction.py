@@ -30,6 +30,7 @@ from ident.findings import Finding
 
 CLEAR = 6.0  # standard deviations of the level, the residuals' colour accounted for
 NOTABLE = 0.02  # of the command's std: less friction changes no setting
+GLANCE = 0.25 * NOTABLE  # the same by the linear fit's slopes alone: less is not looked into
 SLOW = 0.2  # of the speed's rms: slower rows may stand, and do not count when friction is looked for
 BOTH_WAYS = 0.02  # share of the rows that must be faster than that in either direction
 STARTS = (1.0, 2.0)  # times the linear fit's T: friction makes a motor look quicker than it is
@@ -76,7 +77,11 @@ def _asked_for(layout: Layout, at: Point) -> bool:
     own = float(gram[-2, -2] - onto @ gram[:-2, -2])
     left = float(gram[-1, -1] - gram[:-2, -1] @ solve_normal(gram[:-2, :-2], gram[:-2, -1]))
     toward = float(gram[-2, -1] - onto @ gram[:-2, -1])
-    return own > 0.0 and toward**2 / own > CLEAR**2 * left / int(np.count_nonzero(moves))
+    if own <= 0.0 or toward**2 / own <= CLEAR**2 * left / int(np.count_nonzero(moves)):
+        return False
+    # In a very long log next to nothing is clear.
+    command = np.concatenate([s.command[s.skip :] for s in layout.stretches])
+    return abs(toward) > GLANCE * own * abs(at.K) * float(command.std())
 
 
 def rub(layout: Layout, at: Point) -> tuple[Layout, Point] | None:
