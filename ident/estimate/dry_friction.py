@@ -23,7 +23,7 @@ from ident.estimate.levels import level_varies
 from ident.estimate.point import Point
 from ident.estimate.refine import refine
 from ident.estimate.second_order import SecondOrder
-from ident.estimate.standstill import lingering, motion, moving
+from ident.estimate.standstill import lingering, motion, moving, noise
 from ident.evidence.colour import noise_colour
 from ident.evidence.normal import gram_of, solve_normal
 from ident.findings import Finding
@@ -65,6 +65,9 @@ def _asked_for(layout: Layout, at: Point) -> bool:
     slow = SLOW * float(np.sqrt(np.mean(whole**2)))
     # Noise about a standstill turns both ways as well.
     if min(float(np.mean(whole > slow)), float(np.mean(whole < -slow))) < BOTH_WAYS:
+        return False
+    # Where noise alone passes for motion the direction is not known.
+    if noise(whole) > slow:
         return False
     senses = np.split(np.clip(whole / slow, -1.0, 1.0), np.cumsum([s.rows for s in layout.stretches])[:-1])
     seen = replace(

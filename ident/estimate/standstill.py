@@ -55,7 +55,7 @@ def motion(layout: Layout, lag: float) -> Motion | None:
     clearly = sense[np.abs(sense) > TURNS * usual]
     if np.count_nonzero(np.diff(clearly > 0.0)) * lag > MOST_TURNS * layout.duration:
         return None
-    band = max(CLEAR * _noise(whole) / math.sqrt(width), SLIGHT * usual)
+    band = max(CLEAR * noise(whole) / math.sqrt(width), SLIGHT * usual)
     return Motion(sense, np.abs(sense) < band, 2.0 * band / usual * lag / layout.step, lag)
 
 
@@ -160,7 +160,7 @@ def _averaged(values: Floats, width: int) -> Floats:
     return np.asarray(np.convolve(values, ones, "same") / np.convolve(np.ones(len(values)), ones, "same"))
 
 
-def _noise(speed: Floats) -> float:
+def noise(speed: Floats) -> float:
     """Std of the noise from row to row, by the middle of the second differences."""
     return 1.4826 * float(np.median(np.abs(np.diff(speed, 2)))) / math.sqrt(6.0)
 
