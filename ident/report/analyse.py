@@ -26,13 +26,13 @@ from ident.judge import (
     unlogged_setpoint,
 )
 from ident.loop import PidSettings
-from ident.realise import realise
 from ident.record import LoopRecord
 from ident.report.cautions import CAUTIONS
 from ident.report.curves import curves
 from ident.report.installed import installed_loop, installed_outcome, installed_report
 from ident.report.log import log_info, record_info
-from ident.report.shape import FitReport, Report, TuningReport
+from ident.report.shape import FitReport, Report
+from ident.report.tunings import tuning_reports
 from ident.tune import Cloud, Proposals, cloud, propose
 
 PLANTS = 200  # drawn from the fit for the worst case
@@ -124,24 +124,17 @@ def analyse(
     found += [*mixed(record, operated), *swings, *(() if swings else load_moved(record, operated)), *seen, *compared]
     moved = excitation(record, refused)
     advised = None if moved.sufficient else advice(record, guess[0] if guess else None, command_limits)
-    tunings = tuple(
-        TuningReport(
-            t.method,
-            t.form,
-            t.settings,
-            t.margins,
-            allowed.worst_case(t.settings) if allowed and t.margins.stable else None,
-            t.predicted,
-            realise(
-                t.settings,
-                fitted if proposal and i == proposal.recommended else None,
-                period=held,
-                compute_delay=compute_delay,
-                add_half=t.margins,
-            ),
-            t.findings,
-        )
-        for i, t in enumerate(proposal.tunings if proposal else ())
+    tunings = tuning_reports(
+        record,
+        proposal,
+        fits,
+        choice.index if choice else None,
+        allowed,
+        target=Ms,
+        command_limits=command_limits,
+        seed=seed,
+        period=held,
+        compute_delay=compute_delay,
     )
     return Report(
         engine_version=_engine(),

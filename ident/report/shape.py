@@ -14,7 +14,7 @@ from ident.findings import Finding
 from ident.judge import Advice, CrossCheck, Excitation, Operation
 from ident.loop import Margins, PidSettings
 from ident.realise import Realisations
-from ident.tune import Predicted, Rule, WorstCase
+from ident.tune import LimitedOutcome, Predicted, Rule, WorstCase
 
 REPORT_VERSION = "1"
 
@@ -81,6 +81,9 @@ class TuningReport:
     """One proposal: settings, the margins they have, the predicted outcome, and what to type for them.
 
     realisations  with coefficients for the recommended proposal alone
+    limited       a setpoint step as large as the log's own within the command's limits; None where those are not known
+    on_other_fits max(Ms, Mt) of these settings on the fits that were not selected, by model; None where the loop would
+                  be unstable
     """
 
     method: str
@@ -91,6 +94,8 @@ class TuningReport:
     predicted: Predicted | None
     realisations: Realisations | None
     findings: tuple[Finding, ...]
+    limited: LimitedOutcome | None = None
+    on_other_fits: dict[str, float | None] = field(default_factory=dict)
 
 
 @dataclass(frozen=True, slots=True)

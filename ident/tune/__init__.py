@@ -1,6 +1,7 @@
 """Tuning: settings under a robustness target, published rules, predicted responses, worst case."""
 
-from ident.tune.predict import predict
+from ident.tune.limited import LimitedOutcome, limited_outcome, saturates
+from ident.tune.predict import lagged, predict
 from ident.tune.predicted import LoadStep, Predicted, Response, SetpointStep
 from ident.tune.propose import Proposals, propose
 from ident.tune.rules import Rule
@@ -11,6 +12,7 @@ from ident.tune.worst_case import Cloud, WorstCase, cloud, worst_case
 
 __all__ = [
     "Cloud",
+    "LimitedOutcome",
     "LoadStep",
     "Predicted",
     "Proposals",
@@ -21,8 +23,11 @@ __all__ = [
     "WorstCase",
     "choose_setpoint_weight",
     "cloud",
+    "lagged",
+    "limited_outcome",
     "predict",
     "propose",
+    "saturates",
     "simc",
     "tune",
     "worst_case",
