@@ -8,7 +8,7 @@ from ident.loop import Margins, PidSettings, margins
 from ident.plants import Arx, Fopdt, Motor, Sopdt, UnderdampedSopdt, from_nameplate
 from ident.realise import CardReport, CardScale, Limits, Parts, Realisations, card_as_found, choose_card, realise
 from ident.record import LoopRecord, Preview, preview, previewed, read_csv
-from ident.report import Report, TuningReport, analyse, summary
+from ident.report import Report, TuningReport, allowed_again, analyse, summary
 from ident.tune import Proposals, Rule, Tuning, propose, tune
 from ident.watch import (
     Drift,
@@ -54,6 +54,7 @@ __all__ = [
     "Tuning",
     "TuningReport",
     "UnderdampedSopdt",
+    "allowed_again",
     "analyse",
     "card_as_found",
     "choose_card",

@@ -7,7 +7,7 @@ from ident.estimate.fit import DeadTimeProfile, Fit
 from ident.estimate.friction import Friction
 from ident.estimate.ground import Hold
 from ident.estimate.installed import Recovered, recover
-from ident.estimate.plausible import plausible
+from ident.estimate.plausible import plausible, plausible_again, spread_of
 
 __all__ = [
     "DeadTimeProfile",
@@ -19,5 +19,7 @@ __all__ = [
     "applied",
     "fit_all",
     "plausible",
+    "plausible_again",
     "recover",
+    "spread_of",
 ]

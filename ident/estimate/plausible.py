@@ -8,6 +8,7 @@ import numpy as np
 
 from ident.estimate.fit import Fit
 from ident.estimate.second_order import SecondOrder
+from ident.evidence.estimates import Covariance
 from ident.plants import Fopdt, Sopdt, UnderdampedSopdt
 from ident.plants.steps import Lagged
 from ident.record.segments import Floats
@@ -23,21 +24,43 @@ def plausible(fit: Fit, rng: np.random.Generator, count: int) -> tuple[Lagged, .
     """
     if fit.spread is None:
         return ()
-    shape, covariance, model = fit.spread.shape, fit.spread.log_covariance, fit.model
+    assert isinstance(fit.model, Lagged)
     L = _dead_times(fit, rng, count)
-    # The rest given the dead time (Gaussian conditioning).
+    return _drawn(fit.model, isinstance(fit.spread.shape, SecondOrder), fit.spread.log_covariance, L, rng)
+
+
+def spread_of(fit: Fit) -> Covariance | None:
+    """What `plausible_again` draws from, for a report: the covariance of log K, the other logarithms and L (s)."""
+    if fit.spread is None:
+        return None
+    matrix = fit.spread.log_covariance
+    times = ("log T",) if not isinstance(fit.spread.shape, SecondOrder) else ("log S", "log P")[: len(matrix) - 2]
+    return Covariance(("log K", *times, "L"), tuple(tuple(float(v) for v in row) for row in matrix))
+
+
+def plausible_again(model: Lagged, spread: Covariance, rng: np.random.Generator, count: int) -> tuple[Lagged, ...]:
+    """The same from a report's model and spread. Its dead time is normal: a report keeps no profile to draw from."""
+    covariance = np.array(spread.matrix)
+    std = math.sqrt(max(float(covariance[-1, -1]), 0.0))
+    L = np.maximum(model.L + std * rng.standard_normal(count), 0.0)
+    return _drawn(model, not isinstance(model, Fopdt), covariance, L, rng)
+
+
+def _drawn(model: Lagged, second: bool, covariance: Floats, L: Floats, rng: np.random.Generator) -> tuple[Lagged, ...]:
+    """One plant for each dead time, the rest given it (Gaussian conditioning)."""
     rest, with_L, var_L = covariance[:-1, :-1], covariance[:-1, -1], max(float(covariance[-1, -1]), 1e-300)
     values, vectors = np.linalg.eigh(rest - np.outer(with_L, with_L) / var_L)
     root = vectors * np.sqrt(np.maximum(values, 0.0))
-    z = (L - model.dead_time)[:, None] * with_L / var_L + rng.standard_normal((count, len(rest))) @ root.T
+    z = (L - model.L)[:, None] * with_L / var_L + rng.standard_normal((len(L), len(rest))) @ root.T
     z = np.exp(np.clip(z, -FURTHEST, FURTHEST))
-    K = model.static_gain * z[:, 0]
-    if isinstance(shape, SecondOrder):
-        S = shape.S * z[:, 1]
-        P = S * S / 4.0 if shape.equal else shape.P * z[:, 2]
-        return tuple(_pair(*row) for row in zip(K.tolist(), S.tolist(), P.tolist(), L.tolist(), strict=True))
-    T = shape.lags * z[:, 1]
-    return tuple(Fopdt(*row) for row in zip(K.tolist(), T.tolist(), L.tolist(), strict=True))
+    K = model.K * z[:, 0]
+    if isinstance(model, Fopdt) and not second:
+        return tuple(Fopdt(*row) for row in zip(K.tolist(), (model.T * z[:, 1]).tolist(), L.tolist(), strict=True))
+    assert not isinstance(model, Fopdt)
+    S = model.S * z[:, 1]
+    # Lags held equal have no logarithm of P of their own.
+    P = model.P * z[:, 2] if len(rest) > 2 else S * S / 4.0
+    return tuple(_pair(*row) for row in zip(K.tolist(), S.tolist(), P.tolist(), L.tolist(), strict=True))
 
 
 def _dead_times(fit: Fit, rng: np.random.Generator, count: int) -> Floats:

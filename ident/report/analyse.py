@@ -7,10 +7,8 @@ from dataclasses import replace
 from importlib.metadata import PackageNotFoundError, version
 from typing import Any
 
-import numpy as np
-
 from ident.errors import NotIdentifiable, Refused
-from ident.estimate import Fit, Hold, Recovered, applied, fit_all, plausible, recover
+from ident.estimate import Fit, Hold, Recovered, applied, fit_all, recover, spread_of
 from ident.findings import Finding
 from ident.judge import (
     CrossChecks,
@@ -27,15 +25,14 @@ from ident.judge import (
 )
 from ident.loop import PidSettings
 from ident.record import LoopRecord
+from ident.report.allowed import allowed
 from ident.report.cautions import CAUTIONS
 from ident.report.curves import curves
 from ident.report.installed import installed_loop, installed_outcome, installed_report
 from ident.report.log import log_info, record_info
 from ident.report.shape import FitReport, Report
 from ident.report.tunings import tuning_reports
-from ident.tune import Cloud, Proposals, cloud, propose
-
-PLANTS = 200  # drawn from the fit for the worst case
+from ident.tune import Cloud, Proposals, propose
 
 
 def analyse(
@@ -101,17 +98,15 @@ def analyse(
     recovered, seen = recover(record)
     held, assumed = _period(record, period, recovered)
     proposal: Proposals | None = None
-    allowed: Cloud | None = None
+    cloud: Cloud | None = None
     checked = CrossChecks((), ())
     if fitted is not None:
         checked = cross_check(reached, fitted, subspace=subspace)
         found += [*assumed, *unlogged_setpoint(fitted), *checked.findings]
         on_stage("tuning")
         timing = {"period": held, "compute_delay": compute_delay}
-        drawn = plausible(fitted, np.random.default_rng(seed), PLANTS)
-        lag = float(getattr(fitted.model, "T", 0.0) or getattr(fitted.model, "T1", 0.0) or held)
-        allowed = cloud(drawn, delay=fitted.model.dead_time, lag=lag, **timing)
-        proposal, untunable = _propose(fitted, Ms=Ms, form=form, goal=goal, allowed=allowed, robust=robust, **timing)
+        cloud = allowed(fitted, seed=seed, **timing)
+        proposal, untunable = _propose(fitted, Ms=Ms, form=form, goal=goal, allowed=cloud, robust=robust, **timing)
         found += untunable
     else:
         assert refused is not None
@@ -129,7 +124,7 @@ def analyse(
         proposal,
         fits,
         choice.index if choice else None,
-        allowed,
+        cloud,
         target=Ms,
         command_limits=command_limits,
         seed=seed,
@@ -217,6 +212,7 @@ def _fit_report(fitted: Fit) -> FitReport:
         fitted.friction,
         fitted.statistics,
         fitted.findings,
+        spread_of(fitted),
     )
 
 

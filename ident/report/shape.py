@@ -65,7 +65,11 @@ class RecordInfo:
 
 @dataclass(frozen=True, slots=True)
 class FitReport:
-    """One fitted model. `derived` holds what follows from the parameters, such as K/T."""
+    """One fitted model. `derived` holds what follows from the parameters, such as K/T.
+
+    spread  what plausible plants are drawn from: the covariance of log K, the logarithms of the times (T; S = T1 + T2
+            and P = T1 T2, P left out where the lags are equal) and L
+    """
 
     model: str  # fopdt | sopdt | arx
     parameters: dict[str, Estimate]
@@ -74,6 +78,7 @@ class FitReport:
     friction: Friction | None
     statistics: Statistics
     findings: tuple[Finding, ...]
+    spread: Covariance | None = None
 
 
 @dataclass(frozen=True, slots=True)

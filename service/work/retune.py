@@ -19,10 +19,7 @@ from service.work.report import told
 
 @dataclass(frozen=True, slots=True)
 class Retuned:
-    """Proposals for a kept fit, as in its report; options: what they were made for.
-
-    worst_case of each is None: the plants that it is taken over are drawn while the log is at hand.
-    """
+    """Proposals for a kept fit, as in its report; options: what they were made for."""
 
     options: dict[str, float | int | str | None]
     tunings: tuple[ident.TuningReport, ...]
@@ -73,6 +70,13 @@ def _retune(report: bytes, given: Options) -> Retuned:
     if "Ms" not in given.model_fields_set and any(name in more for name in INSTEAD_OF_MS):
         asked["Ms"] = None
     noise: dict[str, Any] = {"speed_noise_std": noise_seen(parsed)} if "command_noise_std" in more else {}
+    cloud = ident.allowed_again(
+        plant,
+        parsed["fits"][parsed["selected"]].get("spread"),  # reports of before have none
+        seed=before.get("seed", 0),
+        period=period or 0.0,
+        compute_delay=delay,
+    )
     found = ident.propose(
         plant,
         Ms=asked["Ms"],
@@ -80,6 +84,8 @@ def _retune(report: bytes, given: Options) -> Retuned:
         goal=asked["goal"],
         period=period or 0.0,
         compute_delay=delay,
+        allowed=cloud,
+        robust=before.get("robust"),
         **more,
         **noise,
     )
@@ -89,7 +95,7 @@ def _retune(report: bytes, given: Options) -> Retuned:
             t.form,
             t.settings,
             t.margins,
-            None,
+            cloud.worst_case(t.settings) if cloud and t.margins.stable else None,
             t.predicted,
             _realised(t, plant if i == found.recommended else None, realisation, asked, period or 0.0, delay),
             t.findings,

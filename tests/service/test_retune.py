@@ -85,3 +85,20 @@ def test_it_costs_no_more_than_forty_margins(report: bytes) -> None:
 
     one = least(lambda: ident.margins(plant, settings, period=0.01))
     assert least(lambda: retuned(report, Ms=1.4)) < 40 * one
+
+
+def test_another_proposal_is_judged_on_the_plants_that_the_log_allowed(report: bytes) -> None:
+    kept, told = json.loads(report), retuned(report)
+    for before, after in zip(kept["tunings"], told["tunings"], strict=True):
+        # The same settings on plants drawn anew: sampled quantiles of 200 of them, the dead time from its spread.
+        assert after["settings"] == before["settings"]
+        assert after["worst_case"]["plants"] == before["worst_case"]["plants"]
+        assert after["worst_case"]["Ms_p95"] == pytest.approx(before["worst_case"]["Ms_p95"], rel=0.02)
+
+
+def test_a_report_without_a_spread_says_no_worst_case(report: bytes) -> None:
+    older = json.loads(report)
+    for fit in older["fits"]:
+        del fit["spread"]
+    told = retuned(json.dumps(older).encode())
+    assert all(one["worst_case"] is None for one in told["tunings"])
