@@ -4,8 +4,8 @@ The direction of motion follows from the speed, and the speed from the direction
 direction carries its noise; here both are of the model. At a crossing the friction turns, which changes the slope of
 the speed, and what a parameter had done to the speed so far goes on changed by as much: for a first-order lag it is
 multiplied by the ratio of the slopes (the saltation matrix of Aizerman and Gantmakher 1958; di Bernardo, Budd,
-Champneys and Kowalczyk, Piecewise-smooth Dynamical Systems, 2008, section 2.5). Where friction holds the motor the
-model crosses to and fro, and forgets its past.
+Champneys and Kowalczyk, Piecewise-smooth Dynamical Systems, 2008, section 2.5; from memory). Where friction holds the
+motor the model crosses to and fro, and forgets its past.
 """
 
 from __future__ import annotations

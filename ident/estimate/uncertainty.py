@@ -82,8 +82,8 @@ def uncertainty(layout: Layout, at: Point, colour: Colour) -> Uncertainty:
 def _spectrum_unknown(rows: int, order: int) -> float:
     """What the noise's own spectrum, estimated with so many terms, adds to a variance: that of a t-distribution.
 
-    At low frequency its logarithm has the variance 4 order/rows (Berk 1974, Annals of Statistics 2, 489-502), as that
-    of a chi-squared with rows/(2 order) degrees of freedom, which the noise model keeps at ten or more.
+    At low frequency its logarithm has the variance 4 order/rows (Berk 1974, Annals of Statistics 2, 489-502; from
+    memory), as that of a chi-squared with rows/(2 order) degrees of freedom: ten or more, as noise models are bounded.
     """
     if order == 0:
         return 1.0
