@@ -163,7 +163,8 @@ def _first(speed: Floats, start: int, settled: float, sense: float) -> int | Non
 def _carry(slopes: Floats, stretch: Stretch, turns: Turns, shape: Shape, step: float) -> None:
     """Add to slopes (n, used rows) at fixed directions, in place, what the moved crossings do."""
     time = stretch.time[stretch.skip :]
-    sense = float(stretch.direction[max(stretch.skip - 1, 0)]) if stretch.direction is not None else 0.0
+    assert stretch.direction is not None
+    sense = float(np.sign(stretch.direction[max(stretch.skip - 1, 0)]))
     most = float(shape.impulse(time - time[0]).max()) if turns.rows else 0.0
     for k, slope in zip(turns.rows, turns.slopes, strict=True):
         few = k + 1 + int(np.searchsorted(time[k + 1 :], time[k] + FORGOTTEN * shape.slowest))
