@@ -68,6 +68,7 @@ class Baseline:
     level       what they are compared with;  gain_unit  of K;  findings  about the baseline
     practical   least changes that count, each in its parameter's unit
     allowed     how a night may differ from its plant's usual place, its own error left out
+    rubbing     its nights were fitted with dry friction
     """
 
     level: Level
@@ -75,6 +76,7 @@ class Baseline:
     allowed: Allowed
     gain_unit: str
     findings: tuple[Finding, ...]
+    rubbing: bool = False
 
 
 def baseline_of(given: Sequence[Night | Estimated], practical: PracticalSize) -> Baseline:
@@ -94,6 +96,12 @@ def baseline_of(given: Sequence[Night | Estimated], practical: PracticalSize) ->
             "baseline-disagrees",
             "The gain changes its sign between the baseline's nights: leave out those before the wiring was changed.",
         )
+    if len({n.rubbing for n in nights}) > 1:
+        raise Refused(
+            "baseline-disagrees",
+            "Dry friction shows in some of the baseline's nights only, and there K and T are those of the moving "
+            "motor: take nights of one kind.",
+        )
     z, own = np.array([place(n) for n in nights]), np.array([covariance(n) for n in nights])
     middle = np.median(z, axis=0)
     K, T = float(middle[0] / middle[1]), float(1.0 / middle[1])
@@ -109,7 +117,7 @@ def baseline_of(given: Sequence[Night | Estimated], practical: PracticalSize) ->
     found = replace(found, z=np.array([found.z[0], pole, max(float(found.z[2]), 0.0)]))
     if len(nights) < TOO_FEW:
         sizes = {name: size if name == "K" else MORE * size for name, size in sizes.items()}
-    return Baseline(found, sizes, allowed, nights[0].gain_unit, _findings(nights))
+    return Baseline(found, sizes, allowed, nights[0].gain_unit, _findings(nights), nights[0].rubbing)
 
 
 def _findings(nights: list[Night]) -> tuple[Finding, ...]:

@@ -31,6 +31,10 @@ class Estimated(Protocol):
     def statistics(self) -> Statistics:
         """How well they describe the log."""
 
+    @property
+    def friction(self) -> object | None:
+        """Dry friction, where it was fitted."""
+
 
 @dataclass(frozen=True, slots=True)
 class Night:
@@ -39,6 +43,7 @@ class Night:
     covariance   3 rows of 3
     gain_unit    of K; nights in different units are not compared
     misfit       the residual still answers to the command: the model leaves out something of the plant
+    rubbing      dry friction was fitted: K and T are those of the moving motor, not of a linear compromise
     Raises Refused night-unusable.
     """
 
@@ -48,6 +53,7 @@ class Night:
     covariance: tuple[tuple[float, ...], ...]
     gain_unit: str = ""
     misfit: bool = False
+    rubbing: bool = False
 
     def __post_init__(self) -> None:
         plant = (self.K, self.T, self.L)
@@ -79,6 +85,7 @@ class Night:
             estimated.covariance.matrix,
             gain_unit=unit,
             input_correlation_p=estimated.statistics.input_correlation_p,
+            rubbing=estimated.friction is not None,
         )
 
     @classmethod
@@ -90,8 +97,10 @@ class Night:
         *,
         gain_unit: str = "",
         input_correlation_p: float | None = None,
+        rubbing: bool = False,
     ) -> Night:
-        """Of a stored report's numbers: values by name, the covariance with the order of its names, and a statistic.
+        """Of a stored report's numbers: values by name, the covariance with the order of its names, a statistic, and
+        whether dry friction was fitted.
 
         Raises Refused: night-not-first-order, night-unusable.
         """
@@ -106,4 +115,4 @@ class Night:
         covariance = tuple(tuple(math.nan if v is None else float(v) for v in row) for row in entries)
         K, T, L = (float(values[name]) for name in NAMES)
         misfit = input_correlation_p is not None and input_correlation_p < ANSWERS
-        return cls(K, T, L, covariance, gain_unit, misfit)
+        return cls(K, T, L, covariance, gain_unit, misfit, rubbing)

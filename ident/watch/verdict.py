@@ -32,6 +32,12 @@ from ident.watch.night import Night
 Verdict = Literal["moved", "not-moved", "no-news"]
 GAINS = ("K", "K/T")
 BLIND = 1.5
+UNLIKE = Finding(
+    "friction-in-one-only",
+    "warning",
+    "Dry friction shows in this night or in the baseline, not in both: their K and T are not of one kind and are not "
+    "compared. Log a test in which the motor turns both ways, or choose the baseline anew.",
+)
 
 
 @dataclass(frozen=True, slots=True)
@@ -87,9 +93,10 @@ def verdict(level: Baseline, night: Night | None, significance: float) -> Drift:
     if not 0.0 < significance < 0.5:
         raise Refused("significance-out-of-range", "A significance is a probability of false alarm, such as 0.0027.")
     before = readings(level.level.z)
-    if night is None:
+    unlike = night is not None and night.rubbing != level.rubbing
+    if night is None or unlike:
         unseen = {name: _unseen(level, name, reading) for name, reading in before.items()}
-        return Drift("no-news", None, None, None, unseen, None, level.findings)
+        return Drift("no-news", None, None, None, unseen, None, level.findings + ((UNLIKE,) if unlike else ()))
     if night.gain_unit != level.gain_unit:
         raise Refused(
             "gain-units-differ",

@@ -37,6 +37,7 @@ class Plant:
     """K, T, L of the first-order fit with their covariance, in the order of `names`.
 
     input_correlation_p   says whether that fit leaves dynamics out, which makes nights differ by more than noise
+    rubbing               dry friction was fitted
     """
 
     values: dict[str, float]
@@ -44,6 +45,7 @@ class Plant:
     matrix: tuple[tuple[float | None, ...], ...]
     gain_unit: str
     input_correlation_p: float | None = None
+    rubbing: bool = False
 
 
 @dataclass(frozen=True, slots=True)
@@ -168,4 +170,5 @@ def _plant(fit: Mapping[str, Any]) -> Plant:
         tuple(tuple(row) for row in covariance["matrix"]),
         parameters["K"]["unit"],
         fit["statistics"]["input_correlation_p"],
+        fit.get("friction") is not None,
     )

@@ -174,6 +174,7 @@ def night_of(numbers: Numbers, gain_unit: str | None) -> tuple[ident.Night | Non
             plant.matrix,
             gain_unit=plant.gain_unit,
             input_correlation_p=plant.input_correlation_p,
+            rubbing=plant.rubbing,
         )
         return night, None
     except ident.IdentError as error:

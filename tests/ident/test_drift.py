@@ -269,3 +269,15 @@ def test_history_is_the_same_in_any_order_and_tells_since_when() -> None:
     assert ident.drift_history([night()] * 2, [nights[i] for i in (3, 0, 4, 2, 1)], settings=INSTALLED) == found
     alone = ident.drift([night()] * 2, nights[-1][1], settings=INSTALLED)
     assert found[-1][1].margin == alone.margin
+
+
+def test_a_night_with_dry_friction_is_not_compared_with_nights_without() -> None:
+    plain = [night(14.6 + 0.01 * i, 1.8, 0.4) for i in range(5)]
+    rubbing = replace(night(22.0, 2.6, 0.4), rubbing=True)
+    found = ident.drift(plain, rubbing)
+    assert found.verdict == "no-news"
+    assert {p.verdict for p in found.parameters.values()} == {"no-news"}
+    assert "friction-in-one-only" in {f.code for f in found.findings}
+    assert ident.drift([replace(n, rubbing=True) for n in plain], rubbing).verdict == "moved"
+    with pytest.raises(ident.Refused, match="some of the baseline's nights only"):
+        ident.drift([*plain, rubbing], plain[0])
